@@ -1,0 +1,397 @@
+package circuit
+
+import (
+	"errors"
+	"fmt"
+	"math"
+	"slices"
+)
+
+// Option changes how a transient is run.
+type Option func(*options)
+
+type options struct {
+	energy, trace bool
+	longest       float64
+	limit         int
+}
+
+// WithoutEnergy leaves the energies out, which makes a run about twice as fast; Energy then gives NaN.
+func WithoutEnergy() Option { return func(o *options) { o.energy = false } }
+
+// WithoutTrace keeps no samples; Peak still works, Trace gives nil.
+func WithoutTrace() Option { return func(o *options) { o.trace = false } }
+
+// WithStep sets the longest time between two samples (seconds, > 0); the exactness of the result does not depend on it.
+func WithStep(longest float64) Option { return func(o *options) { o.longest = longest } }
+
+// WithLimit sets how many steps one run may take before it ends in an error (default two million).
+func WithLimit(steps int) Option { return func(o *options) { o.limit = steps } }
+
+// Run is one transient in progress. It is not safe for use by several goroutines; different runs are.
+type Run struct {
+	c       *Circuit
+	opts    options
+	waves   []Waveform
+	cache   map[pattern]*system
+	on      uint64 // conducting diodes
+	sys     *system
+	held    []float64 // per branch: capacitor voltage, inductor current at the last event
+	x, next []float64 // states now and after the step tried
+	rateOld []float64 // scratch for derivatives at both ends of a step
+	rateNew []float64
+	spare   []float64
+	seg     segment
+	tau     float64 // time since the start of the segment
+	volts   float64 // largest voltage and current seen, the scale of tolerances
+	amps    float64
+	rung    int // level of the next step, and how many more before it may grow
+	left    int
+	per     int     // steps at each length while growing
+	calm    float64 // time since the last restart
+	watch   []watch
+	stop    stop
+	energy  []float64
+	moment  []float64 // ∫ y·yᵀ over the present segment and pattern, y = [states | 1 | τ]
+	y       []float64 // scratch
+	steps   int
+	crowd   crowd
+	err     error
+}
+
+// pattern is the key of the cached systems.
+type pattern struct {
+	on    uint64
+	leaky bool
+}
+
+// Start finds the diode states at t = 0 and begins a transient; errors name the element at fault. Energies and
+// traces are kept unless options say otherwise.
+func (c *Circuit) Start(opts ...Option) (*Run, error) {
+	if err := c.check(); err != nil {
+		return nil, err
+	}
+	r := &Run{c: c.snapshot(), cache: map[pattern]*system{}}
+	r.opts = options{energy: true, trace: true, longest: math.Inf(1), limit: 2_000_000}
+	for _, o := range opts {
+		o(&r.opts)
+	}
+	if !(r.opts.longest > 0) {
+		return nil, fmt.Errorf("circuit: step %g s must be above zero", r.opts.longest)
+	}
+	r.held = make([]float64, len(c.branches))
+	r.energy = make([]float64, len(c.branches))
+	r.waves = make([]Waveform, c.sources)
+	for k, b := range r.c.branches {
+		r.held[k] = b.start
+		if b.kind == voltageSource || b.kind == currentSource {
+			r.waves[b.index] = b.wave
+		}
+		if b.kind == diode {
+			r.watch = append(r.watch, watch{branch: k, isDiode: true})
+		}
+	}
+	r.seg = segment{value: make([]float64, c.sources), slope: make([]float64, c.sources)}
+	r.locateSegment(0)
+	r.firstScale()
+	if err := r.settle(-1); err != nil {
+		return nil, err
+	}
+	return r, nil
+}
+
+// snapshot keeps a run apart from elements added later.
+func (c *Circuit) snapshot() *Circuit {
+	d := *c
+	d.nodes = slices.Clone(c.nodes)
+	d.branches = slices.Clone(c.branches)
+	d.couples = slices.Clone(c.couples)
+	d.byName = make(map[string]int, len(c.byName))
+	for k := range d.branches {
+		d.byName[d.branches[k].name] = k
+	}
+	return &d
+}
+
+// firstScale takes the scale of tolerances from sources, initial values and thresholds.
+func (r *Run) firstScale() {
+	for k, b := range r.c.branches {
+		switch b.kind {
+		case capacitor:
+			r.volts = math.Max(r.volts, math.Abs(r.held[k]))
+		case inductor:
+			r.amps = math.Max(r.amps, math.Abs(r.held[k]))
+		case voltageSource:
+			r.volts = math.Max(r.volts, b.wave.size())
+		case currentSource:
+			r.amps = math.Max(r.amps, b.wave.size())
+		case diode:
+			r.volts = math.Max(r.volts, math.Abs(b.volt))
+		}
+	}
+}
+
+// Time is the present moment in seconds.
+func (r *Run) Time() float64 { return r.seg.from + r.tau }
+
+// Retarget replaces the waveform of a source from now on (times stay absolute). A name that is no source, or an
+// unusable waveform, is reported by the next To.
+func (r *Run) Retarget(source string, w Waveform) {
+	k, ok := r.c.byName[source]
+	if !ok || (r.c.branches[k].kind != voltageSource && r.c.branches[k].kind != currentSource) {
+		r.err = errors.Join(r.err, fmt.Errorf("circuit: Retarget: %q is not a source", source))
+		return
+	}
+	if err := w.Check(); err != nil {
+		r.err = errors.Join(r.err, fmt.Errorf("circuit: Retarget of %q: %w", source, err))
+		return
+	}
+	r.waves[r.c.branches[k].index] = w
+	r.fail(r.enterSegment(r.Time()))
+}
+
+// fail keeps the first error; a run that failed stays failed.
+func (r *Run) fail(err error) {
+	if r.err == nil && err != nil {
+		r.err = err
+	}
+}
+
+// To advances to time t (absolute, seconds), or to the moment the probe first rises through level (stop = true) when
+// probe >= 0. An error names the moment and what to change; the run cannot go on after it.
+func (r *Run) To(t float64, probe int, level float64) (stop bool, err error) {
+	if bad(t) || t < r.Time() {
+		return false, fmt.Errorf("circuit: To(%g s): the run already stands at %g s", t, r.Time())
+	}
+	if probe >= r.probes() {
+		return false, fmt.Errorf("circuit: To: probe %d does not exist, there are %d", probe, r.probes())
+	}
+	r.setStop(probe, level)
+	for r.err == nil && r.Time() < t {
+		stopped, err := r.advance(t)
+		r.fail(err)
+		if stopped {
+			return true, r.err
+		}
+	}
+	return false, r.err
+}
+
+// advance takes one step towards t, or goes over a corner of a waveform.
+func (r *Run) advance(t float64) (stopped bool, err error) {
+	if r.Time() >= r.seg.till {
+		err = r.enterSegment(r.seg.till)
+		return r.stop.hit, err
+	}
+	if r.steps++; r.steps > r.opts.limit {
+		return false, fmt.Errorf("circuit: %d steps taken and only %g s reached; ask for a shorter time or take out the fastest ring", r.opts.limit, r.Time())
+	}
+	end := math.Min(t, r.seg.till)
+	fresh, err := r.sys.prepare(t-r.Time(), r.opts.longest, r.opts.energy)
+	if err != nil {
+		return false, err
+	}
+	if fresh {
+		r.rung = mostLevels + 1
+	}
+	r.refresh()
+	room := end - r.seg.from - r.tau
+	if room <= 0 { // the rest is below the rounding of the time
+		r.tau = until(r.seg.from, end)
+		return false, nil
+	}
+	dt, l := r.choose(room)
+	r.try(dt, l)
+	if r.trouble(dt) {
+		if l >= 0 && l < len(r.sys.solver.levels)-1 {
+			r.rung, r.left = l+1, r.per
+			return false, nil
+		}
+		return r.event(dt)
+	}
+	at := r.tau + dt
+	if r.seg.from+at >= end || end-r.seg.from-at <= 1e-13*end {
+		at = until(r.seg.from, end)
+	}
+	if at <= r.tau {
+		return false, fmt.Errorf("circuit: the step of %g s is lost in the time %g s; start the waveforms nearer to zero", dt, r.Time())
+	}
+	return false, r.accept(dt, l, at)
+}
+
+// until gives the least d with from + d >= end in rounded arithmetic.
+func until(from, end float64) float64 {
+	d := end - from
+	for from+d < end {
+		d = math.Nextafter(d, math.Inf(1))
+	}
+	return d
+}
+
+// choose gives the length of the next step and its level, or level -1 for a short remainder taken by polynomial.
+func (r *Run) choose(room float64) (dt float64, l int) {
+	levels := r.sys.solver.levels
+	if r.rung >= len(levels) {
+		r.rung = r.sys.solver.grade
+	}
+	l = r.rung
+	for l < len(levels) && levels[l].h > room*(1+1e-12) {
+		l++
+	}
+	if l == len(levels) {
+		return room, -1
+	}
+	r.sys.fill(l)
+	return levels[l].h, l
+}
+
+// try computes the states one step ahead without accepting them.
+func (r *Run) try(dt float64, l int) {
+	if l >= 0 {
+		r.sys.step(r.next, r.x, &r.sys.solver.levels[l], &r.seg, r.tau)
+	} else {
+		r.sys.expand(r.x, r.tau)
+		r.sys.along(r.next, dt)
+	}
+	r.look(r.next, r.tau+dt)
+}
+
+// accept makes the step tried the present state: energies, probes, scales, growth of the step.
+func (r *Run) accept(dt float64, l int, at float64) error {
+	if r.opts.energy {
+		r.gather(dt, l)
+	}
+	r.record(dt, l, at)
+	r.x, r.next = r.next, r.x
+	r.tau = at
+	for k := range r.watch {
+		r.watch[k].now = r.watch[k].then
+	}
+	for _, v := range r.x {
+		if !(math.Abs(v) < 1e150) {
+			return fmt.Errorf("circuit: the solution grows without bound at %g s; check the sources", r.Time())
+		}
+	}
+	r.grow(dt)
+	return nil
+}
+
+// grow lengthens the steps as the time since the last event grows; rings hold them back until they have died away.
+func (r *Run) grow(dt float64) {
+	r.calm += dt
+	lowest := 0
+	for _, g := range r.sys.solver.rings {
+		if r.calm <= g.quiet && g.level > lowest {
+			lowest = g.level
+		}
+	}
+	if r.left--; r.left <= 0 && r.rung > lowest {
+		r.rung--
+		r.left = r.per
+	}
+}
+
+// restart makes the steps short again after something changed, so that fast modes are followed.
+func (r *Run) restart(per int) {
+	if r.opts.energy {
+		per = energySteps // the quadrature needs them shorter than the search for events
+	}
+	r.rung, r.left, r.per, r.calm = mostLevels+1, per, per, 0
+}
+
+// locateSegment finds the straight stretch of all sources that begins at t and tells whether a source jumps there.
+func (r *Run) locateSegment(t float64) (jump bool) {
+	g := &r.seg
+	run := t - g.from
+	g.id++
+	g.from, g.till = t, math.Inf(1)
+	for k, w := range r.waves {
+		before := g.value[k] + float64(g.slope[k]*run)
+		value, slope, until := w.piece(t)
+		if math.Abs(value-before) > 1e-9*(math.Abs(value)+math.Abs(before)) {
+			jump = true
+		}
+		g.value[k], g.slope[k] = value, slope
+		g.till = math.Min(g.till, until)
+	}
+	r.tau = 0
+	return jump
+}
+
+// enterSegment goes over a corner: diodes may switch if a source jumps or if a capacitor current follows its slope.
+func (r *Run) enterSegment(t float64) error {
+	r.flush()
+	r.keep()
+	if r.locateSegment(t) {
+		return r.settle(-1)
+	}
+	if !r.sys.solver.ready {
+		return nil
+	}
+	r.refresh()
+	r.look(r.x, 0)
+	for k := range r.watch {
+		w := &r.watch[k]
+		if w.isDiode && w.then < -w.tol {
+			return r.settle(-1)
+		}
+		w.now = w.then
+	}
+	r.sample()
+	r.restart(kinkSteps)
+	return nil
+}
+
+// form evaluates a form at the present moment.
+func (r *Run) form(f []float64) float64 {
+	s := r.sys
+	v := dot(r.x, f) + f[s.width-1]
+	for u := range s.nu {
+		v += float64(f[s.value(u)]*(r.seg.value[u]+float64(r.seg.slope[u]*r.tau))) + float64(f[s.slope(u)]*r.seg.slope[u])
+	}
+	return v
+}
+
+// BranchCurrent gives the present current of a named element, from its first to its second node; NaN if there is none.
+func (r *Run) BranchCurrent(name string) float64 { return r.branchForm(name, r.sys.i) }
+
+// BranchVoltage gives the present voltage of a named element, first node minus second; NaN if there is none.
+func (r *Run) BranchVoltage(name string) float64 { return r.branchForm(name, r.sys.v) }
+
+func (r *Run) branchForm(name string, form func(int) []float64) float64 {
+	k, ok := r.c.byName[name]
+	if !ok {
+		return math.NaN()
+	}
+	return r.form(form(k))
+}
+
+// Voltage gives the present v(a) - v(b); NaN if a node does not exist.
+func (r *Run) Voltage(a, b int) float64 {
+	if !r.hasNodes(a, b) {
+		return math.NaN()
+	}
+	return r.form(row(r.sys.node, r.sys.width, a)) - r.form(row(r.sys.node, r.sys.width, b))
+}
+
+// Slope gives the present rate of v(a) - v(b) in volts per second, exact; NaN if a node does not exist.
+func (r *Run) Slope(a, b int) float64 {
+	if !r.hasNodes(a, b) {
+		return math.NaN()
+	}
+	s := r.sys
+	f, d := make([]float64, s.width), make([]float64, s.width)
+	s.difference(f, a, b)
+	s.derive(d, f, 1)
+	return r.form(d)
+}
+
+func (r *Run) hasNodes(a, b int) bool {
+	return a >= 0 && b >= 0 && a < len(r.c.nodes) && b < len(r.c.nodes)
+}
+
+// Conducts tells whether a named diode conducts at present.
+func (r *Run) Conducts(name string) bool {
+	k, ok := r.c.byName[name]
+	return ok && r.c.branches[k].kind == diode && r.on>>uint(r.c.branches[k].index)&1 == 1
+}
