@@ -1,0 +1,124 @@
+package stress
+
+import (
+	"math"
+
+	"drivemend/diagnose/circuit"
+)
+
+// read takes the figures off a run.
+func (s scene) read(run *circuit.Run, probe int, shape string) *Edge {
+	e := &Edge{Name: "turn-off", Shape: shape, Bus: s.bus, Current: s.amps}
+	e.Peak, e.PeakTime = run.Peak(probe)
+	if !(e.Peak >= s.bus) { // too little current to bring it there within the time followed
+		e.Peak, e.PeakTime = s.bus, run.Time()
+	}
+	if s.fast {
+		return e
+	}
+	for _, p := range run.Trace(probe) {
+		e.Waveform = append(e.Waveform, Sample{p.T, p.V})
+	}
+	e.Slope = slope(e.Waveform, s.bus)
+	e.Ring, e.Damping = ring(e.Waveform, e.PeakTime)
+	e.Energies = energies(run)
+	if s.net == "rc" || s.net == "rcd" {
+		e.Discharge = s.bus / s.get("snubber.resistance")
+	}
+	return e
+}
+
+// shownElements are the elements whose energies are shown, in this order, each with the elements of the circuit it
+// stands for. The switch is its channel: what it lost while it held the ramp, and while its current fell.
+var shownElements = []struct {
+	name  string
+	parts []string
+}{
+	{"switch", []string{"hold", "ramp", "channel"}},
+	{"output-capacitance", []string{"output", "depletion-0", "depletion-1", "depletion-2"}},
+	{"snubber-capacitor", []string{"snubber"}},
+	{"snubber-resistor", []string{"snubber-resistor"}},
+	{"snubber-diode", []string{"snubber-diode", "snubber-diode-recovery", "snubber-diode-recovery-time"}},
+	{"freewheel", []string{"freewheel", "freewheel-recovery", "freewheel-recovery-time"}},
+	{"loop-resistance", []string{"loop-resistance"}},
+	{"bus-esr", []string{"bus-esr"}},
+}
+
+// energies gives what the elements took up, those that are there and took something.
+func energies(run *circuit.Run) []Energy {
+	var out []Energy
+	for _, shown := range shownElements {
+		sum := 0.0
+		for _, name := range shown.parts {
+			if j := run.Energy(name); !math.IsNaN(j) {
+				sum += j
+			}
+		}
+		if sum != 0 {
+			out = append(out, Energy{shown.name, sum})
+		}
+	}
+	return out
+}
+
+// slope is the mean slope between 10 and 90 % of the bus on the way up; 0 when the bus was not reached.
+func slope(w []Sample, bus float64) float64 {
+	low, high := crossing(w, 0.1*bus), crossing(w, 0.9*bus)
+	if math.IsNaN(low) || math.IsNaN(high) || high <= low {
+		return 0
+	}
+	return 0.8 * bus / (high - low)
+}
+
+// crossing is when a waveform first rises through a level, between samples in a straight line.
+func crossing(w []Sample, level float64) float64 {
+	for i := 1; i < len(w); i++ {
+		if a, b := w[i-1], w[i]; a.V < level && b.V >= level {
+			return a.T + (b.T-a.T)*(level-a.V)/(b.V-a.V)
+		}
+	}
+	return math.NaN()
+}
+
+// ring reads frequency and damping ratio off the swings after the peak: from peak to trough is half a turn, and the
+// swings shrink by exp(−π·ζ/√(1−ζ²)) each half turn.
+func ring(w []Sample, peakTime float64) (hertz, damping float64) {
+	turns := turningPoints(w, peakTime)
+	if len(turns) < 3 {
+		return 0, 0
+	}
+	first, second := turns[0].V-turns[1].V, turns[2].V-turns[1].V
+	period := turns[2].T - turns[0].T
+	if first <= 0 || second <= 0 || second >= first || period <= 0 {
+		return 0, 0
+	}
+	l := math.Log(first / second)
+	return 1 / period, l / math.Hypot(math.Pi, l)
+}
+
+// turningPoints gives the peak and the extremes after it, refined by a parabola through three samples.
+func turningPoints(w []Sample, from float64) []Sample {
+	var out []Sample
+	for i := 1; i+1 < len(w) && len(out) < 3; i++ {
+		a, b, c := w[i-1], w[i], w[i+1]
+		if c.T < from || (b.V-a.V)*(c.V-b.V) > 0 || b.V == a.V {
+			continue
+		}
+		out = append(out, vertex(a, b, c))
+	}
+	return out
+}
+
+// vertex of the parabola through three samples.
+func vertex(a, b, c Sample) Sample {
+	p, q := (b.V-a.V)/(b.T-a.T), (c.V-b.V)/(c.T-b.T)
+	bend := (q - p) / (c.T - a.T)
+	if bend == 0 || math.IsNaN(bend) || math.IsInf(bend, 0) {
+		return b
+	}
+	t := (a.T+b.T)/2 - p/(2*bend)
+	if t < a.T || t > c.T {
+		return b
+	}
+	return Sample{t, a.V + p*(t-a.T) + bend*(t-a.T)*(t-b.T)}
+}
