@@ -1,0 +1,313 @@
+package reports
+
+import (
+	"fmt"
+	"io"
+	"strconv"
+	"strings"
+	"time"
+
+	"drivemend/diagnose"
+	"drivemend/diagnose/safety"
+	"drivemend/knowledge"
+	"drivemend/measure/quantity"
+)
+
+const shownOthers = 5 // tests listed after the one to do now
+
+// Next prints the test to do now with what its results mean, the ones after it, and what is locked with what unlocks
+// it. The board's joules stand beside the cautions; plan may be nil, and then they are missing. A repair is named only
+// while nothing is withheld or put off and the board is granted dead.
+func Next(w io.Writer, base *knowledge.Base, n *diagnose.Suggestion, plan *safety.Plan, style Style, beside ...Beside) error {
+	s := newScreen(style)
+	allowed := n.Allowed()
+	switch {
+	case len(allowed) > 0:
+		writeTest(s, base, allowed[0], plan)
+		writeOthers(s, allowed[1:])
+	case n.Stop != "":
+		s.hang(strong, "STOP  ", n.Stop)
+	case n.Locked != nil:
+		s.hang(danger, "WITHHELD  ", "the test worth most is locked, and no allowed one is worth its minutes")
+	default:
+		s.hang(strong, "STOP  ", "no test is left that saves more minutes than it costs")
+	}
+	writeRepairs(s, base, n, besides(beside))
+	writeLocked(s, n)
+	s.say(neutral, "At "+moment(n.At)+".")
+	return s.write(w)
+}
+
+func writeTest(s *screen, base *knowledge.Base, c diagnose.Candidate, plan *safety.Plan) {
+	t := c.Test
+	s.ends(mandatory, "NEXT", t.Title, worth(c))
+	s.item(strong, "where", placeOf(c))
+	s.item(strong, "ask", t.Ask)
+	s.item(strong, "how", t.How)
+	if t.Instrument != "" && t.Instrument != "none" && t.Instrument != "question" {
+		s.item(strong, "with", t.Instrument)
+	}
+	for i, r := range t.Results {
+		label := ""
+		if i == 0 {
+			label = "means"
+		}
+		s.item(strong, label, resultWords(r, t.Unit))
+	}
+	s.item(strong, "needs", needWords(t.Needs)+": allowed at this moment")
+	if t.Needs != "question" && plan != nil {
+		s.item(caution, "caution", storedWords(plan))
+	}
+	for _, text := range cautionTexts(base, t.Cautions) {
+		s.item(caution, "caution", text)
+	}
+	s.item(strong, "why", whyNow(c))
+}
+
+// worth is the minutes of a test and what it saves: "6 min, saves about 40".
+func worth(c diagnose.Candidate) string {
+	text := mins(c.Minutes)
+	switch {
+	case c.Value >= 0.5:
+		return text + ", saves about " + mins(c.Value)
+	case c.Test.Must:
+		return text + ", must be done"
+	}
+	return text
+}
+
+func whyNow(c diagnose.Candidate) string {
+	text := fmt.Sprintf("tells %.2f bit about the cause", c.Bits)
+	if c.Value > 0 {
+		text = "on average it saves " + mins(c.Value) + " of wrong repairs and comebacks beyond its own " + mins(c.Minutes) + "; it " + text
+	}
+	if c.Test.Must {
+		text += "; this check has to be done before a rebuild is called good"
+	}
+	return text
+}
+
+func placeOf(c diagnose.Candidate) string {
+	switch {
+	case c.Part != "" && c.Lifted:
+		return c.Part + ", a lead lifted"
+	case c.Part != "":
+		return c.Part
+	case c.Position != "":
+		return c.Position + ", all its parts together, in circuit"
+	}
+	return "the board"
+}
+
+// resultWords is a result with its reading and meaning: "shorted (about 0.5 Ω, within a factor of 3): …".
+func resultWords(r knowledge.Result, unit quantity.Unit) string {
+	text := r.ID
+	if r.Times > 1 {
+		middle := "what " + strings.TrimPrefix(r.Expected, "expected.") + " gives for this board"
+		if r.Expected == "" {
+			middle = quantity.Format(r.Median, unit)
+		}
+		text += " (about " + middle + ", most within a factor of " + strconv.FormatFloat(r.Times, 'g', 3, 64) + ")"
+	}
+	if r.Means != "" {
+		text += ": " + r.Means
+	}
+	return text
+}
+
+// needWords says what state of the board a test needs.
+func needWords(need string) string {
+	switch safety.Need(need) {
+	case safety.NeedQuestion:
+		return "asking and looking only, nothing is touched"
+	case safety.NeedDead:
+		return "a dead board, every store of energy proved"
+	case safety.NeedControlPower:
+		return "control supply on, bus disconnected"
+	case safety.NeedLowBus:
+		return "a low, current-limited bus"
+	case safety.NeedFull:
+		return "the full bus"
+	}
+	return need
+}
+
+func storedWords(p *safety.Plan) string {
+	return "this board can hold " + mostEnergy(p) + " at up to " + volts(p.BusV) + ", and the charge comes back: a dead check lives 10 minutes"
+}
+
+func cautionTexts(base *knowledge.Base, ids []string) []string {
+	var out []string
+	for _, id := range ids {
+		if c := base.Caution(id); c != nil {
+			out = append(out, c.Text)
+		} else {
+			out = append(out, id+" (not in this rule base)")
+		}
+	}
+	return out
+}
+
+var otherColumns = []column{{width: 2}, {}, {width: 16}, {width: 7, right: true}, {width: 10, right: true}}
+
+func writeOthers(s *screen, others []diagnose.Candidate) {
+	if len(others) == 0 {
+		return
+	}
+	s.head("THEN", "")
+	s.grid(otherColumns, otherRows(others, shownOthers))
+	if more := len(others) - shownOthers; more > 0 {
+		s.line(neutral, fmt.Sprintf("   and %d more", more))
+	}
+}
+
+func otherRows(others []diagnose.Candidate, most int) [][]entry {
+	var rows [][]entry
+	for i, c := range others {
+		if i == most {
+			break
+		}
+		value := "must do"
+		if c.Value >= 0.5 {
+			value = "saves " + strconv.FormatFloat(c.Value, 'f', 0, 64)
+		}
+		rows = append(rows, []entry{{}, {Text: c.Test.Title}, {Text: fit(plain(placeShort(c)), 16)}, {Text: mins(c.Minutes)}, {Text: value}})
+	}
+	return rows
+}
+
+func placeShort(c diagnose.Candidate) string {
+	if c.Part != "" && c.Lifted {
+		return c.Part + " lifted"
+	}
+	return place(c.Part, c.Position)
+}
+
+func writeRepairs(s *screen, base *knowledge.Base, n *diagnose.Suggestion, known Beside) {
+	if len(n.Repair) == 0 {
+		return
+	}
+	if before := repairHeld(n, known); before != "" {
+		s.hang(caution, "repair: ", before)
+		return
+	}
+	for _, id := range n.Repair {
+		text := id
+		if r := base.Repair(id); r != nil {
+			text = r.Title + ", " + mins(r.Minutes)
+		}
+		s.hang(strong, "REPAIR  ", text+": "+known.stateOfKnowledge())
+	}
+}
+
+// writeLocked lists the most valuable locked tests once for each thing that locks them.
+func writeLocked(s *screen, n *diagnose.Suggestion) {
+	groups := lockedGroups(n)
+	if len(groups) == 0 {
+		return
+	}
+	s.head("LOCKED", "")
+	quiet, powered := 0, 0
+	for _, g := range groups {
+		if !g.worthIt() {
+			on := g.powered()
+			quiet, powered = quiet+len(g.tests)-on, powered+on
+			continue
+		}
+		s.hang(caution, "   ", g.titles())
+		for i, why := range g.why {
+			s.item(neutral, "because", why)
+			if i < len(g.unlock) && g.unlock[i] != "" {
+				s.item(mandatory, "do this", g.unlock[i])
+			}
+		}
+	}
+	if quiet > 0 {
+		s.hang(neutral, "   ", count(quiet, "other test is", "other tests are")+" locked; none is worth its minutes now.")
+	}
+	if powered > 0 {
+		s.hang(neutral, "   ", count(powered, "powered test stays", "powered tests stay")+" locked in this version until hold points 3 and 4 exist; none is worth its minutes by itself now.")
+	}
+}
+
+// lockedGroup is locked tests that wait for the same things.
+type lockedGroup struct {
+	tests       []diagnose.Candidate
+	why, unlock []string
+}
+
+func (g lockedGroup) worthIt() bool {
+	for _, c := range g.tests {
+		if c.Value > 0 || c.Test.Must {
+			return true
+		}
+	}
+	return false
+}
+
+// powered counts the tests that put energy into the board.
+func (g lockedGroup) powered() int {
+	n := 0
+	for _, c := range g.tests {
+		if safety.Need(c.Test.Needs).Powered() {
+			n++
+		}
+	}
+	return n
+}
+
+func (g lockedGroup) titles() string {
+	var out []string
+	for i, c := range g.tests {
+		if i == 3 {
+			out = append(out, fmt.Sprintf("and %d more", len(g.tests)-3))
+			break
+		}
+		text := c.Test.Title
+		if p := placeShort(c); p != "board" {
+			text += ", " + p
+		}
+		if c.Value >= 0.5 {
+			text += " (saves about " + mins(c.Value) + ")"
+		}
+		out = append(out, text)
+	}
+	return strings.Join(out, "; ")
+}
+
+func lockedGroups(n *diagnose.Suggestion) []lockedGroup {
+	var groups []lockedGroup
+	at := map[string]int{}
+	for _, c := range n.Tests {
+		if c.Allowed {
+			continue
+		}
+		key := strings.Join(c.BlockedBy, "\x00")
+		k, ok := at[key]
+		if !ok {
+			k = len(groups)
+			at[key] = k
+			groups = append(groups, lockedGroup{why: c.BlockedBy, unlock: c.UnlockedBy})
+		}
+		groups[k].tests = append(groups[k].tests, c)
+	}
+	return groups
+}
+
+// Withheld prints which hold points withhold an instruction, and what to do about each.
+func Withheld(w io.Writer, what string, missing []safety.Missing, at time.Time, style Style) error {
+	s := newScreen(style)
+	s.hang(danger, "WITHHELD  ", what)
+	writeMissing(s, missing)
+	s.say(neutral, "At "+moment(at)+". Local codes and licensed practice come first.")
+	return s.write(w)
+}
+
+func writeMissing(s *screen, missing []safety.Missing) {
+	for _, m := range missing {
+		s.item(caution, "point "+strconv.Itoa(m.Point), m.Text)
+		if m.Unlock != "" {
+			s.item(mandatory, "do this", m.Unlock)
+		}
+	}
+}
