@@ -1,0 +1,88 @@
+package main
+
+import (
+	"errors"
+	"fmt"
+	"io"
+	"strings"
+
+	"drivemend/cmd/drivemend/internal/ask"
+	"drivemend/measure"
+)
+
+// The exit statuses. They are part of the interface.
+const (
+	exitDone     = 0 // what was asked for was done
+	exitInput    = 1 // the input is wrong: a case, a rule file, a reading, a name that is not there
+	exitCommand  = 2 // the command line is wrong
+	exitWithheld = 3 // a hold point withheld the instruction, or the chosen rebuild is not within
+)
+
+// failure is an error with its exit status and what to do about it.
+type failure struct {
+	status  int
+	message string
+	hints   []string
+}
+
+func (f *failure) Error() string { return f.message }
+
+// wrongCommand is a command line that cannot be read.
+func wrongCommand(message string, hints ...string) error {
+	return &failure{exitCommand, message, hints}
+}
+
+// wrongInput is something read or named that cannot be used.
+func wrongInput(message string, hints ...string) error { return &failure{exitInput, message, hints} }
+
+// errWithheld ends a command whose output has already said what was withheld and why.
+var errWithheld = &failure{status: exitWithheld}
+
+// noSuch tells that a name is not there, and which one is spelt most like it.
+func noSuch(what, name, nearest, elsewhere string) error {
+	var hints []string
+	if nearest != "" {
+		hints = append(hints, "the nearest is "+nearest)
+	}
+	if elsewhere != "" {
+		hints = append(hints, elsewhere)
+	}
+	return wrongInput("there is no "+what+" "+name, hints...)
+}
+
+// report prints an error and gives the exit status. It is the only place that writes to standard error.
+func report(w io.Writer, err error) int {
+	var f *failure
+	var p measure.Problems
+	var changed *measure.ChangedError
+	switch {
+	case err == nil:
+		return exitDone
+	case errors.As(err, &f):
+		if f.message != "" {
+			printFault(w, f.message, f.hints...)
+		}
+		return f.status
+	case errors.As(err, &p):
+		for _, one := range p {
+			hint := one.Hint
+			one.Hint = ""
+			printFault(w, one.String(), hint)
+		}
+	case errors.As(err, &changed):
+		printFault(w, err.Error())
+	default:
+		printFault(w, err.Error())
+	}
+	return exitInput
+}
+
+// printFault prints one fault and what to do about it.
+func printFault(w io.Writer, message string, hints ...string) {
+	fmt.Fprintf(w, "drivemend: %s\n", ask.Clean(strings.TrimRight(message, "\n")))
+	for _, h := range hints {
+		if h != "" {
+			fmt.Fprintf(w, "hint: %s\n", ask.Clean(h))
+		}
+	}
+}
