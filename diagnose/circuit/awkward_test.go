@@ -283,21 +283,25 @@ func TestUnknownNames(t *testing.T) {
 	}
 }
 
-// Stepping does not allocate: some 1700 steps more cost fewer than one allocation for fifty steps (23 when last
-// counted, for the tables of longer spans).
+// Stepping allocates nothing: more time must not cost more allocations. The runtime's own allocations can fall into a
+// count, so the least of several counts.
 func TestNoAllocationPerStep(t *testing.T) {
 	c := lc(1, 1, 1, 0, 0)
 	c.Diode("D", c.Node("d"), 0, 100, 1)
 	count := func(end float64) float64 {
-		return testing.AllocsPerRun(5, func() {
-			r := begin(t, c, WithoutTrace())
-			r.Probe(c.Node("d"), 0)
-			to(t, r, 0.01) // the same tables for both
-			to(t, r, end)
-		})
+		least := math.Inf(1)
+		for range 5 {
+			least = math.Min(least, testing.AllocsPerRun(5, func() {
+				r := begin(t, c, WithoutTrace())
+				r.Probe(c.Node("d"), 0)
+				to(t, r, 0.01) // the same tables for both
+				to(t, r, end)
+			}))
+		}
+		return least
 	}
-	if short, long := count(30), count(300); long > short+1700/50 {
-		t.Errorf("%g allocations to 30 s, %g to 300 s", short, long)
+	if short, long := count(30), count(40); long > short {
+		t.Errorf("%g allocations to 30 s, %g to 40 s", short, long)
 	}
 }
 

@@ -131,7 +131,7 @@ func stripped(m *Margin) string {
 func TestExtremeBoards(t *testing.T) {
 	solved, refused := 0, 0
 	boards := rapid.Custom(extremeBoard)
-	count := 8 // DRIVEMEND_CIRCUITS asks for more; a hang ends in the time limit of the test run
+	count := 20 // DRIVEMEND_CIRCUITS asks for more; a hang ends in the time limit of the test run
 	if n, err := strconv.Atoi(os.Getenv("DRIVEMEND_CIRCUITS")); err == nil {
 		count = n
 	}
