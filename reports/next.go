@@ -81,7 +81,10 @@ func whyNow(c diagnose.Candidate) string {
 	if c.Value > 0 {
 		text = "on average it saves " + mins(c.Value) + " of wrong repairs and comebacks beyond its own " + mins(c.Minutes) + "; it " + text
 	}
-	if c.Test.Must {
+	switch {
+	case c.Test.Must && c.Test.Needs == "question":
+		text += "; history is asked first, while memories are fresh"
+	case c.Test.Must:
 		text += "; this check has to be done before a rebuild is called good"
 	}
 	return text
