@@ -38,6 +38,7 @@ func buildCase(root *entry) *Case {
 		c.Outcome = &Outcome{Faults: o.names("faults"), Parts: o.names("parts"), Causes: o.names("causes"),
 			Stress: o.word("stress"), ConfirmedBy: o.word("confirmed_by"), Closed: o.when("closed")}
 	}
+	buildRecord(c, root)
 	return c
 }
 
@@ -88,6 +89,9 @@ func buildSafety(s *entry) Safety {
 	for _, e := range s.items("energised") {
 		out.Energised = append(out.Energised, Energised{What: e.word("what"), At: e.when("at"), Line: e.line})
 	}
+	for _, e := range s.items("before") {
+		out.Before = append(out.Before, buildBefore(e))
+	}
 	return out
 }
 
@@ -95,7 +99,7 @@ func buildSafety(s *entry) Safety {
 func buildObservation(e *entry) Observation {
 	o := Observation{Test: e.word("test"), Part: e.word("part"), Position: e.word("position"), At: e.when("at"),
 		Result: e.word("result"), Answer: e.word("answer"), Seen: e.word("seen"), Polarity: e.word("polarity"),
-		State: e.word("state"), Motor: e.word("motor"), Instrument: e.word("instrument"), Note: e.word("note"), Line: e.line}
+		State: e.word("state"), Motor: e.word("motor"), Surface: e.word("surface"), Instrument: e.word("instrument"), Note: e.word("note"), Line: e.line}
 	if c := e.child("reading"); c != nil {
 		o.Reading = c.reading
 	}

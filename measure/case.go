@@ -25,6 +25,11 @@ type Case struct {
 	Rebuild                                    *Rebuild
 	BringUp                                    []Stage
 	Outcome                                    *Outcome
+	Repairs                                    []Repair // before this case
+	FaultLog                                   []FaultCode
+	Settings                                   []Setting // as found
+	Photographs                                []Photograph
+	Steps                                      []StepEntry
 }
 
 // Source cites where a published case was read.
@@ -43,6 +48,7 @@ type Observation struct {
 	Polarity       string            // forward, reverse, ""
 	State          string            // lifted, in-circuit, ""
 	Motor          string            // on, off, ""
+	Surface        string            // what a camera looked at: matt-dot, tape, moulded, painted, bare-metal, ""
 	Instrument     string
 	Accuracy       float64 // relative; 0 when not stated
 	Range          float64 // top of the instrument's range in the unit of the reading, 0 when not stated
@@ -56,6 +62,7 @@ type Safety struct {
 	DeadChecks []DeadCheck
 	Links      []Link
 	Energised  []Energised
+	Before     []Before
 }
 
 // Isolation is one statement that the board is cut off from every source.

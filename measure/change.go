@@ -117,6 +117,7 @@ func (f *File) Observe(o Observation) error {
 	m.add("polarity", o.Polarity)
 	m.add("state", o.State)
 	m.add("motor", o.Motor)
+	m.add("surface", o.Surface)
 	m.add("instrument", o.Instrument)
 	if o.Accuracy != 0 {
 		m.add("accuracy", strconv.FormatFloat(o.Accuracy, 'g', -1, 64))

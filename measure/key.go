@@ -73,7 +73,7 @@ func (r *rung) child(name string) (*rung, bool) {
 // keyTable builds the tree once: rows in order and the tree over them.
 var keyTable = sync.OnceValue(func() *table {
 	t := &table{root: &rung{Key: Key{Kind: KindMap, Help: "one failed board"}, below: map[string]*rung{}}}
-	for _, rows := range [][]Key{caseKeys(), boardKeys(), historyKeys(), rebuildKeys(), outcomeKeys()} {
+	for _, rows := range [][]Key{caseKeys(), boardKeys(), recordKeys(), historyKeys(), rebuildKeys(), outcomeKeys()} {
 		for _, k := range rows {
 			t.add(k)
 		}

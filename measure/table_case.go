@@ -1,6 +1,10 @@
 package measure
 
-import "drivemend/measure/quantity"
+import (
+	"slices"
+
+	"drivemend/measure/quantity"
+)
 
 // caseKeys are the keys at the top of a case file.
 func caseKeys() []Key {
@@ -49,8 +53,11 @@ func historyKeys() []Key {
 		word("safety.energised[].what", "what put energy in", "powered-step", "source", "shaft").
 			used("hold points").required(),
 		plain("safety.energised[].at", KindTime, "when").used("hold points").required(),
-	}, observationKeys()...)
+	}, slices.Concat(beforeKeys(), observationKeys())...)
 }
+
+// surfaces are what a camera can look at.
+var surfaces = []string{"matt-dot", "tape", "moulded", "painted", "bare-metal"}
 
 // observationKeys are the keys of observations, of locating a part and of captures.
 func observationKeys() []Key {
@@ -70,6 +77,8 @@ func observationKeys() []Key {
 			used("ranking"),
 		word("observations[].state", "the part lifted out of the circuit, or in it", "lifted", "in-circuit").used("ranking"),
 		word("observations[].motor", "motor connected during the reading", "on", "off").used("ranking"),
+		word("observations[].surface", "what a camera looked at; bare metal, or nothing stated, reads too cold", surfaces...).
+			used("ranking", "report"),
 		plain("observations[].instrument", KindText, "which instrument").used("report"),
 		ratio("observations[].accuracy", 0, 1, "accuracy of the instrument, relative").used("ranking").
 			typical("", "2 %", "design, judgement"),
@@ -85,8 +94,7 @@ func observationKeys() []Key {
 		plain("locate.*.rises", KindList, "how much warmer each part became"),
 		plain("locate.*.rises[].part", KindName, "the part").used("locate").required(),
 		amount("locate.*.rises[].rise", quantity.Kelvin, -50, 400, "rise over its start").used("locate").required(),
-		word("locate.*.rises[].surface", "what the camera looked at", "matt-dot", "tape", "moulded", "painted", "bare-metal").
-			used("locate"),
+		word("locate.*.rises[].surface", "what the camera looked at", surfaces...).used("locate"),
 		plain("locate.*.drops", KindList, "voltage drops along the bank"),
 		plain("locate.*.drops[].from", KindName, "the part the drop was read from").used("locate").required(),
 		plain("locate.*.drops[].to", KindName, "the part it was read to").used("locate").required(),
