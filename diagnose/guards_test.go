@@ -80,7 +80,7 @@ func TestUnknownReadingsCountAsPowered(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		if got := len(PoweredTimes(base, f.Case)); got != want {
+		if got := len(poweredTimes(base, f.Case)); got != want {
 			t.Errorf("%s: %d powered times, want %d", line, got, want)
 		}
 	}

@@ -111,36 +111,22 @@ func (c Candidate) history() bool { return c.Must && c.Test.Needs == "question" 
 
 // gates answers which needs the safety state grants, each asked once.
 type gates struct {
-	c       *measure.Case
-	now     time.Time
-	powered []time.Time
-	seen    map[string]safety.Decision
+	c        *measure.Case
+	now      time.Time
+	evidence safety.Evidence
+	seen     map[safety.Work]safety.Decision
 }
 
 func newGates(base *knowledge.Base, c *measure.Case, now time.Time) *gates {
-	return &gates{c, now, PoweredTimes(base, c), map[string]safety.Decision{}}
-}
-
-// PoweredTimes gives the times at which a test of the case put energy into the board. A reading of a test that this
-// base does not know is taken as powered: nobody here can tell that it was not.
-func PoweredTimes(base *knowledge.Base, c *measure.Case) []time.Time {
-	var times []time.Time
-	for _, ob := range c.Observations {
-		t := base.Test(ob.Test)
-		switch {
-		case ob.Answer != "":
-		case t == nil && ob.Reading != nil, t != nil && safety.Need(t.Needs).Powered():
-			times = append(times, ob.At)
-		}
-	}
-	return times
+	return &gates{c, now, EvidenceOf(base, c), map[safety.Work]safety.Decision{}}
 }
 
 func (g *gates) apply(c *Candidate) {
-	d, ok := g.seen[c.Test.Needs]
+	work := WorkOf(c.Test)
+	d, ok := g.seen[work]
 	if !ok {
-		d = safety.Check(g.c, safety.Need(c.Test.Needs), g.now, g.powered...)
-		g.seen[c.Test.Needs] = d
+		d = safety.Check(g.c, work, g.now, g.evidence)
+		g.seen[work] = d
 	}
 	c.Allowed = d.Allowed
 	for _, m := range d.Missing {

@@ -53,11 +53,11 @@ func chain(path string) (Report, error) {
 	if r.Discharge, err = safety.Discharge(safety.InputOf(c.Board)); err != nil {
 		return r, err
 	}
-	powered := diagnose.PoweredTimes(base, c)
-	r.Safety = safety.StatusOf(c, testTime, powered...)
+	evidence := diagnose.EvidenceOf(base, c)
+	r.Safety = safety.StatusOf(c, testTime, evidence)
 	for i, o := range c.Observations {
 		if t := base.Test(o.Test); t != nil {
-			if out, missing := safety.OutsideHoldPoint(c, o, safety.Need(t.Needs), powered...); out {
+			if out, missing := safety.OutsideHoldPoint(c, o, diagnose.WorkOf(t), evidence); out {
 				r.Outside = append(r.Outside, Outside{i, missing})
 			}
 		}

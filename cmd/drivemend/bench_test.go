@@ -249,7 +249,7 @@ func TestNoLockedTestIsAsked(t *testing.T) {
 		a.answer = func(q ask.Question) ask.Answer {
 			if test := b.testOf(q); test != nil {
 				c := b.disk()
-				if d := safety.Check(c, safety.Need(test.Needs), b.now, diagnose.PoweredTimes(b.base, c)...); !d.Allowed {
+				if d := safety.Check(c, diagnose.WorkOf(test), b.now, diagnose.EvidenceOf(b.base, c)); !d.Allowed {
 					t.Errorf("seed %d: %s is asked while %v", seed, test.ID, d.Missing)
 				}
 			}

@@ -138,28 +138,28 @@ func (k *chain) discharge(at time.Time) (*safety.Plan, error) {
 // beside is what a screen shows beside its result: what was read outside its hold point, the leading cause, the safety
 // state at a moment.
 func (k *chain) beside(r *diagnose.Ranking, at time.Time) reports.Beside {
-	status := safety.StatusOf(k.c, at, k.powered()...)
+	status := safety.StatusOf(k.c, at, k.evidence())
 	return reports.Beside{Ranking: r, Safety: &status, Outside: k.outside()}
 }
 
-func (k *chain) powered() []time.Time { return diagnose.PoweredTimes(k.base, k.c) }
+func (k *chain) evidence() safety.Evidence { return diagnose.EvidenceOf(k.base, k.c) }
 
 // check tells whether an instruction of a need may be given at a moment.
 func (k *chain) check(need safety.Need, at time.Time) safety.Decision {
-	return safety.Check(k.c, need, at, k.powered()...)
+	return safety.Check(k.c, safety.Work{Need: need}, at, k.evidence())
 }
 
 // outside lists the readings that were taken outside their hold points. Those of unknown tests are left out: nothing
 // tells what they needed.
 func (k *chain) outside() []reports.Outside {
 	var out []reports.Outside
-	powered := k.powered()
+	evidence := k.evidence()
 	for i, o := range k.c.Observations {
 		t := k.base.Test(o.Test)
 		if t == nil {
 			continue
 		}
-		if yes, missing := safety.OutsideHoldPoint(k.c, o, safety.Need(t.Needs), powered...); yes {
+		if yes, missing := safety.OutsideHoldPoint(k.c, o, diagnose.WorkOf(t), evidence); yes {
 			out = append(out, reports.Outside{Observation: i, Missing: missing})
 		}
 	}
@@ -182,7 +182,7 @@ func (k *chain) report(at time.Time) (reports.Report, error) {
 	if r.Discharge, err = k.discharge(at); err != nil {
 		return r, err
 	}
-	r.Safety = safety.StatusOf(k.c, at, k.powered()...)
+	r.Safety = safety.StatusOf(k.c, at, k.evidence())
 	return r, nil
 }
 

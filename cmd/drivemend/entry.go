@@ -180,7 +180,7 @@ func (k *chain) afterwards(r *diagnose.Ranking) []string {
 	if t == nil {
 		return lines
 	}
-	if yes, missing := safety.OutsideHoldPoint(k.c, o, safety.Need(t.Needs), k.powered()...); yes {
+	if yes, missing := safety.OutsideHoldPoint(k.c, o, diagnose.WorkOf(t), k.evidence()); yes {
 		lines = append(lines, "kept, and marked as taken outside its hold point:")
 		for _, m := range missing {
 			lines = append(lines, fmt.Sprintf("  point %d: %s", m.Point, m.Text))

@@ -218,7 +218,7 @@ func soonest(st safety.Status) *safety.PointStatus {
 }
 
 func (s *session) status() safety.Status {
-	return safety.StatusOf(s.file.Case, s.clock(), s.chain.powered()...)
+	return safety.StatusOf(s.file.Case, s.clock(), s.chain.evidence())
 }
 
 // rankingAside shows the ranking from within a question.

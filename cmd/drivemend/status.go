@@ -34,7 +34,7 @@ func (a *app) status(path string) error {
 	if err != nil {
 		return err
 	}
-	st := safety.StatusOf(f.Case, at, diagnose.PoweredTimes(base, f.Case)...)
+	st := safety.StatusOf(f.Case, at, diagnose.EvidenceOf(base, f.Case))
 	return a.show(func(w io.Writer) error { return reports.StatusJSON(w, f.Case, st) },
 		func(w io.Writer) error { return reports.Status(w, f.Case, st, a.style()) })
 }

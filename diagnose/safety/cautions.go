@@ -40,11 +40,16 @@ type warning struct {
 	read   Grade
 }
 
-func cautions(in Input, p *Plan) []Caution {
+func hazardOf(in Input, p *Plan) hazard {
 	h := hazard{in: in, plan: p, joule: p.WorstEnergyJ}
 	for _, s := range in.Stores {
 		h.volt = max(h.volt, s.Voltage.Value)
 	}
+	return h
+}
+
+func cautions(in Input, p *Plan) []Caution {
+	h := hazardOf(in, p)
 	var out []Caution
 	for _, w := range warnings {
 		if w.when(h) {

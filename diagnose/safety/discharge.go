@@ -186,7 +186,9 @@ type Plan struct {
 	Bleeder                              *Bleeder // nil where none is stated
 	Recovery                             Recovery
 	Steps                                []Step
+	Limits []Limit // the thresholds of every source, side by side
 	Cautions                             []Caution
+	Limits                               []Limit // the thresholds of every source, side by side
 	Needs                                []Wanted
 }
 
@@ -214,6 +216,7 @@ func Discharge(in Input) (*Plan, error) {
 	}
 	p.Recovery = recoveryOf(in.BusV)
 	p.Steps = steps(in, p)
+	p.Limits = limits(hazardOf(in, p))
 	p.Cautions = cautions(in, p)
 	return p, nil
 }

@@ -30,7 +30,7 @@ func TestTextsOfOneBoard(t *testing.T) {
 			energise("10:30")(&f.Case.Safety)
 		}
 		text += "\nohms at " + clock + "\n"
-		for _, m := range Check(f.Case, NeedDead, at(t, clock)).Missing {
+		for _, m := range Check(f.Case, Work{Need: NeedDead}, at(t, clock), Evidence{}).Missing {
 			text += fmt.Sprintf("  %d  %s\n     -> %s\n", m.Point, m.Text, m.Unlock)
 		}
 	}

@@ -281,7 +281,7 @@ func undatedPower(s measure.Safety, powered []time.Time, soundAt []bool, now tim
 func compare(t *rapid.T, c *measure.Case, now time.Time, powered []time.Time, isolated, dead bool) {
 	want := map[Need]bool{NeedQuestion: true, NeedDeadCheck: isolated, NeedDischarge: isolated, NeedDead: dead}
 	for _, need := range Needs() {
-		d := Check(c, need, now, powered...)
+		d := Check(c, Work{Need: need}, now, Evidence{Powered: powered})
 		if d.Allowed != want[need] {
 			t.Fatalf("%s: allowed %v, the replay says %v; missing %+v\n%+v powered %v now %s", need, d.Allowed, want[need], d.Missing, c.Safety, powered, now)
 		}
@@ -294,7 +294,7 @@ func compare(t *rapid.T, c *measure.Case, now time.Time, powered []time.Time, is
 			}
 		}
 	}
-	outside, _ := OutsideHoldPoint(c, measure.Observation{Result: "shorted", At: now}, NeedDead, powered...)
+	outside, _ := OutsideHoldPoint(c, measure.Observation{Result: "shorted", At: now}, Work{Need: NeedDead}, Evidence{Powered: powered})
 	if dead && outside {
 		t.Fatalf("ohms were allowed at %s, and a reading of that moment is marked", now)
 	}

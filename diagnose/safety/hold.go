@@ -19,24 +19,25 @@ type Missing struct {
 // Decision is the answer to whether the instruction for a step may be given now.
 type Decision struct {
 	Need    Need
+	Tool    Tool
 	At      time.Time // the time that was used
 	Allowed bool
 	Missing []Missing // empty exactly when allowed
 	Status  Status
 }
 
-// Check tells whether the instruction for a step of this need may be given at the time now. powered are the times of
-// the observations of powered tests (see PoweredTimes); each of them counts as energy put into the board. It never
-// errs towards allowing: an unknown need, a time that is missing, or one in the future is taken against the step.
-func Check(c *measure.Case, need Need, now time.Time, powered ...time.Time) Decision {
-	d := Decision{Need: need, At: now}
+// Check tells whether the instruction for this work may be given at the time now, on the safety record of the case and
+// what the rule base reads out of its observations. It never errs towards allowing: an unknown need or tool, a time that
+// is missing, or one in the future is taken against the step.
+func Check(c *measure.Case, w Work, now time.Time, e Evidence) Decision {
+	d := Decision{Need: w.Need, Tool: w.Tool, At: now}
 	if c == nil {
 		d.Missing = []Missing{{0, "there is no case", "start one"}}
 		return d
 	}
-	h := history{now: now, safety: c.Safety, powered: powered}
+	h := history{now: now, safety: c.Safety, powered: e.Powered}
 	d.Status = h.status(c.Board)
-	d.Missing = h.missing(need, d.Status)
+	d.Missing = h.missing(w.Need, d.Status)
 	d.Allowed = len(d.Missing) == 0
 	return d
 }
@@ -92,19 +93,19 @@ func poweredMissing(s Status) []Missing {
 // moment; nothing when it was made within its hold points. Such a reading is kept, and marked. A question and an
 // answer without a reading (skipped, later) are never outside; a reading of a powered test always is as long as this
 // version keeps no record of hold point 3.
-func OutsideHoldPoint(c *measure.Case, o measure.Observation, need Need, powered ...time.Time) (outside bool, missing []Missing) {
-	if need == NeedQuestion || o.Answer != "" {
+func OutsideHoldPoint(c *measure.Case, o measure.Observation, w Work, e Evidence) (outside bool, missing []Missing) {
+	if w.Need == NeedQuestion || o.Answer != "" {
 		return false, nil
 	}
-	if need.Powered() {
+	if w.Need.Powered() {
 		return true, poweredOutside(c, o.At)
 	}
 	if o.At.IsZero() || c == nil {
 		return true, []Missing{{2, "the reading carries no time, so no dead check can be shown to stand before it", "give the reading its time"}}
 	}
 	then := *c
-	then.Safety, powered = asOf(c.Safety, powered, o.At)
-	d := Check(&then, need, o.At, powered...)
+	then.Safety, e.Powered = asOf(c.Safety, e.Powered, o.At)
+	d := Check(&then, w, o.At, e)
 	return !d.Allowed, d.Missing
 }
 
@@ -120,21 +121,6 @@ func poweredOutside(c *measure.Case, at time.Time) []Missing {
 		m = append(m, Missing{2, "a shorting link was fitted, since " + clock(link.Since) + ": power went straight into it", "say in the report what became of it, or correct the times of the link"})
 	}
 	return m
-}
-
-// PoweredTimes gives the times of the observations whose test needs power, in file order; needs answers for a test id,
-// and an answer that is not a need counts as power. Skipped answers are left out: nothing was switched on for them.
-func PoweredTimes(c *measure.Case, needs func(test string) Need) []time.Time {
-	if c == nil {
-		return nil
-	}
-	var times []time.Time
-	for _, o := range c.Observations {
-		if o.Answer == "" && needs(o.Test).Powered() {
-			times = append(times, o.At)
-		}
-	}
-	return times
 }
 
 // touch says in words what a reading at a store allows; burn adds the warning that stands below the shock limit.

@@ -70,7 +70,7 @@ func TestEveryStoreHasToBeDead(t *testing.T) {
 				}
 				c.Safety.DeadChecks[k].At = at(t, "10:06")
 			}
-			d := Check(c, NeedDead, now)
+			d := Check(c, Work{Need: NeedDead}, now, Evidence{})
 			if d.Allowed != (f.point < 0) {
 				t.Errorf("%s, %s: allowed %v, missing %+v", store.Point, f.name, d.Allowed, d.Missing)
 			}
@@ -92,7 +92,7 @@ func TestADeadCheckLivesTenMinutes(t *testing.T) {
 		{"10:06", false}, {"10:07", true}, {"10:12", true}, {"10:16:59", true}, {"10:17", false}, {"10:18", false}, {"23:00", false}, {"09:00", false},
 	} {
 		c := bench(t, "topology: low-side-chopper\nsupply: battery\nload: {kind: dc-motor}\nbus: {highest: 60 V, capacitance: 10 mF}")
-		d := Check(c, NeedDead, at(t, row.now))
+		d := Check(c, Work{Need: NeedDead}, at(t, row.now), Evidence{})
 		if d.Allowed != row.allowed {
 			t.Errorf("%s: allowed %v, missing %+v", row.now, d.Allowed, d.Missing)
 		}
@@ -131,7 +131,7 @@ func TestIsolation(t *testing.T) {
 		row.change(&i)
 		c.Safety.Isolation = []measure.Isolation{i}
 		for _, need := range []Need{NeedDeadCheck, NeedDischarge} {
-			d := Check(c, need, at(t, "10:00"))
+			d := Check(c, Work{Need: need}, at(t, "10:00"), Evidence{})
 			if d.Allowed != row.allowed {
 				t.Errorf("%s, %s: allowed %v, missing %+v", row.name, need, d.Allowed, d.Missing)
 			}
@@ -211,10 +211,10 @@ func TestOrderInTime(t *testing.T) {
 			powered = append(powered, at(t, clock))
 		}
 		now := at(t, "10:12")
-		if d := Check(c, NeedDeadCheck, now, powered...); d.Allowed != row.step {
+		if d := Check(c, Work{Need: NeedDeadCheck}, now, Evidence{Powered: powered}); d.Allowed != row.step {
 			t.Errorf("%s: dead check allowed %v, missing %+v", row.name, d.Allowed, d.Missing)
 		}
-		if d := Check(c, NeedDead, now, powered...); d.Allowed != row.ohms {
+		if d := Check(c, Work{Need: NeedDead}, now, Evidence{Powered: powered}); d.Allowed != row.ohms {
 			t.Errorf("%s: ohms allowed %v, missing %+v", row.name, d.Allowed, d.Missing)
 		}
 	}
@@ -246,7 +246,7 @@ func isolatedAgain(energised, isolated string) func(*measure.Safety) {
 func TestPoweredStepsAreNeverGiven(t *testing.T) {
 	c := bench(t, wholeBoard)
 	for _, need := range []Need{NeedControlPower, NeedLowBus, NeedFull, "", "ohms"} {
-		d := Check(c, need, at(t, "10:12"))
+		d := Check(c, Work{Need: need}, at(t, "10:12"), Evidence{})
 		if d.Allowed || len(d.Missing) == 0 {
 			t.Errorf("%q is allowed", need)
 		}
@@ -254,10 +254,10 @@ func TestPoweredStepsAreNeverGiven(t *testing.T) {
 			t.Errorf("%q: no word on what unlocks it", need)
 		}
 	}
-	if d := Check(nil, NeedQuestion, at(t, "10:12")); d.Allowed {
+	if d := Check(nil, Work{Need: NeedQuestion}, at(t, "10:12"), Evidence{}); d.Allowed {
 		t.Error("allowed without a case")
 	}
-	if d := Check(&measure.Case{}, NeedQuestion, at(t, "10:12")); !d.Allowed {
+	if d := Check(&measure.Case{}, Work{Need: NeedQuestion}, at(t, "10:12"), Evidence{}); !d.Allowed {
 		t.Errorf("a question needs nothing: %+v", d.Missing)
 	}
 }
@@ -277,7 +277,7 @@ func TestBetweenFiveAndFiftyVolts(t *testing.T) {
 	} {
 		c := bench(t, "topology: low-side-chopper\n"+row.board+"\nload: {kind: resistive}\nbus: {highest: 60 V, capacitance: 1 mF}")
 		c.Safety.DeadChecks[0].DC = volts(row.volt)
-		d := Check(c, NeedDead, at(t, "10:12"))
+		d := Check(c, Work{Need: NeedDead}, at(t, "10:12"), Evidence{})
 		if got := d.Status.Points[0].Touch; !strings.Contains(got, row.want) {
 			t.Errorf("%g V, %s: %q does not say %q", row.volt, row.board, got, row.want)
 		}
@@ -312,7 +312,7 @@ func TestReadingsOutsideTheirHoldPointAreMarked(t *testing.T) {
 		{"question", NeedQuestion, measure.Observation{Result: "turn-off"}, false},
 		{"powered", NeedLowBus, measure.Observation{Result: "clean", At: at(t, "10:12")}, true},
 	} {
-		outside, missing := OutsideHoldPoint(c, row.o, row.need, powered...)
+		outside, missing := OutsideHoldPoint(c, row.o, Work{Need: row.need}, Evidence{Powered: powered})
 		if outside != row.outside || outside != (len(missing) > 0) {
 			t.Errorf("%s: outside %v, missing %+v", row.name, outside, missing)
 		}
@@ -322,27 +322,10 @@ func TestReadingsOutsideTheirHoldPointAreMarked(t *testing.T) {
 func TestALinkThatComesOffInTheFutureIsFitted(t *testing.T) {
 	c := bench(t, "topology: low-side-chopper\nsupply: battery")
 	c.Safety.Links[0].Removed = at(t, "10:30")
-	if s := StatusOf(c, at(t, "10:12")); !s.Link.Fitted || s.Dead {
+	if s := StatusOf(c, at(t, "10:12"), Evidence{}); !s.Link.Fitted || s.Dead {
 		t.Errorf("link %+v, dead %v", s.Link, s.Dead)
 	}
-	if d := Check(c, NeedFull, at(t, "10:12")); len(d.Missing) != 2 || d.Missing[1].Point != 2 {
+	if d := Check(c, Work{Need: NeedFull}, at(t, "10:12"), Evidence{}); len(d.Missing) != 2 || d.Missing[1].Point != 2 {
 		t.Errorf("a fitted link stands against power too: %+v", d.Missing)
-	}
-}
-
-func TestPoweredTimesLeaveOutSkippedAnswers(t *testing.T) {
-	c := &measure.Case{Observations: []measure.Observation{
-		{Test: "scope", Result: "clean", At: at(t, "10:00")},
-		{Test: "scope", Answer: "skipped", At: at(t, "10:01")},
-		{Test: "ohms", Result: "shorted", At: at(t, "10:02")},
-	}}
-	got := PoweredTimes(c, func(test string) Need {
-		if test == "scope" {
-			return NeedFull
-		}
-		return NeedDead
-	})
-	if len(got) != 1 || !got[0].Equal(at(t, "10:00")) {
-		t.Errorf("got %v", got)
 	}
 }

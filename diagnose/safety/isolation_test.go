@@ -125,7 +125,7 @@ func TestAnIsolationIsLookedAtAgain(t *testing.T) {
 			c.Safety.Isolation = append(c.Safety.Isolation, i)
 		}
 		now := moment(row.now)
-		d := Check(c, NeedDeadCheck, now)
+		d := Check(c, Work{Need: NeedDeadCheck}, now, Evidence{})
 		i := d.Status.Isolation
 		if i.Isolated != (row.since != "") || i.Reconfirm == i.Isolated || d.Allowed != i.Isolated {
 			t.Errorf("%s: isolated %v, to look at again %v, allowed %v", row.name, i.Isolated, i.Reconfirm, d.Allowed)
@@ -137,7 +137,7 @@ func TestAnIsolationIsLookedAtAgain(t *testing.T) {
 			t.Errorf("%s: age %s, want %s", row.name, i.Age, want)
 		}
 		for _, need := range []Need{NeedDeadCheck, NeedDischarge, NeedDead} {
-			m := Check(c, need, now).Missing
+			m := Check(c, Work{Need: need}, now, Evidence{}).Missing
 			if row.since == "" && (len(m) == 0 || m[0].Point != 0 || !strings.Contains(m[0].Unlock, "look at the lock again and state the isolation anew")) {
 				t.Errorf("%s, %s: %+v", row.name, need, m)
 			}
@@ -160,7 +160,7 @@ func TestOnlyTheLastLookDecides(t *testing.T) {
 			}
 		}
 		want := last >= 0 && now-last <= 480 && now/1440 == last/1440
-		if i := StatusOf(c, origin.Add(time.Duration(now)*time.Minute)).Isolation; i.Isolated != want || (i.Isolated && i.Since.After(i.Last.At)) {
+		if i := StatusOf(c, origin.Add(time.Duration(now)*time.Minute), Evidence{}).Isolation; i.Isolated != want || (i.Isolated && i.Since.After(i.Last.At)) {
 			t.Fatalf("now %d, last look %d: %+v", now, last, i)
 		}
 	})
@@ -196,11 +196,11 @@ func TestACMeansASourceIsStillConnected(t *testing.T) {
 		}
 		now := at(t, "10:12")
 		for _, need := range []Need{NeedDeadCheck, NeedDischarge} {
-			if d := Check(c, need, now); d.Allowed != row.step || (!row.step && d.Missing[0].Point != 0) {
+			if d := Check(c, Work{Need: need}, now, Evidence{}); d.Allowed != row.step || (!row.step && d.Missing[0].Point != 0) {
 				t.Errorf("%s, %s: allowed %v, missing %+v", row.name, need, d.Allowed, d.Missing)
 			}
 		}
-		d := Check(c, NeedDead, now)
+		d := Check(c, Work{Need: NeedDead}, now, Evidence{})
 		if d.Allowed != row.ohms {
 			t.Errorf("%s: ohms allowed %v, missing %+v", row.name, d.Allowed, d.Missing)
 		}
@@ -214,11 +214,11 @@ func TestACMeansASourceIsStillConnected(t *testing.T) {
 	}
 	c := bench(t, board)
 	c.Safety.DeadChecks[0].AC = volts(24)
-	if p := StatusOf(c, at(t, "10:12")).Points[0]; !strings.Contains(p.Touch, "do not touch") {
+	if p := StatusOf(c, at(t, "10:12"), Evidence{}).Points[0]; !strings.Contains(p.Touch, "do not touch") {
 		t.Errorf("24 V AC: %q", p.Touch)
 	}
 	c.Safety.DeadChecks[0].At = time.Time{}
-	if d := Check(c, NeedDeadCheck, at(t, "10:12")); d.Allowed {
+	if d := Check(c, Work{Need: NeedDeadCheck}, at(t, "10:12"), Evidence{}); d.Allowed {
 		t.Error("AC read at no stated time is let through")
 	}
 }
@@ -227,14 +227,14 @@ func TestPowerWithALinkFittedNamesTheLink(t *testing.T) {
 	c := bench(t, wholeBoard)
 	c.Safety.Links = append(c.Safety.Links, measure.Link{Fitted: at(t, "10:10")})
 	for _, need := range []Need{NeedControlPower, NeedLowBus, NeedFull} {
-		if d := Check(c, need, at(t, "10:12")); !names(d.Missing, 2, "shorting link") || !names(d.Missing, 3, "") {
+		if d := Check(c, Work{Need: need}, at(t, "10:12"), Evidence{}); !names(d.Missing, 2, "shorting link") || !names(d.Missing, 3, "") {
 			t.Errorf("%s: %+v", need, d.Missing)
 		}
-		outside, m := OutsideHoldPoint(c, measure.Observation{Result: "clean", At: at(t, "10:12")}, need)
+		outside, m := OutsideHoldPoint(c, measure.Observation{Result: "clean", At: at(t, "10:12")}, Work{Need: need}, Evidence{})
 		if !outside || !names(m, 2, "shorting link") || !names(m, 3, "") {
 			t.Errorf("reading under %s: %+v", need, m)
 		}
-		if _, m := OutsideHoldPoint(c, measure.Observation{Result: "clean", At: at(t, "10:08")}, need); names(m, 2, "") {
+		if _, m := OutsideHoldPoint(c, measure.Observation{Result: "clean", At: at(t, "10:08")}, Work{Need: need}, Evidence{}); names(m, 2, "") {
 			t.Errorf("reading under %s before the link was fitted: %+v", need, m)
 		}
 	}
@@ -254,16 +254,16 @@ func TestUnlocksSayHow(t *testing.T) {
 	c := bench(t, "topology: three-phase\nsupply: battery\nload: {kind: dc-motor}\nbus: {highest: 700 V, capacitance: 2200 µF}")
 	now := at(t, "10:12")
 	c.Safety.DeadChecks = nil
-	open := missingText(Check(c, NeedDead, now).Missing)
+	open := missingText(Check(c, Work{Need: NeedDead}, now, Evidence{}).Missing)
 	c.Safety.Links = append(c.Safety.Links, measure.Link{Fitted: at(t, "10:10")})
-	linked := missingText(Check(c, NeedDead, now).Missing)
+	linked := missingText(Check(c, Work{Need: NeedDead}, now, Evidence{}).Missing)
 	c.Safety.Isolation = nil
 	for _, row := range []struct{ text, want string }{
 		{open, "drivemend safe dead-check CASE bus --dc … --ac … --proved"},
 		{open, "drivemend safe dead-check CASE upper-half --dc … --ac … --proved"},
 		{open, "state bus.halves: no (drivemend enter CASE board.bus.halves no)"},
 		{linked, "drivemend safe link CASE removed"},
-		{missingText(Check(c, NeedDischarge, now).Missing), "drivemend safe isolation CASE --locked --motor unplugged --other-sources none"},
+		{missingText(Check(c, Work{Need: NeedDischarge}, now, Evidence{}).Missing), "drivemend safe isolation CASE --locked --motor unplugged --other-sources none"},
 	} {
 		if !strings.Contains(row.text, row.want) {
 			t.Errorf("no %q in\n%s", row.want, row.text)
@@ -276,11 +276,11 @@ func TestMomentsOfOneMinuteShowTheirSeconds(t *testing.T) {
 	c.Safety.Links = nil
 	c.Safety.DeadChecks = []measure.DeadCheck{deadCheck(t, "bus", "10:07:05")}
 	c.Safety.Isolation = []measure.Isolation{sound(t, "10:07:40")}
-	if text := missingText(Check(c, NeedDead, at(t, "10:12")).Missing); !strings.Contains(text, "the check of 2026-12-01 10:07:05 was made before the isolation of 2026-12-01 10:07:40") {
+	if text := missingText(Check(c, Work{Need: NeedDead}, at(t, "10:12"), Evidence{}).Missing); !strings.Contains(text, "the check of 2026-12-01 10:07:05 was made before the isolation of 2026-12-01 10:07:40") {
 		t.Error(text)
 	}
 	c.Safety.Isolation = []measure.Isolation{sound(t, "10:08:40")}
-	if text := missingText(Check(c, NeedDead, at(t, "10:12")).Missing); !strings.Contains(text, "the check of 2026-12-01 10:07 was made before the isolation of 2026-12-01 10:08") {
+	if text := missingText(Check(c, Work{Need: NeedDead}, at(t, "10:12"), Evidence{}).Missing); !strings.Contains(text, "the check of 2026-12-01 10:07 was made before the isolation of 2026-12-01 10:08") {
 		t.Error(text)
 	}
 }

@@ -40,8 +40,8 @@ func TestAReadingAboveThePlanRaisesIt(t *testing.T) {
 		if hasCaution(p, "read-higher") != row.higher || hasCaution(p, "above-highest") != row.alarm {
 			t.Errorf("%s: read-higher %v, above-highest %v", row.name, hasCaution(p, "read-higher"), hasCaution(p, "above-highest"))
 		}
-		s := StatusOf(c, at(t, "10:12"))
-		if (len(s.Alarms) == 1) != row.alarm || strings.Contains(missingText(Check(c, NeedDead, at(t, "10:12")).Missing), "ALARM") != row.alarm {
+		s := StatusOf(c, at(t, "10:12"), Evidence{})
+		if (len(s.Alarms) == 1) != row.alarm || strings.Contains(missingText(Check(c, Work{Need: NeedDead}, at(t, "10:12"), Evidence{}).Missing), "ALARM") != row.alarm {
 			t.Errorf("%s: alarms %v", row.name, s.Alarms)
 		}
 		if p.PeakPowerW > mostPeakWatts || p.Resistor.PeakW > mostPeakWatts {

@@ -50,9 +50,9 @@ type PointStatus struct {
 	Missing   []Missing          // empty exactly when dead
 }
 
-// StatusOf gives the safety status of a case at a moment; powered as in Check.
-func StatusOf(c *measure.Case, now time.Time, powered ...time.Time) Status {
-	return Check(c, NeedQuestion, now, powered...).Status
+// StatusOf gives the safety status of a case at a moment, on the same evidence as Check.
+func StatusOf(c *measure.Case, now time.Time, e Evidence) Status {
+	return Check(c, Work{Need: NeedQuestion}, now, e).Status
 }
 
 func (h history) status(b measure.Board) Status {
