@@ -186,7 +186,6 @@ type Plan struct {
 	Bleeder                              *Bleeder // nil where none is stated
 	Recovery                             Recovery
 	Steps                                []Step
-	Limits []Limit // the thresholds of every source, side by side
 	Cautions                             []Caution
 	Limits                               []Limit // the thresholds of every source, side by side
 	Needs                                []Wanted
