@@ -21,8 +21,8 @@ func refusal(key, message, hint string) error {
 // writes it. Lists of names take them parted by commas or blanks. The error is a Problems, and then nothing is changed.
 func (f *File) Set(path, text string) error {
 	k, ok := LookupKey(path)
-	if ok && k.Path != path && !strings.ContainsRune(k.Path, '*') {
-		ok = false // found only with board. in front
+	if ok && k.Path != path && (!strings.ContainsRune(k.Path, '*') || strings.Contains(k.Path, "[]") && !strings.ContainsRune(path, '[')) {
+		ok = false // found only with board. in front, or with the entries of a list left out
 	}
 	switch {
 	case !ok:

@@ -208,6 +208,8 @@ func TestRefusedChangesChangeNothing(t *testing.T) {
 		want   string
 	}{
 		{"unknown key", func(f *File) error { return f.SetBoard("swich.kind", "igbt") }, "swich.kind: unknown key; nearest is board.switch.kind"},
+		{"entry of a list", set("locate.low.rises.part", "Q1"), "locate.low.rises.part: unknown key"},
+		{"entry of the record", set("steps.result", "done"), "steps.result: unknown key"},
 		{"group", func(f *File) error { return f.SetBoard("bus", "310 V") }, "holds other keys"},
 		{"wrong unit", func(f *File) error { return f.SetBoard("bus.esr", "40 V") }, "board.bus.esr"},
 		{"contradiction", func(f *File) error { return f.SetBoard("bus.highest", "200 V") }, "contradicts board.bus.nominal 310 V"},

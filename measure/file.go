@@ -18,6 +18,7 @@ type File struct {
 	src    *source
 	root   *yaml.Node // the map at the top of the file
 	read   []byte     // what is on disk as far as this file knows; nil for a file that is not there yet
+	tried  []byte     // what a Save wrote that could not be confirmed; it may be on disk
 	system FS
 }
 
@@ -110,7 +111,9 @@ func New(path, id, opened string) (*File, error) {
 func (f *File) Bytes() []byte { return append([]byte{}, f.src.raw...) }
 
 // Saved tells whether the file on disk, as last read or written, holds all changes.
-func (f *File) Saved() bool { return f.read != nil && string(f.read) == string(f.src.raw) }
+func (f *File) Saved() bool {
+	return f.tried == nil && f.read != nil && string(f.read) == string(f.src.raw)
+}
 
 // bareError takes the path off a file error; the message names it already.
 func bareError(err error) error {

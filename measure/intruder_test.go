@@ -14,11 +14,11 @@ type intruder struct {
 	path, text string
 }
 
-func (i intruder) Temp(folder, pattern, like string) (TempFile, error) {
+func (i intruder) Temp(name, like string) (TempFile, error) {
 	if err := os.WriteFile(i.path, []byte(i.text), 0o644); err != nil {
 		return nil, err
 	}
-	return i.osFS.Temp(folder, pattern, like)
+	return i.osFS.Temp(name, like)
 }
 
 // A change that comes between the first look at the file and the rename is seen, and nothing of it is lost.

@@ -46,9 +46,16 @@ type Key struct {
 	Help     string        // one plain line
 	Users    []string      // what needs it
 	Required bool
+	Form     *Form // what a name looks like beyond being one word; nil: anything
 	// MayBeUnknown: the word unknown may stand in place of a value: it was asked and nobody can tell. The board then
 	// answers as if the key were not stated. A quantity with Words takes these in place of a number (bleeder: none).
 	MayBeUnknown bool
+}
+
+// Form is what a name must look like.
+type Form struct {
+	Pattern *regexp.Regexp // of the whole name; common to Go and ECMA 262, as it also stands in the schema
+	Said    string         // in words
 }
 
 // Board gives the path as the board and the rule base know it: without "board.".
@@ -93,7 +100,7 @@ func (t *table) add(k Key) {
 	parts := steps(k.Path)
 	for _, name := range parts[:len(parts)-1] {
 		if name == "[]" && at.below[name] == nil {
-			at.below[name] = &rung{Key: Key{Path: at.Path + "[]", Kind: KindMap}, below: map[string]*rung{}}
+			at.below[name] = &rung{Key: Key{Path: at.Path + "[]", Kind: KindMap, Help: "one entry of " + at.Path}, below: map[string]*rung{}}
 		}
 		at = at.below[name]
 	}
@@ -112,7 +119,8 @@ func steps(path string) []string {
 func Keys() []Key { return append([]Key(nil), keyTable().rows...) }
 
 // LookupKey finds the row of a key by its path, with or without "board." in front, a position's own name or a
-// number in brackets standing for * and []: positions.low.parts, observations[3].test.
+// number in brackets standing for * and []: positions.low.parts, observations[3].test. The brackets may be left out:
+// steps.step.
 func LookupKey(path string) (Key, bool) {
 	for _, full := range []string{path, "board." + path} {
 		if r := keyTable().find(full); r != nil {
@@ -133,6 +141,9 @@ func (t *table) find(path string) *rung {
 			name = "[]"
 		}
 		next, ok := at.child(name)
+		if item := at.below["[]"]; !ok && item != nil {
+			next, ok = item.child(name)
+		}
 		if !ok || (name == "[]") != (next.Path[len(next.Path)-1] == ']') {
 			return nil
 		}
@@ -146,15 +157,22 @@ func (t *table) find(path string) *rung {
 func NearestKey(path string) string {
 	full := strings.HasPrefix(path, "board.")
 	best, bestCost := "", 1+len(path)/3
+	inEntry := 1 + len(path[strings.LastIndex(path, ".")+1:])/3 // the list's own name tells nothing of the key's
 	for _, k := range keyTable().rows {
-		if k.Kind == KindMap || strings.ContainsAny(k.Path, "*[") {
+		if k.Kind == KindMap || strings.ContainsRune(k.Path, '*') {
 			continue
 		}
 		for _, form := range []string{k.Path, k.Board()} {
 			if full && form != k.Path {
 				continue
 			}
-			if cost := distance(path, form); cost < bestCost {
+			cost := distance(path, form)
+			if inList := strings.ReplaceAll(form, "[]", ""); inList != form {
+				if cost = distance(bracket.ReplaceAllString(path, ""), inList); cost > inEntry {
+					continue
+				}
+			}
+			if cost < bestCost {
 				best, bestCost = form, cost
 			}
 		}
@@ -164,6 +182,9 @@ func NearestKey(path string) string {
 	}
 	return best
 }
+
+// bracket is the number of an entry in a path.
+var bracket = regexp.MustCompile(`\[\d*\]`)
 
 // nearHint names the nearest valid key, "" when none is near.
 func nearHint(path string) string {
@@ -193,9 +214,9 @@ func elsewhere(name string, full bool) string {
 func nearest(word string, among []string) string {
 	best, bestCost := "", 1+max(1, len(word)/3)
 	for _, w := range among {
-		cost := distance(word, w)
-		if len(word) > 3 && strings.Contains(w, strings.ToLower(word)) {
-			cost = min(cost, 1) // mains for rectified-mains
+		cost := min(distance(word, w), distance(joined(word), joined(w))) // handover for handed-over
+		if stem := strings.TrimSuffix(strings.ToLower(word), "s"); len(stem) > 3 && strings.Contains(w, stem) {
+			cost = min(cost, 1) // mains for rectified-mains, photos for photographs
 		}
 		if cost < bestCost {
 			best, bestCost = w, cost
@@ -203,6 +224,9 @@ func nearest(word string, among []string) string {
 	}
 	return best
 }
+
+// joined takes the hyphens out of a word.
+func joined(word string) string { return strings.ReplaceAll(word, "-", "") }
 
 // distance counts the letters to add, drop, change or swap with a neighbour to turn a into b
 // (optimal string alignment).

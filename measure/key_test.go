@@ -2,6 +2,7 @@ package measure
 
 import (
 	"math"
+	"slices"
 	"strings"
 	"testing"
 
@@ -49,6 +50,9 @@ func TestLookupKey(t *testing.T) {
 		{"observations[3].reading", "observations[].reading"},
 		{"rebuild.snubber.diode.forward_recovery.time", "rebuild.snubber.diode.forward_recovery.time"},
 		{"rebuild.cooling.foster[2].time", "rebuild.cooling.foster[].time"},
+		{"board.bus", "board.bus"}, {"bus", "board.bus"}, {"safety.before", "safety.before"}, {"steps", "steps"},
+		{"steps[].step", "steps[].step"}, {"steps.step", "steps[].step"}, {"safety.before.guard", "safety.before[].guard"},
+		{"steps[]", "steps[]"}, {"steps[2]", "steps[]"}, {"locate.low.rises.part", "locate.*.rises[].part"},
 		{"swich.kind", ""}, {"", ""}, {".", ""}, {"observations[", ""}, {"observations[1]x", ""}, {"board..kind", ""},
 		{"switch.kind.igbt", ""},
 	}
@@ -66,11 +70,38 @@ func TestNearestKey(t *testing.T) {
 		{"bus.capacitence", "bus.capacitance"},
 		{"recovery_charge", "freewheel.recovery_charge"},
 		{"loop.induktance", "loop.inductance"},
+		{"repair", "repairs"}, {"fault_logs", "fault_log"}, {"safety.befor", "safety.before"}, {"step", "steps"}, {"setings", "settings"},
+		{"steps.result", "steps[].result"}, {"steps[2].reslt", "steps[].result"}, {"steps.stp", "steps[].step"},
+		{"safety.before[1].remote-off", "safety.before[].remote_off"}, {"photographs.sha265", "photographs[].sha256"},
+		{"observations[1].größer", ""}, {"safety.before[1].goggles", ""},
 		{"zzzzzzzz", ""},
 	}
 	for _, tt := range tests {
 		if got := NearestKey(tt.path); got != tt.want {
 			t.Errorf("%q gives %q, want %q", tt.path, got, tt.want)
+		}
+	}
+}
+
+// TestConditionsBelong proves that each condition stated before a step belongs to known steps, and that nothing else is
+// listed.
+func TestConditionsBelong(t *testing.T) {
+	free := map[string]bool{"step": true, "at": true, "note": true}
+	names := keyTable().find("safety.before[]").names
+	for _, name := range names {
+		takes := beforeTakes[name]
+		if (takes == nil) != free[name] {
+			t.Errorf("%s belongs to %q", name, takes)
+		}
+		for _, step := range takes {
+			if !slices.Contains(BeforeWords(), step) {
+				t.Errorf("%s belongs to %s, which is no step", name, step)
+			}
+		}
+	}
+	for name := range beforeTakes {
+		if !slices.Contains(names, name) {
+			t.Errorf("%s is listed, but is no condition", name)
 		}
 	}
 }

@@ -2,19 +2,38 @@
 
 package measure
 
-import "os"
+import (
+	"errors"
+	"io/fs"
+	"os"
+)
 
-// lockFile does nothing on systems without such locks; the content check before the rename remains.
-func lockFile(*os.File) error { return nil }
+// neverWait and neverFollow have no counterpart that all these systems share.
+const (
+	neverWait   = 0
+	neverFollow = 0
+)
+
+// lockFile has no locks to take.
+func lockFile(*os.File) error { return ErrNoLocks }
 
 // unlockFile has nothing to give back.
-func unlockFile(*os.File) {}
+func unlockFile(*os.File) error { return nil }
 
 // release takes the lock file away.
-func release(f *os.File, name string) {
-	_ = f.Close()
-	_ = os.Remove(name)
-}
+func release(f *os.File, name string) error { return errors.Join(f.Close(), os.Remove(name)) }
 
 // SyncFolder does nothing.
 func (osFS) SyncFolder(string) error { return nil }
+
+// keepOwner does nothing.
+func keepOwner(*os.File, fs.FileInfo) {}
+
+// heldOpen knows no such errors.
+func heldOpen(error) bool { return false }
+
+// cannotSync knows no such errors.
+func cannotSync(error) bool { return false }
+
+// systemTroubles are none.
+var systemTroubles []trouble

@@ -1,6 +1,7 @@
 package measure
 
 import (
+	"regexp"
 	"strings"
 
 	"drivemend/measure/quantity"
@@ -107,3 +108,11 @@ func moved(rows []Key, from, to string, keep func(path string) bool) []Key {
 	}
 	return out
 }
+
+// sum is the SHA-256 sum of a file.
+func sum(path, help string) Key {
+	return Key{Path: path, Kind: KindName, Help: help, Form: &sumForm}
+}
+
+// sumForm is how such a sum is written.
+var sumForm = Form{regexp.MustCompile(`^[0-9a-fA-F]{64}$`), "64 hexadecimal digits"}

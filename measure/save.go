@@ -1,68 +1,120 @@
 package measure
 
 import (
+	"bytes"
 	"crypto/sha256"
+	"encoding/hex"
 	"errors"
-	"fmt"
+	"io"
 	"io/fs"
 	"path/filepath"
 	"strings"
+	"unicode/utf8"
 )
 
-// ChangedError tells that a case file is not what it was when it was read: another program or an editor wrote to it.
-type ChangedError struct {
-	Path  string
-	What  []string // what changed, one thing an entry
-	Gone  bool     // the file was taken away
-	There bool     // a file stands where a new case was to be written
-}
+// mostTries is how often Save tries again while another program holds the lock or the file.
+const mostTries = 7
 
-// Error says what changed and what to do.
-func (e *ChangedError) Error() string {
-	switch {
-	case e.There:
-		return e.Path + ": a file of this name is there already; choose another name, nothing was written"
-	case e.Gone:
-		return e.Path + ": the file was moved or removed since it was read; nothing was written, put it back or save under another name"
-	}
-	return e.Path + ": the file was changed since it was read: " + strings.Join(e.What, "; ") +
-		"; nothing was written, read it again and repeat the entry"
-}
-
-// Save writes beside, syncs and renames: the old file stays whole until the new one is. It refuses with a
-// ChangedError when the file is not what it was when it was read, and with ErrLocked while another program writes.
+// Save writes beside, syncs, renames and syncs the folder: the old file stays whole until the new one is, and without
+// an error the new one outlives a power cut. It refuses with a ChangedError when the file is not what it was when it
+// was read; a SaveError tells every other reason, wrapping ErrLocked while another program writes. After an error the
+// changes are still in memory and Save may be called again. Where a folder knows no locks, the look at the file just
+// before the rename is all that holds off a second writer. Hard links to the file keep the old bytes.
 func (f *File) Save() error {
-	target := f.system.Real(f.Path)
-	unlock, err := f.system.Lock(target)
+	target, err := f.system.Real(f.Path)
 	if err != nil {
-		return fmt.Errorf("%s: cannot be locked for writing: %w", f.Path, bareError(err))
+		return f.failed(finding, err)
 	}
-	defer unlock()
-	if err := f.unchanged(target); err != nil {
+	if err := f.allowed(target); err != nil {
 		return err
 	}
-	if err := f.write(target); err != nil {
+	unlock, held, err := f.lock(target)
+	if err != nil {
+		return f.failed(locking, err)
+	}
+	// A lock that cannot be given back ends with the program; what was saved is saved.
+	defer func() { _ = unlock() }()
+	if held {
+		f.sweep(target)
+	}
+	temp, err := f.write(target)
+	if err != nil {
 		return err
 	}
-	f.read = f.Bytes()
+	if err := f.replace(temp, target); err != nil {
+		return err
+	}
 	if err := f.system.SyncFolder(folder(target)); err != nil {
-		return fmt.Errorf("%s: saved, but the folder could not be synced: %w", f.Path, bareError(err))
+		return f.failed(confirming, err)
+	}
+	f.read, f.tried = f.Bytes(), nil
+	return nil
+}
+
+// allowed looks before anything is made: the file must be what was read, and this user must be free to write to it,
+// for a rename would go past a file that somebody made read-only.
+func (f *File) allowed(target string) error {
+	there, err := f.unchanged(target)
+	if err != nil || !there {
+		return err
+	}
+	if err := f.again(ErrBusy, func() error { return f.system.Writable(target) }); err != nil {
+		if errors.Is(err, fs.ErrPermission) && !errors.Is(err, ErrBusy) {
+			err = errReadOnly
+		}
+		return f.failed(looking, err)
 	}
 	return nil
 }
 
-// write puts the new bytes beside the file and renames them into its place.
-func (f *File) write(target string) (err error) {
-	temp, err := f.system.Temp(folder(target), "."+filepath.Base(target)+".*.part", target)
-	if err != nil {
-		return fmt.Errorf("%s: cannot be written in its folder: %w", f.Path, bareError(err))
+// lock takes the writer's lock; held is false where there are none to be had.
+func (f *File) lock(target string) (unlock func() error, held bool, err error) {
+	err = f.again(ErrLocked, func() (err error) {
+		unlock, err = f.system.Lock(target)
+		return err
+	})
+	if errors.Is(err, ErrNoLocks) {
+		return func() error { return nil }, false, nil
 	}
-	defer func() {
-		if err != nil {
-			_ = f.system.Remove(temp.Name())
+	return unlock, err == nil, err
+}
+
+// again repeats a call a few times while it fails with an error that passes by itself.
+func (f *File) again(passing error, call func() error) error {
+	err := call()
+	for n := 0; n < mostTries && errors.Is(err, passing); n++ {
+		f.system.Pause(n)
+		err = call()
+	}
+	return err
+}
+
+// sweep takes away what programs that died while saving this case have left. Nobody else writes while the lock is held.
+func (f *File) sweep(target string) {
+	names, err := f.system.Names(folder(target))
+	if err != nil {
+		return // they harm nobody
+	}
+	before, after, _ := strings.Cut(filepath.Base(beside(target, ".*.part")), "*")
+	for _, name := range names {
+		number, ok := strings.CutPrefix(name, before)
+		number, part := strings.CutSuffix(number, after)
+		if ok && part && number != "" && strings.Trim(number, "0123456789") == "" {
+			_ = f.system.Remove(filepath.Join(folder(target), name))
 		}
-	}()
-	_, err = temp.Write(f.src.raw)
+	}
+}
+
+// write puts the new bytes beside the file and gives their path.
+func (f *File) write(target string) (string, error) {
+	temp, err := f.system.Temp(beside(target, ".*.part"), target)
+	if err != nil {
+		return "", f.failed(writing, err)
+	}
+	n, err := temp.Write(f.src.raw)
+	if err == nil && n != len(f.src.raw) {
+		err = io.ErrShortWrite
+	}
 	if err == nil {
 		err = temp.Sync()
 	}
@@ -70,92 +122,105 @@ func (f *File) write(target string) (err error) {
 		err = closed
 	}
 	if err != nil {
-		return fmt.Errorf("%s: cannot be written, the old file is untouched: %w", f.Path, bareError(err))
+		_ = f.system.Remove(temp.Name())
+		return "", f.failed(writing, err)
 	}
-	if err := f.unchanged(target); err != nil {
-		return err
-	}
-	if err := f.system.Rename(temp.Name(), target); err != nil {
-		return fmt.Errorf("%s: cannot be replaced, the old file is untouched: %w", f.Path, linkError(err))
-	}
-	return nil
+	return temp.Name(), nil
 }
 
-// unchanged compares the file on disk with what was read.
-func (f *File) unchanged(target string) error {
-	now, err := f.system.ReadFile(target, mostBytes+1)
+// replace looks again and renames the new file into the place of the old one.
+func (f *File) replace(temp, target string) error {
+	var refused error
+	err := f.again(ErrBusy, func() error {
+		if refused = f.still(target); refused != nil {
+			return nil
+		}
+		f.tried = f.Bytes()
+		return f.system.Rename(temp, target)
+	})
+	if refused != nil {
+		_ = f.system.Remove(temp)
+		return refused
+	}
+	if err == nil {
+		return nil
+	}
+	return f.settle(temp, target, err)
+}
+
+// settle finds out what a failed rename did: on a network drive it may have been done. Once the new file is taken
+// away it cannot be renamed late.
+func (f *File) settle(temp, target string, err error) error {
+	_ = f.system.Remove(temp)
+	now, lookErr := f.system.ReadFile(target, mostBytes+1)
+	switch {
+	case lookErr == nil && bytes.Equal(now, f.tried):
+		return nil
+	case lookErr == nil && bytes.Equal(now, f.read), f.read == nil && errors.Is(lookErr, fs.ErrNotExist):
+		return f.failed(replacing, err)
+	}
+	return f.failed(unsettled, err)
+}
+
+// still proves just before the rename that the path leads to the same file and that nobody changed it.
+func (f *File) still(target string) error {
+	now, err := f.system.Real(f.Path)
+	if err == nil && now != target {
+		err = errElsewhere
+	}
+	if err != nil {
+		return f.failed(finding, err)
+	}
+	_, err = f.unchanged(target)
+	return err
+}
+
+// unchanged compares the file on disk with what was read, or with what an earlier Save wrote and could not confirm.
+func (f *File) unchanged(target string) (there bool, err error) {
+	mode, err := f.system.Standing(target)
+	var now []byte
+	switch {
+	case err != nil || f.read == nil && f.tried == nil:
+	case !mode.IsRegular():
+		return true, f.failed(looking, errNotPlain)
+	case mode.Perm()&0o222 == 0:
+		return true, f.failed(looking, errReadOnly)
+	default:
+		now, err = f.system.ReadFile(target, mostBytes+1)
+	}
 	missing := errors.Is(err, fs.ErrNotExist)
 	switch {
 	case err != nil && !missing:
-		return fmt.Errorf("%s: cannot be compared with what was read: %w", f.Path, bareError(err))
-	case f.read == nil && missing:
-		return nil
-	case f.read == nil:
-		return &ChangedError{Path: f.Path, There: true}
+		return false, f.failed(looking, err)
+	case missing && f.read == nil:
+		return false, nil
 	case missing:
-		return &ChangedError{Path: f.Path, Gone: true}
+		return false, &ChangedError{Path: f.Path, Gone: true}
+	case f.tried != nil && bytes.Equal(now, f.tried):
+		f.read = f.tried
+		return true, nil
+	case f.read == nil:
+		return true, &ChangedError{Path: f.Path, There: true}
 	case sha256.Sum256(now) == sha256.Sum256(f.read):
-		return nil
+		return true, nil
 	}
-	return &ChangedError{Path: f.Path, What: whatChanged(f.read, now)}
+	return true, &ChangedError{Path: f.Path, What: whatChanged(f.read, now)}
 }
 
-// whatChanged names the lines that differ and the observations that came or went.
-func whatChanged(before, after []byte) []string {
-	x, y := splitLines(before), splitLines(after)
-	head := 0
-	for head < len(x) && head < len(y) && x[head] == y[head] {
-		head++
-	}
-	tail := 0
-	for tail < len(x)-head && tail < len(y)-head && x[len(x)-1-tail] == y[len(y)-1-tail] {
-		tail++
-	}
-	out := []string{changedLines(head, len(x)-head-tail, len(y)-head-tail)}
-	old, errOld := Parse("", before)
-	now, errNow := Parse("", after)
-	if errNow != nil {
-		return append(out, "as it stands now it does not load")
-	}
-	if errOld != nil {
-		return out
-	}
-	if n := len(now.Case.Observations) - len(old.Case.Observations); n > 0 {
-		var tests []string
-		for _, o := range now.Case.Observations[len(old.Case.Observations):] {
-			tests = append(tests, o.Test)
+// longestName is how many bytes of a file's own name go into the names beside it; systems end at 255.
+const longestName = 200
+
+// beside gives the path of a file that belongs to another one, hidden and in the same folder: .NAME and an ending. A
+// long name is cut and told apart by its hash.
+func beside(path, ending string) string {
+	name := filepath.Base(path)
+	if len(name) > longestName {
+		sum := sha256.Sum256([]byte(name))
+		cut := longestName
+		for !utf8.RuneStart(name[cut]) {
+			cut--
 		}
-		out = append(out, countOf(n, "observation")+" added: "+strings.Join(tests, ", "))
-	} else if n < 0 {
-		out = append(out, countOf(-n, "observation")+" taken out")
+		name = name[:cut] + "-" + hex.EncodeToString(sum[:4])
 	}
-	return out
-}
-
-// changedLines names a run of lines after the first head ones.
-func changedLines(head, before, after int) string {
-	lines := func(n int) string {
-		if n == 1 {
-			return fmt.Sprintf("line %d", head+1)
-		}
-		return fmt.Sprintf("lines %d to %d", head+1, head+n)
-	}
-	switch {
-	case before == 0:
-		return lines(after) + " added"
-	case after == 0:
-		return lines(before) + " taken out"
-	}
-	return lines(max(before, after)) + " changed"
-}
-
-// splitLines cuts a text into lines with their ends.
-func splitLines(raw []byte) []string { return strings.SplitAfter(string(raw), "\n") }
-
-// linkError takes the paths off a rename error; the message names the file already.
-func linkError(err error) error {
-	if u := errors.Unwrap(err); u != nil {
-		return u
-	}
-	return err
+	return filepath.Join(folder(path), "."+name+ending)
 }

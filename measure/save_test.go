@@ -161,7 +161,9 @@ func TestSaveWhileLocked(t *testing.T) {
 	if err := f.Save(); !errors.Is(err, ErrLocked) {
 		t.Errorf("saved under another's lock: %v", err)
 	}
-	unlock()
+	if err := unlock(); err != nil {
+		t.Error(err)
+	}
 	if err := f.Save(); err != nil {
 		t.Error(err)
 	}
@@ -222,11 +224,11 @@ func (f failing) err(op string) error {
 	return nil
 }
 
-func (f failing) Temp(folder, pattern, like string) (TempFile, error) {
+func (f failing) Temp(name, like string) (TempFile, error) {
 	if err := f.err("temp"); err != nil {
 		return nil, err
 	}
-	t, err := f.osFS.Temp(folder, pattern, like)
+	t, err := f.osFS.Temp(name, like)
 	return failingFile{t, f}, err
 }
 

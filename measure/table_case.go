@@ -102,7 +102,7 @@ func observationKeys() []Key {
 		plain("captures", KindList, "figures taken from instrument files"),
 		plain("captures[].name", KindText, "name of the file").used("report").required(),
 		count("captures[].bytes", 0, 1e15, "its length in bytes").used("report"),
-		plain("captures[].sha256", KindName, "its SHA-256 sum, hexadecimal").used("report"),
+		sum("captures[].sha256", "its SHA-256 sum").used("report"),
 		word("captures[].kind", "what the file holds", "scope", "thermal").used("report"),
 		plain("captures[].at", KindTime, "when it was taken").used("report"),
 		plain("captures[].position", KindName, "the position it shows").used("edge"),

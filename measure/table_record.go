@@ -24,7 +24,7 @@ func recordKeys() []Key {
 		plain("fault_log[].at", KindText, "when, as the board shows it: its clock or its running hours").used("report"),
 		plain("fault_log[].note", KindText, "anything worth keeping").used("report"),
 		plain("settings", KindList, "settings of the drive as found"),
-		plain("settings[].name", KindText, "number or name of the setting").used("report").required(),
+		plain("settings[].name", KindText, "number or name of the setting, each once").used("report").required(),
 		plain("settings[].value", KindText, "its value as found").used("report").required(),
 		plain("settings[].note", KindText, "anything worth keeping").used("report"),
 		plain("photographs", KindList, "pictures, by path; the files stay where they are"),
@@ -33,14 +33,14 @@ func recordKeys() []Key {
 		plain("photographs[].part", KindText, "the part it is of").used("report"),
 		plain("photographs[].at", KindTime, "when it was taken").used("report"),
 		count("photographs[].bytes", 0, 1e15, "its length in bytes").used("report"),
-		plain("photographs[].sha256", KindName, "its SHA-256 sum, hexadecimal").used("report"),
+		sum("photographs[].sha256", "its SHA-256 sum").used("report"),
 		plain("steps", KindList, "steps of the work that leave no reading: before touching, and after the repair"),
 		word("steps[].step", "which step", StepWords()...).used("status", "report", "hold points").required(),
-		word("steps[].result", "how it ended", "done", "failed", "not-possible", "not-fitted").
+		word("steps[].result", "how it ended; why it was not possible stands under note", "done", "failed", "not-possible", "not-fitted").
 			used("status", "report", "hold points").required(),
 		plain("steps[].at", KindTime, "when").used("status", "hold points").required(),
 		plain("steps[].by", KindText, "who did it; can be left out of reports").used("report"),
-		plain("steps[].note", KindText, "what was found; why, where it was not possible").used("report"),
+		plain("steps[].note", KindText, "what was found; why it was not possible, or failed").used("report"),
 	}
 }
 
@@ -74,7 +74,7 @@ func beforeKeys() []Key {
 	const at = "safety.before[]."
 	yes := func(name, help string) Key { return yesNo(at+name, help).used("hold points") }
 	return []Key{
-		plain("safety.before", KindList, "conditions stated before a step that needs more than a dead board"),
+		plain("safety.before", KindList, "conditions stated before a step that needs more than a dead board, an entry for each step"),
 		word(at+"step", "the step they were stated for", BeforeWords()...).used("hold points").required(),
 		plain(at+"at", KindTime, "when they were looked at and stated").used("hold points").required(),
 		word(at+"motor", "powered steps: how the motor is kept from doing harm", "unplugged", "uncoupled", "wheels-up", "connected").
@@ -114,6 +114,18 @@ const (
 	BeforeInsulation   = "insulation"    // insulation tester
 	BeforeScope        = "scope"         // any scope step, beside those of its power
 )
+
+// powered are the steps that put energy into the board.
+var powered = []string{BeforeControlPower, BeforeLowBus, BeforeFull}
+
+// beforeTakes tells which steps each condition belongs to; a key that is not listed belongs to all of them.
+var beforeTakes = map[string][]string{
+	"motor": powered, "brake_resistor": powered, "guard": powered, "fuse": powered, "remote_off": powered, "glasses": powered,
+	"second_person": powered, "bank": powered, "bus_disconnected": {BeforeControlPower}, "shield": {BeforeDoublePulse},
+	"electronics_disconnected": {BeforeInsulation}, "sources_off": {BeforeInjection}, "gates_held": {BeforeInjection},
+	"limit_set": {BeforeInjection}, "attended": {BeforeInjection},
+	"probe": {BeforeScope}, "clip_on": {BeforeScope}, "supply": {BeforeScope}, "earth_clips": {BeforeScope},
+}
 
 // BeforeWords lists the steps that conditions are stated before.
 func BeforeWords() []string {

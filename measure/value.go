@@ -8,6 +8,7 @@ import (
 	"strconv"
 	"strings"
 	"time"
+	"unicode/utf8"
 
 	"gopkg.in/yaml.v3"
 
@@ -81,7 +82,10 @@ func (e *entry) readQuantity() (message, hint string) {
 	if k.Kind == KindCount && (q.Value != math.Trunc(q.Value) || q.Low != q.Value || q.High != q.Value) {
 		return quoted(text) + " is not a whole number", "expected " + expected(k)
 	}
-	const slack = 1e-9 // a limit written in another prefix may differ in its last digit
+	slack := 1e-9 // a limit written in another prefix may differ in its last digit
+	if k.Kind != KindQuantity {
+		slack = 0
+	}
 	if (k.Min != 0 || k.Max != 0) && (q.Low < k.Min-slack*math.Abs(k.Min) || q.High > k.Max+slack*math.Abs(k.Max)) {
 		return quoted(text) + " is out of the physical range", "expected " + expected(k) + "; check the prefix"
 	}
@@ -124,14 +128,20 @@ func (e *entry) readWord() (message, hint string) {
 	return message, ""
 }
 
+// longestID bounds an id, in characters.
+const longestID = 200
+
 // readName reads an id or the name of a part.
 func (e *entry) readName() (message, hint string) {
 	e.text = e.node.Value
 	if strings.ContainsAny(e.text, " \t\r\n") {
 		return quoted(e.text) + " is not one word", "join it with hyphens"
 	}
-	if len(e.text) > 200 {
-		return quoted(e.text) + " is too long for a name", ""
+	if utf8.RuneCountInString(e.text) > longestID {
+		return quoted(e.text) + fmt.Sprintf(" is too long for a name: more than %d characters", longestID), ""
+	}
+	if form := e.row.Form; form != nil && !form.Pattern.MatchString(e.text) {
+		return quoted(e.text) + " is not " + form.Said, countOf(utf8.RuneCountInString(e.text), "character") + " stand here; copy the whole sum"
 	}
 	return "", ""
 }

@@ -8,10 +8,14 @@ import (
 	"unicode/utf8"
 )
 
-// alike maps the signs that look like one of ours, with all the code points a keyboard or a data sheet gives.
-var alike = strings.NewReplacer("\u2126", "Ω", "\u03bc", "µ", "\u212a", "K", "\u2103", "°C", "\u00ba", "°",
+// alikes pairs each sign that looks like one of ours with ours, for all the code points a keyboard or a data sheet
+// gives.
+var alikes = []string{"\u2126", "Ω", "\u03bc", "µ", "\u212a", "K", "\u2103", "°C", "\u00ba", "°",
 	"\u2212", "-", "\u2010", "-", "\u2011", "-", "\u22c5", "·", "\u2219", "·",
-	"\u200b", "", "\u2060", "", "\ufeff", "", "≥", ">=", "≤", "<=")
+	"\u200b", "", "\u2060", "", "\ufeff", "", "≥", ">=", "≤", "<="}
+
+// alike puts our sign for each of them.
+var alike = strings.NewReplacer(alikes...)
 
 // plainText gives the text with one code point for each sign and one kind of space.
 func plainText(text string) string {
