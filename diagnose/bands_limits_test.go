@@ -143,7 +143,7 @@ func TestNoSingleTestDecides(t *testing.T) {
 // answerChances gives P(result | cause) of a test with the answering error of its instrument.
 func (a *alone) answerChances(t *testing.T, x knowledge.Test, result string) []float64 {
 	t.Helper()
-	wrong := map[string]float64{"meter": 0.02, "scope": 0.02, "camera": 0.02, "eye": 0.05, "question": 0.05}[x.Instrument]
+	wrong := map[string]float64{"meter": 0.02, "scope": 0.02, "camera": 0.02, "insulation-tester": 0.02, "supply": 0.02, "eye": 0.05, "question": 0.05}[x.Instrument]
 	out := make([]float64, len(a.base.Causes))
 	sum, weight := 0.0, 0.0
 	for c, cause := range a.base.Causes {

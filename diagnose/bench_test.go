@@ -72,3 +72,12 @@ func BenchmarkLoadBase(b *testing.B) {
 		}
 	}
 }
+
+// BenchmarkEvidenceOf reads the evidence of the hold points out of the full case with every static reading taken.
+func BenchmarkEvidenceOf(b *testing.B) {
+	base, c, _ := fullCase(b)
+	c = withStatics(base, c)
+	for b.Loop() {
+		EvidenceOf(base, c)
+	}
+}

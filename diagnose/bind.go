@@ -144,7 +144,7 @@ func (v *view) silentBecause(c *measure.Case, ob measure.Observation, current bo
 		return "the board as found has no part " + ob.Part
 	case c.After(ob) && t.Needs == "dead":
 		return "taken after the rebuild: serves the bring-up only"
-	case t.Instrument == "meter" && underLink(c.Safety.Links, ob.At):
+	case atTerminals(t) && underLink(c.Safety.Links, ob.At):
 		return "taken with the shorting link fitted, when everything reads shorted: measure again"
 	}
 	return ""
@@ -170,6 +170,11 @@ const (
 	onPattern              // the set of faulty parts, by the name of its pattern
 )
 
+// atTerminals tells whether a test is read through leads: then everything that is in parallel is in the reading.
+func atTerminals(t *knowledge.Test) bool {
+	return t.Instrument == "meter" || t.Instrument == "insulation-tester" || t.Instrument == "supply"
+}
+
 // placeOf gives what an observation looks at: a meter on parts still in circuit reads the whole bank, and a bank of
 // one is its part. On a board with one position a reading that names no place is of that position.
 // A test that observes no event is of the whole board, wherever it was asked.
@@ -180,7 +185,7 @@ func (v *view) placeOf(t *knowledge.Test, ob measure.Observation) (place, int) {
 	b := v.parts.bank(ob.Position)
 	if p := v.parts.part(ob.Part); p >= 0 {
 		b = v.parts.bankOf[p]
-		if t.Instrument != "meter" || ob.State == "lifted" || len(v.parts.banks[b].parts) == 1 {
+		if !atTerminals(t) || ob.State == "lifted" || len(v.parts.banks[b].parts) == 1 {
 			return onPart, p
 		}
 	}

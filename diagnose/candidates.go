@@ -108,7 +108,7 @@ func (s *state) places(t *knowledge.Test) []Candidate {
 	case "position":
 		return s.bankPlaces()
 	case "part":
-		if t.Instrument != "meter" {
+		if !atTerminals(t) {
 			return s.partPlaces(false)
 		}
 		return append(s.bankPlaces(), s.partPlaces(true)...)

@@ -8,25 +8,48 @@ import (
 	"drivemend/measure"
 )
 
-// WorkOf gives the work at the board that a test is.
+// tools are the instruments with hold points of their own.
+var tools = map[string]safety.Tool{"scope": safety.ToolScope, "double-pulse": safety.ToolDoublePulse, "insulation-tester": safety.ToolInsulation, "supply": safety.ToolInjection}
+
+// WorkOf gives the work at the board that a test is: the state it needs, and the tool by its instrument.
 func WorkOf(t *knowledge.Test) safety.Work {
-	return safety.Work{Need: safety.Need(t.Needs)}
+	return safety.Work{Need: safety.Need(t.Needs), Tool: tools[t.Instrument]}
 }
 
-// EvidenceOf reads out of the observations of a case what the hold points need of them.
+// EvidenceOf reads out of the observations of a case what the hold points need of them: when energy was put into the
+// board, and how the static tests of every position stand. It judges the rebuilt board once the rebuild is done, else
+// the board as found, and knows no clock: that a reading has come to be is for the hold points to ask.
 func EvidenceOf(base *knowledge.Base, c *measure.Case) safety.Evidence {
-	return safety.Evidence{Powered: poweredTimes(base, c)}
+	if c == nil {
+		return safety.Evidence{}
+	}
+	var e safety.Evidence
+	e, _ = evidenceOf(base, c)
+	return e
+}
+
+// evidenceOf is EvidenceOf, and what is left to be read.
+func evidenceOf(base *knowledge.Base, c *measure.Case) (safety.Evidence, []openStatic) {
+	e := safety.Evidence{Powered: poweredTimes(base, c)}
+	var open []openStatic
+	e.Statics, open = newStatics(base, c, e.Powered).judge()
+	return e, open
 }
 
 // poweredTimes gives the times at which a test of the case put energy into the board. A reading of a test that this
-// base does not know is taken as powered: nobody here can tell that it was not.
+// base does not know is taken as powered: nobody here can tell that it was not. An insulation tester leaves its voltage
+// behind, so that its readings count too (judgement).
 func poweredTimes(base *knowledge.Base, c *measure.Case) []time.Time {
+	powers := map[string]bool{}
+	for i := range base.Tests {
+		t := &base.Tests[i]
+		powers[t.ID] = WorkOf(t).Energises()
+	}
 	var times []time.Time
-	for _, ob := range c.Observations {
-		t := base.Test(ob.Test)
-		switch {
-		case ob.Answer != "":
-		case t == nil && ob.Reading != nil, t != nil && safety.Need(t.Needs).Powered():
+	for i := range c.Observations {
+		ob := &c.Observations[i]
+		does, known := powers[ob.Test]
+		if ob.Answer == "" && (does || !known && ob.Reading != nil) {
 			times = append(times, ob.At)
 		}
 	}

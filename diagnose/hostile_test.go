@@ -20,14 +20,17 @@ func drawCase(t *rapid.T, base *knowledge.Base) *measure.Case {
 	var b strings.Builder
 	topology := rapid.SampledFrom([]string{"low-side-chopper", "half-bridge", "h-bridge", "three-phase", "other"}).Draw(t, "topology")
 	fmt.Fprintf(&b, "drivemend: 1\ncase: drawn\nopened: 2026-12-01\nboard:\n  topology: %s\n", topology)
-	word := func(key string, words ...string) {
-		if w := rapid.SampledFrom(append(words, "")).Draw(t, key); w != "" {
+	word := func(key string, words ...string) string {
+		w := rapid.SampledFrom(append(words, "")).Draw(t, key)
+		if w != "" {
 			fmt.Fprintf(&b, "  %s: %s\n", key, w)
 		}
+		return w
 	}
 	word("supply", "battery", "bench-supply", "rectified-mains", "shared-bus", "unknown")
-	word("history", "first-failure", "failed-after-repair", "never-worked")
-	word("service", "10 h", "5200 h", "40000 h")
+	if word("history", "first-failure", "failed-after-repair", "never-worked") != "never-worked" {
+		word("service", "10 h", "5200 h", "40000 h")
+	}
 	word("switch", "{kind: igbt}", "{kind: mosfet}", "{kind: bipolar}")
 	word("snubber", "{kind: none}", "{kind: rcd}", "{kind: clamp}")
 	word("gate", "{pull_down: 10 kΩ}")

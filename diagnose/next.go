@@ -22,6 +22,8 @@ type Candidate struct {
 	Part, Position string
 	Lifted         bool    // take the part's reading with a lead lifted
 	Must           bool    // a check that stands until it is done
+	Serves         bool    // a dead test after the rebuild: it serves the hold points, does not vote and saves nothing
+	Again          string  // a static test that was read and did not pass: what was read, and what to do
 	Deferred       bool    // put off by the technician; comes after the rest
 	Value          float64 // minutes saved, net of the test's own minutes and hazard price
 	Bits           float64 // expected information about the causes
@@ -77,8 +79,12 @@ func (v *view) next(c *measure.Case, computed map[string]stress.Span, now time.T
 		}
 	}
 	gates := newGates(v.base, c, now)
-	out.Tests = s.candidates(c)
-	s.valueAll(out.Tests, price)
+	voting, serving := s.candidates(c), []Candidate(nil)
+	if rebuiltBy(c, now) {
+		voting, serving = afterRebuild(voting, gates.evidence.Statics, gates.open)
+	}
+	s.valueAll(voting, price)
+	out.Tests = append(voting, serving...)
 	for i := range out.Tests {
 		gates.apply(&out.Tests[i])
 	}
@@ -114,11 +120,13 @@ type gates struct {
 	c        *measure.Case
 	now      time.Time
 	evidence safety.Evidence
+	open     []openStatic // the static tests of it that are open
 	seen     map[safety.Work]safety.Decision
 }
 
 func newGates(base *knowledge.Base, c *measure.Case, now time.Time) *gates {
-	return &gates{c, now, EvidenceOf(base, c), map[safety.Work]safety.Decision{}}
+	evidence, open := evidenceOf(base, c)
+	return &gates{c, now, evidence, open, map[safety.Work]safety.Decision{}}
 }
 
 func (g *gates) apply(c *Candidate) {

@@ -1,6 +1,7 @@
 package diagnose
 
 import (
+	"fmt"
 	"sort"
 
 	"drivemend/knowledge"
@@ -22,11 +23,19 @@ func ReadAs(t *knowledge.Test, b measure.Board, ob measure.Observation) []Share 
 		return nil
 	}
 	v := &view{board: b, parts: newLayout(b.Positions())}
-	whole, err := readingLikelihoods(t, *ob.Reading, ob.Accuracy, ob.Range, v.expected(t, ob))
+	shares, err := readAs(t, ob, v.expected(t, ob))
 	if err != nil {
 		return nil
 	}
-	stray := strayLikelihood(t, *ob.Reading, ob.Range)
+	return shares
+}
+
+// readAs is ReadAs for a reading in numbers, against what the board should show.
+func readAs(t *knowledge.Test, ob measure.Observation, expected func(string) (float64, bool)) ([]Share, error) {
+	whole, stray, err := readAgainst(t, ob, expected)
+	if err != nil {
+		return nil, err
+	}
 	shares, sum := []Share{{"misread", stray}}, stray
 	for k, r := range t.Results {
 		if p := whole[k] - stray; whole[k] > 0 {
@@ -34,13 +43,13 @@ func ReadAs(t *knowledge.Test, b measure.Board, ob measure.Observation) []Share 
 		}
 	}
 	if !(sum > 0) {
-		return nil
+		return nil, fmt.Errorf("the reading fits no result of test %s: %s", t.ID, resultList(t))
 	}
 	for i := range shares {
 		shares[i].P /= sum
 	}
 	sort.SliceStable(shares, func(i, j int) bool { return shares[i].P > shares[j].P })
-	return shares
+	return shares, nil
 }
 
 // Shows gives the patterns of dead parts that a board can show, in their fixed order.

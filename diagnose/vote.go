@@ -30,7 +30,7 @@ func (vt *vote) ofParts() bool { return vt.pattern != nil }
 // vote gives an observation its likelihoods, or says why it cannot.
 func (v *view) vote(i int, ob measure.Observation) (vote, string) {
 	t := v.test(ob.Test)
-	f := Finding{Test: t, Part: ob.Part, Position: ob.Position, Shown: shown(ob), Source: "answered", Observation: i, Seen: ob.Seen}
+	f := Finding{Test: t, Part: ob.Part, Position: ob.Position, Shown: shown(t, ob), Source: "answered", Observation: i, Seen: ob.Seen}
 	likely, err := v.resultLikelihoods(t, ob)
 	if err != nil {
 		return vote{}, err.Error()
@@ -156,14 +156,15 @@ func (v *view) resultLikelihoods(t *knowledge.Test, ob measure.Observation) ([]f
 	if ob.Result != "" || ob.Reading == nil {
 		return wordLikelihoods(t, ob.Result)
 	}
-	return readingLikelihoods(t, *ob.Reading, ob.Accuracy, ob.Range, v.expected(t, ob))
+	likely, _, err := readAgainst(t, ob, v.expected(t, ob))
+	return likely, err
 }
 
-func shown(ob measure.Observation) string {
+func shown(t *knowledge.Test, ob measure.Observation) string {
 	if ob.Result != "" || ob.Reading == nil {
 		return ob.Result
 	}
-	return ob.Reading.Text
+	return effective(t, ob).Text
 }
 
 // standing gives the votes nobody has to ask for: computed figures and board keys that answer a test.

@@ -108,9 +108,11 @@ type Test struct {
 	UsedIn              string  // "prior": already in the share, never votes
 	Needs               string  // question, dead, control-power, low-bus, full
 	Minutes             float64 // 0 only for a computed test
-	Instrument          string  // meter, scope, camera, eye, question, none
+	Instrument          string  // out of Instruments()
 	Group               string
-	Must                bool // a check that stands until done
+	Must                bool        // a check that stands until done
+	Static              []string    // results that pass: one of the tests every position passes before power; nil for others
+	StaticOn            []Condition // the boards it counts on as a static test; every board it applies to when empty
 	Applies             []Condition
 	Cautions            []string
 	File                string

@@ -79,6 +79,7 @@ func (b *Base) checkTests(c *collector) {
 	for _, t := range b.Tests {
 		c.warnMissing(t.File, t.Line, t.ID, t.missing)
 		c.checkConditions(t.File, t.Line, t.ID, t.Applies)
+		c.checkConditions(t.File, t.Line, t.ID, t.StaticOn)
 		c.checkAnsweredBy(t)
 		var plain []string
 		for _, r := range t.Results {

@@ -24,6 +24,7 @@ func Computed() []Figure {
 func Expected() []Figure {
 	return []Figure{
 		{"expected.gate_bleed", quantity.Ohm, "resistance that a sound gate shows through its bleed resistor"},
+		{"expected.blocking", quantity.Ohm, "resistance that a switch that blocks shows in circuit, through the freewheel diode and what lies across the rails"},
 	}
 }
 
@@ -82,8 +83,11 @@ func Needs() []string { return []string{"question", "dead", "control-power", "lo
 // Roles gives the roles of a cause.
 func Roles() []string { return []string{"latent", "trigger", "sufficient"} }
 
-// Instruments gives what a test is done with.
-func Instruments() []string { return []string{"meter", "scope", "camera", "eye", "question", "none"} }
+// Instruments gives what a test is done with. A supply is one that sends a current through the parts; the insulation
+// tester puts hundreds of volts on them. Both have conditions of their own among the hold points.
+func Instruments() []string {
+	return []string{"meter", "scope", "double-pulse", "camera", "insulation-tester", "supply", "eye", "question", "none"}
+}
 
 func figureNames(list []Figure) []string {
 	return idsOf(list, func(f *Figure) string { return f.Name })

@@ -11,7 +11,7 @@ import (
 // testKeys are the keys of an entry of tests.yaml.
 var testKeys = []string{"id", "title", "ask", "how", "instrument", "minutes", "needs", "means", "group", "must",
 	"silent", "observes", "pattern_of", "nominal", "present", "absent", "per", "unit", "results", "computed",
-	"replaced_by", "answered_by", "used_in", "applies", "cautions"}
+	"replaced_by", "answered_by", "used_in", "applies", "cautions", "static", "static_on"}
 
 // usualMinutes stands for a missing `minutes` (judgement); Check reports the gap.
 var usualMinutes = map[string]float64{"question": 1, "dead": 5, "control-power": 10, "low-bus": 20, "full": 30}
@@ -27,6 +27,7 @@ func (d *decoder) test(e entry) Test {
 	d.testResults(f, &t, rows)
 	d.testLinks(f, &t)
 	d.testGaps(f, &t)
+	d.testStatic(f, &t)
 	rows.at, rows.sound = e.spot, len(d.list) == before
 	d.rows[e.id] = rows
 	return t

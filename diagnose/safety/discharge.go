@@ -33,6 +33,8 @@ type Input struct {
 	Stores       []Store // empty: the bank alone
 	Needs        []Wanted
 	MotorCanTurn bool // the load makes voltage when it turns, or may
+	// BusUnknown takes the worst bus of a board whose supply is not stated, where no stores are given.
+	BusUnknown bool
 }
 
 // Wanted is a key the case does not state, and what it would settle.
@@ -162,8 +164,18 @@ func timesFrom(ohm, farad, volt float64) Times {
 type StoreDischarge struct {
 	Store        Store
 	PeakCurrentA float64
-	Wait         Times   // with the capacitance at the top of its interval
-	FiveRC       float64 // how long the resistor stays on before the second reading, seconds
+	Wait         Times // with the capacitance at the top of its interval
+	// FiveRC is how long the resistor stays on before the second reading, seconds: five time constants, and never less
+	// than the time to 5 V, of a half also out of balance.
+	FiveRC float64
+	Uneven *Uneven // of a half of a split bank; nil for every other store
+}
+
+// Uneven is a half of a split bank at the worst of an imbalance: the whole voltage of the bus stands on it, the other half
+// holds nothing. Energy and times are with the capacitance at the top of its interval.
+type Uneven struct {
+	Volt, EnergyJ, PeakCurrentA float64
+	Wait                        Times
 }
 
 // Plan is how this board is made dead.
@@ -208,7 +220,7 @@ func Discharge(in Input) (*Plan, error) {
 	p.PeakCurrentA, p.PeakPowerW, p.TimeConstantS = in.BusV/r, in.BusV*in.BusV/r, r*in.CapacitanceF
 	p.Nominal, p.Wait = timesFrom(r, in.CapacitanceF, in.BusV), timesFrom(r, in.HighestF, in.BusV)
 	for _, s := range in.Stores {
-		p.Stores = append(p.Stores, storeDischarge(s, r, in.spread()))
+		p.Stores = append(p.Stores, storeDischarge(in, s, r))
 	}
 	if in.BleederOhm > 0 {
 		p.Bleeder = bleederOf(in)
@@ -221,21 +233,62 @@ func Discharge(in Input) (*Plan, error) {
 }
 
 // storeDischarge takes the tolerance of the bank for every store.
-func storeDischarge(s Store, ohm, spread float64) StoreDischarge {
+func storeDischarge(in Input, s Store, ohm float64) StoreDischarge {
 	d := StoreDischarge{Store: s}
 	if s.Capacitance.Basis == None {
 		return d
 	}
-	farad := s.Capacitance.Value * spread
-	d.PeakCurrentA, d.FiveRC = s.Voltage.Value/ohm, 5*ohm*farad
-	d.Wait = timesFrom(ohm, farad, s.Voltage.Value)
+	farad := s.Capacitance.Value * in.spread()
+	d.PeakCurrentA, d.Wait = s.Voltage.Value/ohm, timesFrom(ohm, farad, s.Voltage.Value)
+	d.FiveRC = math.Max(5*ohm*farad, d.Wait.To5V)
+	if s.isHalf() {
+		v := math.Max(in.BusV, s.Voltage.Value)
+		d.Uneven = &Uneven{Volt: v, EnergyJ: Energy(farad, v), PeakCurrentA: v / ohm, Wait: timesFrom(ohm, farad, v)}
+		d.FiveRC = math.Max(d.FiveRC, d.Uneven.Wait.To5V)
+	}
 	return d
+}
+
+func (s Store) isHalf() bool { return s.Point == PointUpperHalf || s.Point == PointLowerHalf }
+
+// uneven is the worse of the two halves out of balance; nil where the bank is not split.
+func (p *Plan) uneven() *Uneven {
+	var worst *Uneven
+	for _, d := range p.Stores {
+		if d.Uneven != nil && (worst == nil || d.Uneven.EnergyJ > worst.EnergyJ) {
+			worst = d.Uneven
+		}
+	}
+	return worst
+}
+
+// unevenEnergy is the energy of all stores, one half of the bank holding the whole voltage of the bus in the bank's stead;
+// 0 without halves.
+func unevenEnergy(in Input) float64 {
+	half, others := 0.0, 0.0
+	for _, s := range in.Stores {
+		switch {
+		case s.isHalf():
+			half = math.Max(half, Energy(s.Capacitance.Value*in.spread(), math.Max(in.BusV, s.Voltage.Value)))
+		case s.Point != PointBus && s.PartOf != PointBus:
+			others += s.WorstJ
+		}
+	}
+	if half == 0 {
+		return 0
+	}
+	return half + others
 }
 
 // checked gives the input with everything filled in that has a default, or the error of its first bad value.
 func (in Input) checked() (Input, error) {
 	if len(in.Stores) > 0 {
 		in.BusV, in.CapacitanceF = in.Stores[0].Voltage.Value, in.Stores[0].Capacitance.Value
+		in.BusUnknown = false
+	}
+	if in.BusUnknown {
+		f := worstBus()
+		in.BusV, in.Needs = f.Value, append(in.Needs, Wanted{"bus.highest", f.String() + " is shown; " + f.Because})
 	}
 	if err := inRange("bus voltage", in.BusV, leastBus, mostBus, quantity.Volt); err != nil {
 		return in, err
@@ -246,7 +299,7 @@ func (in Input) checked() (Input, error) {
 			in.CapacitanceF = worstLowBank
 		}
 		in.Stores = []Store{bareBank(in, Assumed)}
-		in.Needs = append(in.Needs, Wanted{"bus.capacitance", in.Stores[0].Capacitance.String() + " is shown: a large bank (judgement)"})
+		in.Needs = append(in.Needs, Wanted{"bus.capacitance", in.Stores[0].Capacitance.String() + " is shown: " + largeBank})
 	}
 	if err := inRange("bus capacitance", in.CapacitanceF, leastCapacitance, mostCapacitance, quantity.Farad); err != nil {
 		return in, err
@@ -274,10 +327,21 @@ func (in Input) checked() (Input, error) {
 // spread is the top of the capacitance's interval over its value.
 func (in Input) spread() float64 { return in.HighestF / in.CapacitanceF }
 
+// largeBank says what stands in for a capacitance that is not stated.
+const largeBank = "a large bank (judgement)"
+
 func bareBank(in Input, basis Basis) Store {
+	volt := Figure{Value: in.BusV, Unit: quantity.Volt, Basis: Stated}
+	if in.BusUnknown {
+		volt = worstBus()
+	}
+	bank := Figure{Value: in.CapacitanceF, Unit: quantity.Farad, Basis: basis}
+	if basis == Assumed {
+		bank.Because = "bus capacitance not stated: " + largeBank
+	}
 	return Store{Point: PointBus, Title: "bus capacitor bank", Where: "between the rails, at the capacitor terminals", Because: "given",
-		Voltage:     Figure{Value: in.BusV, Unit: quantity.Volt, Basis: Stated},
-		Capacitance: Figure{Value: in.CapacitanceF, Unit: quantity.Farad, Basis: basis}}.filled()
+		Voltage:     volt,
+		Capacitance: bank}.filled()
 }
 
 func inRange(what string, value, least, most float64, unit quantity.Unit) error {

@@ -8,87 +8,23 @@ import (
 	"pgregory.net/rapid"
 )
 
-// The table of banks in the safety notes, A2 (computed there): energy, charge, and whether the bank passes 100 V and 10 J.
-func TestEnergyAndChargeOfPublishedTable(t *testing.T) {
-	for _, row := range []struct {
-		farad, volt, joule, milliCoulomb float64
-		over                             bool
-	}{
-		{470e-6, 325, 24.8, 153, true},
-		{1000e-6, 325, 52.8, 325, true},
-		{2200e-6, 565, 351, 1243, true},
-		{4700e-6, 565, 750, 2656, true},
-		{4700e-6, 800, 1504, 3760, true},
-		{10e-3, 100, 50, 1000, true},
-		{10e-3, 60, 18, 600, false},
-	} {
-		p, err := Discharge(Input{BusV: row.volt, CapacitanceF: row.farad})
-		if err != nil {
-			t.Fatal(err)
-		}
-		near(t, "energy", p.EnergyJ, row.joule, 0.003)
-		near(t, "charge", p.ChargeC*1000, row.milliCoulomb, 0.003)
-		if got := hasCaution(p, "stored-energy"); got != row.over {
-			t.Errorf("%g V, %g F: stored-energy warning %v, want %v", row.volt, row.farad, got, row.over)
-		}
-	}
-}
-
-// The table of ln(V0/V) in the safety notes, A2.3 (computed there); RC = 1 s.
-func TestTimesOfPublishedTable(t *testing.T) {
-	for _, row := range []struct{ volt, to60, to50, to5 float64 }{
-		{100, 0.51, 0.69, 3.00}, {325, 1.69, 1.87, 4.17}, {565, 2.24, 2.42, 4.73}, {800, 2.59, 2.77, 5.08}, {1000, 2.81, 3.00, 5.30},
-	} {
-		p, err := Discharge(Input{BusV: row.volt, CapacitanceF: 1e-3, ResistorOhm: 1000})
-		if err != nil {
-			t.Fatal(err)
-		}
-		near(t, "to 60 V", p.Nominal.To60V, row.to60, 0.01)
-		near(t, "to 50 V", p.Nominal.To50V, row.to50, 0.01)
-		near(t, "to 5 V", p.Nominal.To5V, row.to5, 0.01)
-	}
-}
-
-// The worked example of A2.3: 2200 µF at 800 V, 704 J (computed; rounded to two digits).
+// The resistors of the worked example of A2.3, 2200 µF at 800 V: which of them keep to 2 A and 500 W.
 func TestResistorsOfPublishedExample(t *testing.T) {
-	for _, row := range []struct{ ohm, ampere, watt, to60, to5 float64 }{
-		{100, 8, 6400, 0.57, 0}, {470, 1.7, 1360, 2.7, 5.2}, {1000, 0.8, 640, 5.7, 11},
-		{2200, 0.36, 291, 12.5, 24.6}, {10e3, 0.08, 64, 57, 112},
-	} {
-		p, err := Discharge(Input{BusV: 800, CapacitanceF: 2200e-6, ResistorOhm: row.ohm})
+	for ohm, within := range map[float64]bool{100: false, 470: false, 1000: false, 2200: true, 10e3: true} {
+		p, err := Discharge(Input{BusV: 800, CapacitanceF: 2200e-6, ResistorOhm: ohm})
 		if err != nil {
 			t.Fatal(err)
 		}
-		near(t, "energy", p.EnergyJ, 704, 1e-9)
-		near(t, "peak current", p.PeakCurrentA, row.ampere, 0.02)
-		near(t, "peak power", p.PeakPowerW, row.watt, 0.005)
-		near(t, "to 60 V", p.Nominal.To60V, row.to60, 0.02)
-		if row.to5 > 0 {
-			near(t, "to 5 V", p.Nominal.To5V, row.to5, 0.02)
+		if p.Resistor.Within != within || (len(p.Resistor.Notes) == 0) != within {
+			t.Errorf("%g Ω: within its limits %v, want %v: %v", ohm, p.Resistor.Within, within, p.Resistor.Notes)
 		}
-		if want := row.ampere > 2 || row.watt > 500; p.Resistor.Within == want {
-			t.Errorf("%g ohm: within its limits %v, want %v", row.ohm, p.Resistor.Within, !want)
-		}
-		if p.Resistor.Series != 2 || p.Resistor.EachV != 400 {
+		if p.Resistor.Series != 2 || p.Resistor.EachV != 400 || p.Resistor.EachOhm != ohm/2 {
 			t.Errorf("800 V needs two bodies of 400 V each: %+v", p.Resistor)
 		}
 	}
 }
 
-// The built-in bleeders of A2.3 and d19 of the stress notes (both computed there).
-func TestBleederForPublishedExamples(t *testing.T) {
-	for _, row := range []struct{ farad, from, seconds, ohm, watt float64 }{
-		{2200e-6, 565, 5, 1.0e3, 315},
-		{4700e-6, 800, 5, 411, 1560},
-		{1000e-6, 565, 300, 133.8e3, 2.39}, // d19
-	} {
-		ohm, watt, err := BleederFor(row.farad, row.from, 60, row.seconds)
-		if err != nil {
-			t.Fatal(err)
-		}
-		near(t, "resistor", ohm, row.ohm, 0.02)
-		near(t, "power", watt, row.watt, 0.02)
-	}
+func TestBleederForRefusesWhatHasNoAnswer(t *testing.T) {
 	for _, bad := range [][4]float64{{0, 565, 60, 5}, {1e-3, 60, 60, 5}, {1e-3, 565, 0, 5}, {1e-3, 565, 60, 0}, {math.NaN(), 565, 60, 5}, {1e-3, math.Inf(1), 60, 5}} {
 		if _, _, err := BleederFor(bad[0], bad[1], bad[2], bad[3]); err == nil {
 			t.Errorf("%v: no error", bad)
@@ -112,41 +48,75 @@ func TestLabelOfPublishedDrive(t *testing.T) {
 	}
 }
 
-// The slow bleeder of A2.3: 100 kΩ on 2000 µF from 800 V needs 518 s to 60 V and 555 s to 50 V (computed there).
-func TestSlowBleederOfPublishedExample(t *testing.T) {
-	p, err := Discharge(Input{BusV: 800, CapacitanceF: 2000e-6, BleederOhm: 100e3})
-	if err != nil {
-		t.Fatal(err)
+// A label leads to 60 V in whole minutes with the capacitance at its top, and none is needed below 5 s.
+func TestLabelTimes(t *testing.T) {
+	for _, row := range []struct {
+		volt, farad, ohm, label float64
+		within                  bool
+	}{
+		{800, 2000e-6, 100e3, 660, false}, // 1.2 · 518 s
+		{565, 2200e-6, 1.0e3, 60, false},  // 5.9 s at +20 %, 4.9 s as marked
+		{565, 2200e-6, 840, 60, true},     // 4.97 s
+		{60, 2200e-6, 100e3, 0, true},     // nothing to fall to
+		{60.1, 1, 1e6, 2040, false},       // 1.2 Ms · ln(60.1/60) = 1998 s
+	} {
+		p, err := Discharge(Input{BusV: row.volt, CapacitanceF: row.farad, BleederOhm: row.ohm})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if b := p.Bleeder; b.LabelTimeS != row.label || b.WithinFiveS != row.within || b.Wait.To60V < b.Nominal.To60V {
+			t.Errorf("%g V, %g F, %g Ω: label %g s, within 5 s %v: %+v", row.volt, row.farad, row.ohm, b.LabelTimeS, b.WithinFiveS, b)
+		}
 	}
-	near(t, "to 60 V", p.Bleeder.Nominal.To60V, 518, 0.001)
-	near(t, "to 50 V", p.Bleeder.Nominal.To50V, 555, 0.001)
-	near(t, "with 20 % more", p.Bleeder.Wait.To60V, 1.2*518, 0.001)
-	near(t, "power", p.Bleeder.PowerW, 6.4, 1e-9)
 }
 
-// A2: capacitance that stores 10 J, and A1.1: capacitance that stores 100 J on a low-voltage bus (both computed there).
-func TestCapacitanceAtTheLimits(t *testing.T) {
-	for volt, farad := range map[float64]float64{170: 692e-6, 325: 189e-6, 400: 125e-6, 565: 63e-6, 650: 47e-6, 800: 31e-6} {
-		near(t, "10 J", Energy(farad, volt), 10, 0.02)
-	}
-	for volt, farad := range map[float64]float64{48: 86.8e-3, 60: 55.6e-3, 90: 24.7e-3} {
-		near(t, "100 J", Energy(farad, volt), 100, 0.002)
-	}
-}
-
-// A2.4: 10 % of 800 V is 80 V, so a bank that read zero can climb back over 50 and 60 V.
+// A2.4: 10 to 15 % come back, and it is said whether that climbs back over 50 and over 60 V.
 func TestVoltageComesBack(t *testing.T) {
-	p, err := Discharge(Input{BusV: 800, CapacitanceF: 1e-3})
+	for _, row := range []struct {
+		volt             float64
+		above50, above60 bool
+		says, doesNotSay string
+		cautioned        bool
+	}{
+		{30, false, false, "3 V to 4.5 V", "above", false},
+		{320, false, false, "not above 50 V", "back above", true},
+		{334, true, false, "back above 50 V", "60 V", true},       // 50.1 V
+		{400, true, false, "back above 50 V", "above 60 V", true}, // just 60 V
+		{401, true, true, "back above 50 V and above 60 V", "not above", true},
+		{800, true, true, "80 V to 120 V", "not above", true},
+	} {
+		p, err := Discharge(Input{BusV: row.volt, CapacitanceF: 1e-3})
+		if err != nil {
+			t.Fatal(err)
+		}
+		r := p.Recovery
+		if r.BackAbove50V != row.above50 || r.BackAbove60V != row.above60 || hasCaution(p, "recovery") != row.cautioned {
+			t.Errorf("%g V: %+v, cautioned %v", row.volt, r, hasCaution(p, "recovery"))
+		}
+		if !strings.Contains(r.Text, row.says) || strings.Contains(r.Text, row.doesNotSay) || !strings.Contains(r.Text, "10 to 20 days") {
+			t.Errorf("%g V: %s", row.volt, r.Text)
+		}
+	}
+}
+
+// Where neither the bus nor its capacitance is known the worst of a mains board stands in, and both are asked for.
+func TestNothingKnownIsTheWorstCase(t *testing.T) {
+	p, err := Discharge(Input{BusUnknown: true})
 	if err != nil {
 		t.Fatal(err)
 	}
-	near(t, "low", p.Recovery.LowV, 80, 1e-9)
-	near(t, "high", p.Recovery.HighV, 120, 1e-9)
-	if !p.Recovery.BackAbove50V || p.Recovery.DaysLow != 10 || p.Recovery.DaysHigh != 20 {
-		t.Errorf("%+v", p.Recovery)
+	if p.BusV != 825 || p.CapacitanceF != 4700e-6 || p.BusBasis != Assumed || p.CapacitanceBasis != Assumed {
+		t.Errorf("%g V %s, %g F %s", p.BusV, p.BusBasis, p.CapacitanceF, p.CapacitanceBasis)
 	}
-	if p, err = Discharge(Input{BusV: 320, CapacitanceF: 1e-3}); err != nil || p.Recovery.BackAbove50V {
-		t.Errorf("15 %% of 320 V is 48 V: %+v, %v", p.Recovery, err)
+	if len(p.Needs) != 2 || p.Needs[0].Key != "bus.highest" || p.Needs[1].Key != "bus.capacitance" || !strings.Contains(p.Needs[0].Why, "supply not stated") {
+		t.Errorf("needs %+v", p.Needs)
+	}
+	if p, err = Discharge(Input{BusUnknown: true, CapacitanceF: 1e-3}); err != nil || p.CapacitanceBasis != Stated || p.BusBasis != Assumed || len(p.Needs) != 1 {
+		t.Errorf("capacitance alone: %+v, %v", p, err)
+	}
+	stated := splitStores(300, 1e-3)
+	if p, err = Discharge(Input{BusUnknown: true, Stores: stated}); err != nil || p.BusV != 300 || len(p.Needs) != 0 {
+		t.Errorf("stores that are known stay: %+v, %v", p, err)
 	}
 }
 
@@ -211,12 +181,15 @@ func TestCautionsFollowTheHazard(t *testing.T) {
 	}{
 		{"48 V battery, 20 mF: 23 J", Input{BusV: 48, CapacitanceF: 20e-3, Supply: "battery"}, "battery no-short ohms recovery local-rules", "live burn stored-energy arc-flash touch-limit"},
 		{"48 V, 100 mF: 115 J", Input{BusV: 48, CapacitanceF: 100e-3}, "burn noise", "live stored-energy"},
-		{"325 V, 10 µF: 0.5 J", Input{BusV: 325, CapacitanceF: 10e-6}, "live touch-limit", "stored-energy stored-energy-low-limit"},
+		{"325 V, 2 µF: 0.13 J", Input{BusV: 325, CapacitanceF: 2e-6}, "live touch-limit", "stored-energy stored-energy-low-limit"},
+		{"325 V, 10 µF: 0.6 J", Input{BusV: 325, CapacitanceF: 10e-6}, "stored-energy-low-limit", "stored-energy"},
 		{"325 V, 47 µF: 2.5 J", Input{BusV: 325, CapacitanceF: 47e-6}, "live stored-energy-low-limit", "stored-energy"},
 		{"565 V, 2.2 µF: 0.35 J", Input{BusV: 565, CapacitanceF: 2.2e-6}, "stored-energy-low-limit resistor-body", "stored-energy"},
 		{"800 V, 32 mF: 10.2 kJ", Input{BusV: 800, CapacitanceF: 32e-3}, "arc-flash stored-energy", "arc-flash-source"},
 		{"144 V battery", Input{BusV: 144, CapacitanceF: 1e-3, Supply: "battery"}, "arc-flash-source battery", "arc-flash"},
-		{"shared bus", Input{BusV: 565, CapacitanceF: 1e-3, Supply: "shared-bus"}, "shared-bus", "battery"},
+		{"shared bus", Input{BusV: 565, CapacitanceF: 1e-3, Supply: "shared-bus"}, "shared-bus arc-flash-source", "battery"},
+		{"mains", Input{BusV: 565, CapacitanceF: 1e-3, Supply: "rectified-mains"}, "live", "shared-bus arc-flash-source battery"},
+		{"50 V, 100 J at the top", Input{BusV: 50, CapacitanceF: 0.04, HighestF: 0.08}, "burn noise live", "stored-energy"},
 		{"short-like resistor", Input{BusV: 565, CapacitanceF: 1e-3, ResistorOhm: 47}, "resistor", ""},
 		{"free motor", Input{BusV: 565, CapacitanceF: 1e-3, MotorCanTurn: true}, "motor", "resistor"},
 	} {

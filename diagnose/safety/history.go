@@ -16,15 +16,39 @@ import (
 type history struct {
 	now     time.Time
 	safety  measure.Safety
-	powered []time.Time // observations of powered tests
+	powered []time.Time     // observations of powered tests, and what the record holds of powered work
+	boards  []measure.Board // as found; after the rebuild the rebuilt one, too
 }
+
+// historyOf gives the history of a case with what the rule base found to be powered.
+func historyOf(c *measure.Case, now time.Time, powered []time.Time) history {
+	return history{now: now, safety: c.Safety, powered: slices.Concat(powered, recordedPower(c)), boards: boardsOf(c)}
+}
+
+// recordedPower gives the times at which the record says that power was on without naming a test: a stage of the
+// bring-up, and a step of the record that is done under power.
+func recordedPower(c *measure.Case) []time.Time {
+	var times []time.Time
+	for _, s := range c.BringUp {
+		times = append(times, s.At)
+	}
+	for _, e := range c.Steps {
+		if step, ok := recordStep(e.Step); ok && step.Work.Need.Powered() && (e.Result == resultDone || e.Result == resultFailed) {
+			times = append(times, e.At)
+		}
+	}
+	return times
+}
+
+// come tells whether a moment is stated and not in the future.
+func (h history) come(at time.Time) bool { return !at.IsZero() && !at.After(h.now) }
 
 // energised gives the last moment that has come to be at which energy was put in, zero without one. undated tells of a
 // moment without a time or in the future: nothing recorded so far can be known to be newer than that.
 func (h history) energised() (last time.Time, undated bool) {
 	note := func(at time.Time) {
 		switch {
-		case at.IsZero() || at.After(h.now):
+		case !h.come(at):
 			undated = true
 		case at.After(last):
 			last = at
@@ -46,7 +70,7 @@ func (h history) sourceSeen() (last *measure.DeadCheck, undated bool) {
 		d := &h.safety.DeadChecks[k]
 		switch {
 		case !above(highestOf(d.AC), DeadVolts):
-		case d.At.IsZero() || d.At.After(h.now):
+		case !h.come(d.At):
 			undated = true
 		case last == nil || !d.At.Before(last.At):
 			last = d
@@ -67,17 +91,17 @@ func (h history) broken() (last time.Time, undated bool) {
 
 // isolation gives the latest statement that has come to be, a statement of the opposite even if it has not; nil
 // without any. Of statements of one moment the later in the file counts.
-func (h history) isolation(b measure.Board) *measure.Isolation {
+func (h history) isolation() *measure.Isolation {
 	var last *measure.Isolation
 	at := func(i *measure.Isolation) time.Time {
-		if i.At.IsZero() || i.At.After(h.now) {
-			return h.now
+		if h.come(i.At) {
+			return i.At
 		}
-		return i.At
+		return h.now
 	}
 	for k := range h.safety.Isolation {
 		i := &h.safety.Isolation[k]
-		if len(isolationFaults(b, i)) == 0 && (i.At.IsZero() || i.At.After(h.now)) {
+		if len(isolationFaults(h.boards, i)) == 0 && !h.come(i.At) {
 			continue
 		}
 		if last == nil || !at(i).Before(at(last)) {
@@ -90,7 +114,7 @@ func (h history) isolation(b measure.Board) *measure.Isolation {
 // isolatedSince gives the moment from which the board has been cut off without a break: the first sound statement
 // after the last energy, the last source seen and the last statement that was not sound, each statement followed by the
 // next one before it lapsed. Zero when it is not cut off now.
-func (h history) isolatedSince(b measure.Board) time.Time {
+func (h history) isolatedSince() time.Time {
 	from, undated := h.broken()
 	if undated {
 		return time.Time{}
@@ -98,8 +122,8 @@ func (h history) isolatedSince(b measure.Board) time.Time {
 	var sound []time.Time
 	for k := range h.safety.Isolation {
 		i := &h.safety.Isolation[k]
-		unsound := len(isolationFaults(b, i)) > 0
-		come := !i.At.IsZero() && !i.At.After(h.now)
+		unsound := len(isolationFaults(h.boards, i)) > 0
+		come := h.come(i.At)
 		switch {
 		case unsound && !come:
 			return time.Time{}
@@ -121,7 +145,7 @@ func (h history) unlapsed(statements []time.Time, from time.Time) time.Time {
 		if !at.After(from) {
 			continue
 		}
-		if since.IsZero() || lapsed(last, at) {
+		if since.IsZero() || lapsed(last, at.In(h.now.Location())) { // days as the one who asks counts them
 			since = at
 		}
 		last = at
@@ -164,7 +188,7 @@ func (h history) check(point string) *measure.DeadCheck {
 		if !samePoint(d.Point, point) {
 			continue
 		}
-		if d.At.IsZero() || d.At.After(h.now) {
+		if !h.come(d.At) {
 			if above(highest(d), DeadVolts) {
 				against = d
 			}
@@ -204,39 +228,3 @@ func highestOf(q quantity.Quantity) float64 {
 
 // above is true for a value that is not a number, too.
 func above(value, limit float64) bool { return !(value <= limit) }
-
-// asOf keeps what had happened by a moment; what carries no time has always happened if it speaks against.
-func asOf(s measure.Safety, powered []time.Time, at time.Time) (measure.Safety, []time.Time) {
-	var out measure.Safety
-	for _, i := range s.Isolation {
-		if !i.At.After(at) {
-			out.Isolation = append(out.Isolation, i)
-		}
-	}
-	for _, d := range s.DeadChecks {
-		if !d.At.After(at) {
-			out.DeadChecks = append(out.DeadChecks, d)
-		}
-	}
-	for _, l := range s.Links {
-		if l.Fitted.After(at) {
-			continue
-		}
-		if l.Removed.After(at) {
-			l.Removed = time.Time{}
-		}
-		out.Links = append(out.Links, l)
-	}
-	for _, e := range s.Energised {
-		if !e.At.After(at) {
-			out.Energised = append(out.Energised, e)
-		}
-	}
-	var before []time.Time
-	for _, p := range powered {
-		if !p.After(at) {
-			before = append(before, p)
-		}
-	}
-	return out, before
-}

@@ -2,7 +2,6 @@ package safety
 
 import (
 	"fmt"
-	"strings"
 	"time"
 
 	"drivemend/measure"
@@ -23,6 +22,7 @@ type Decision struct {
 	At      time.Time // the time that was used
 	Allowed bool
 	Missing []Missing // empty exactly when allowed
+	Carries []string  // what the instruction for this work always carries with it, allowed or not
 	Status  Status
 }
 
@@ -30,45 +30,16 @@ type Decision struct {
 // what the rule base reads out of its observations. It never errs towards allowing: an unknown need or tool, a time that
 // is missing, or one in the future is taken against the step.
 func Check(c *measure.Case, w Work, now time.Time, e Evidence) Decision {
-	d := Decision{Need: w.Need, Tool: w.Tool, At: now}
+	d := Decision{Need: w.Need, Tool: w.Tool, At: now, Carries: carries(w)}
 	if c == nil {
 		d.Missing = []Missing{{0, "there is no case", "start one"}}
 		return d
 	}
-	h := history{now: now, safety: c.Safety, powered: e.Powered}
-	d.Status = h.status(c.Board)
-	d.Missing = h.missing(w.Need, d.Status)
+	s := sceneOf(c, w, now, e)
+	d.Status = s.status
+	d.Missing = s.missing()
 	d.Allowed = len(d.Missing) == 0
 	return d
-}
-
-func (h history) missing(need Need, s Status) []Missing {
-	switch need {
-	case NeedQuestion:
-		return nil
-	case NeedDeadCheck, NeedDischarge:
-		return s.Isolation.Missing
-	case NeedDead:
-		m := append([]Missing(nil), s.Isolation.Missing...)
-		if s.Link.Fitted {
-			return append(m, linkMissing(s))
-		}
-		for _, p := range s.Points {
-			m = append(m, p.Missing...)
-		}
-		return m
-	case NeedControlPower, NeedLowBus, NeedFull:
-		return poweredMissing(s)
-	}
-	return []Missing{{0, fmt.Sprintf("no step can need %q", string(need)), "use one of " + needNames()}}
-}
-
-func needNames() string {
-	var names []string
-	for _, n := range Needs() {
-		names = append(names, string(n))
-	}
-	return strings.Join(names, ", ")
 }
 
 func linkMissing(s Status) Missing {
@@ -80,47 +51,31 @@ func linkMissing(s Status) Missing {
 	return Missing{2, "a shorting link has been fitted since " + clock(s.Link.Since) + ": everything would read shorted, and power would go straight into it", off}
 }
 
-func poweredMissing(s Status) []Missing {
-	m := []Missing{{3, "hold points 3 and 4 (guards, fuse, second person; probe reference) are not kept by this version, so it gives no powered step",
-		"nothing unlocks it in this version; powered work follows your own procedure under local rules"}}
-	if s.Link.Fitted {
-		m = append(m, linkMissing(s))
-	}
-	return m
-}
-
-// OutsideHoldPoint tells what was missing when an observation was made, from the safety history as it stood at that
-// moment; nothing when it was made within its hold points. Such a reading is kept, and marked. A question and an
-// answer without a reading (skipped, later) are never outside; a reading of a powered test always is as long as this
-// version keeps no record of hold point 3.
+// OutsideHoldPoint tells what was missing when an observation was made, judged from the record as it stood at that
+// moment: what was stated, checked, observed, done or rebuilt later does not count. Nothing when it was made within its
+// hold points. Such a reading is kept, and marked. A question and an answer without a reading (skipped, later) are never
+// outside. A static test counts at the time the evidence gives it: hand over the evidence of AsOf(c, o.At), so that a
+// test repeated later does not hide that it had passed before.
 func OutsideHoldPoint(c *measure.Case, o measure.Observation, w Work, e Evidence) (outside bool, missing []Missing) {
-	if w.Need == NeedQuestion || o.Answer != "" {
+	if (w.Need == NeedQuestion && w.Tool == NoTool) || o.Answer != "" {
 		return false, nil
 	}
-	if w.Need.Powered() {
-		return true, poweredOutside(c, o.At)
-	}
 	if o.At.IsZero() || c == nil {
-		return true, []Missing{{2, "the reading carries no time, so no dead check can be shown to stand before it", "give the reading its time"}}
+		return true, []Missing{undatedReading(w)}
 	}
-	then := *c
-	then.Safety, e.Powered = asOf(c.Safety, e.Powered, o.At)
-	d := Check(&then, w, o.At, e)
+	then := evidenceAsOf(e, o.At)
+	if w.Energises() {
+		then.Powered = without(then.Powered, o.At)
+	}
+	d := Check(AsOf(c, o.At), w, o.At, then)
 	return !d.Allowed, d.Missing
 }
 
-// poweredOutside is what a reading under power lacked at its moment: hold point 3, and 2 where a link was fitted.
-func poweredOutside(c *measure.Case, at time.Time) []Missing {
-	m := []Missing{{3, "what was asked before power went on is not on record: hold point 3 is not kept by this version",
-		"say in the report who stood by, and which fuse and guard were fitted"}}
-	if c == nil || at.IsZero() {
-		return m
+func undatedReading(w Work) Missing {
+	if w.Need.Powered() {
+		return Missing{3, "the reading carries no time, so no statement of the conditions can be shown to stand before it", "give the reading its time"}
 	}
-	record, _ := asOf(c.Safety, nil, at)
-	if link := (history{now: at, safety: record}).link(); link.Fitted {
-		m = append(m, Missing{2, "a shorting link was fitted, since " + clock(link.Since) + ": power went straight into it", "say in the report what became of it, or correct the times of the link"})
-	}
-	return m
+	return Missing{2, "the reading carries no time, so no dead check can be shown to stand before it", "give the reading its time"}
 }
 
 // touch says in words what a reading at a store allows; burn adds the warning that stands below the shock limit.
@@ -139,7 +94,11 @@ func touch(volts float64, burn bool) string {
 }
 
 // burns tells whether a board can burn below the shock limit: a battery, or 100 J stored.
-func burns(b measure.Board, stores []Store) bool {
-	supply, _ := b.Word("supply")
-	return supply == "battery" || worstEnergy(stores) >= 100
+func burns(boards []measure.Board, stores []Store) bool {
+	for _, b := range boards {
+		if supply, _ := b.Word("supply"); supply == "battery" {
+			return true
+		}
+	}
+	return worstEnergy(stores) >= 100
 }

@@ -22,39 +22,47 @@ func checkCommand(point string) string {
 	return "enter it: drivemend safe dead-check CASE " + point + " --dc … --ac … --proved"
 }
 
-// isolationFaults says what a statement of isolation lacks; nothing when it is sound.
-func isolationFaults(b measure.Board, i *measure.Isolation) []Missing {
+// isolationFaults says what a statement of isolation lacks on these boards, found and rebuilt; nothing when it is sound.
+func isolationFaults(boards []measure.Board, i *measure.Isolation) []Missing {
 	var m []Missing
 	if !i.Locked {
 		m = append(m, Missing{0, "the isolation is not locked", "open the isolator, lock and tag it, then enter it: " + isolationCommand})
 	}
-	if fault := motorFault(b, i.Motor); fault != "" {
+	if fault := motorFault(boards, i.Motor); fault != "" {
 		m = append(m, Missing{0, fault, "unplug the motor or lock its shaft, then enter it: drivemend safe isolation CASE --locked --motor unplugged (or shaft-locked) --other-sources …"})
 	}
 	if fault := sourcesFault(i.OtherSources); fault != "" {
 		m = append(m, Missing{0, fault,
 			"look for a shared bus, battery, charger, external 24 V, fan and relay supplies; switch them off, lock them, and enter it: " +
 				"drivemend safe isolation CASE --locked --motor unplugged --other-sources none; or each by a name of up to four words with off, between commas: " +
-				"--other-sources \"24 V control supply off, charger unplugged\""})
+				"--other-sources \"24 V control supply off, charger unplugged\"; what has no common name goes by the label on it, with its number: \"K3 off\""})
 	}
 	return m
 }
 
-func motorFault(b measure.Board, motor string) string {
+func motorFault(boards []measure.Board, motor string) string {
 	switch motor {
 	case motorUnplugged, motorShaftLocked:
 		return ""
 	case motorConnected:
-		can, known := generates(b)
-		switch {
-		case !can:
-			return ""
-		case known:
-			return "the motor is connected and its shaft is free: when it turns, it puts voltage on the bus"
+		for _, b := range boards {
+			if can, known := generates(b); can {
+				return freeShaft(known)
+			}
 		}
-		return "the motor is connected and its kind is not known: a permanent-magnet motor makes voltage whenever it turns"
+		if len(boards) > 0 {
+			return ""
+		}
+		return freeShaft(false)
 	}
 	return "it is not stated whether the motor is unplugged or its shaft locked"
+}
+
+func freeShaft(known bool) string {
+	if known {
+		return "the motor is connected and its shaft is free: when it turns, it puts voltage on the bus"
+	}
+	return "the motor is connected and its kind is not known: a permanent-magnet motor makes voltage whenever it turns"
 }
 
 // How a source that is not there any more is written; the longer wording stands before the one it ends in.
@@ -63,13 +71,23 @@ var offWords = [][]string{{"switched", "off"}, {"is", "off"}, {"off"}, {"disconn
 // mostNameWords keeps a name a name: a sentence can say anything.
 const mostNameWords = 4
 
-// notInName are the words that make a statement of something else: a doubt, a denial, another time, or no name at all.
-var notInName = words(
-	"not", "no", "nothing", "nobody", "none", "never", "neither", "nor", "without", "cannot", "can", "could", "should", "would", "might", "may", "must",
-	"will", "be", "been", "was", "were", "is", "are", "has", "had", "if", "when", "once", "until", "unless", "before", "after", "except", "but", "or",
-	"soon", "later", "tomorrow", "yesterday", "yet", "still", "on", "live", "running", "off", "turned", "half", "partly", "nearly", "almost",
-	"unknown", "unclear", "maybe", "perhaps", "probably", "presumably", "hopefully", "isnt", "cant", "wont", "wasnt",
-	"it", "they", "this", "that", "these", "those", "all", "both", "each", "every", "everything", "other", "others", "rest", "some", "any", "source", "sources")
+// A name is made of the words of these two lists, with one of the first or a label among them. The lists are closed: an
+// open one lets a statement of something else pass for a name ("charger sometimes off", "make sure charger off").
+// Whatever they lack goes by the label on it, with its number (K3, F12, PS2).
+var (
+	sourceNames = words("adapter", "adaptor", "alternator", "batteries", "battery", "blower", "bus", "busbar", "buses", "charger", "chargers", "circuit", "compressor",
+		"computer", "contactor", "contactors", "controller", "conveyor", "cooler", "drive", "drives", "encoder", "exciter", "fan", "fans", "feed", "feeder", "feedback",
+		"fieldbus", "generator", "heater", "heaters", "hoist", "inverter", "inverters", "lamp", "laptop", "lift", "lighting", "line", "lines", "mains", "network", "pack",
+		"panel", "plc", "programmer", "psu", "pump", "rectifier", "relay", "relays", "sensor", "servo", "socket", "starter", "supplies", "supply", "tachometer",
+		"transformer", "turbine", "ups", "usb", "vac", "vdc", "ventilator", "winch")
+	sourceKinds = words("ac", "anti", "auxiliary", "backup", "bench", "board", "brake", "cabinet", "coil", "common", "condensation", "control", "cooling", "crane", "dc",
+		"door", "emergency", "external", "field", "heating", "high", "holding", "hz", "input", "logic", "low", "machine", "main", "motor", "neighbour", "neighbouring",
+		"phase", "power", "precharge", "pre", "charge", "pv", "second", "first", "third", "shared", "signal", "solar", "standby", "telephone", "traction", "trickle",
+		"v", "volt", "voltage", "wind")
+)
+
+// mostLabel is the longest label or figure that counts as a name: 230vac, k12, ps2.
+const mostLabel = 6
 
 func words(list ...string) map[string]bool {
 	set := map[string]bool{}
@@ -125,24 +143,26 @@ func namedOff(part []string) bool {
 	return false
 }
 
-// isName takes one to four plain words with a letter among them.
+// isName takes one to four words of the lists and labels: a name among them, or a label and a letter ("24 V", "K3").
 func isName(name []string) bool {
 	if len(name) > mostNameWords {
 		return false
 	}
-	letter := false
+	named, labelled := false, false
 	for _, w := range name {
 		for _, piece := range strings.FieldsFunc(w, func(r rune) bool { return strings.ContainsRune("-/.", r) }) {
-			if notInName[piece] {
+			label := isLabel(piece)
+			if !label && !sourceNames[piece] && !sourceKinds[piece] {
 				return false
 			}
-			for _, r := range piece {
-				letter = letter || unicode.IsLetter(r)
-				if !unicode.IsLetter(r) && !unicode.IsDigit(r) {
-					return false
-				}
-			}
+			named, labelled = named || sourceNames[piece], labelled || label
 		}
 	}
-	return letter
+	return named || (labelled && strings.ContainsFunc(strings.Join(name, ""), unicode.IsLetter))
+}
+
+// isLabel takes a figure, or letters and figures as they stand on a part.
+func isLabel(piece string) bool {
+	plain := !strings.ContainsFunc(piece, func(r rune) bool { return !unicode.IsLetter(r) && !unicode.IsDigit(r) })
+	return plain && len(piece) <= mostLabel && strings.ContainsFunc(piece, unicode.IsDigit)
 }

@@ -22,6 +22,16 @@ func TestOtherSourcesAreNamedAndOff(t *testing.T) {
 		"24 V supply off,\ncharger off":                         true,
 		"24V/5V-supply off":                                     true,
 
+		"K3 off":                 true,
+		"24 V off":               true,
+		"UPS off, solar PS2 off": true,
+		"drive 2 shared bus off": true,
+
+		"24 V on": false, "none off": false, "charger none": false, "none, charger on": false, "charger off on": false,
+		"charger sometimes off": false, "charger usually off": false, "charger hardly off": false, "charger supposedly off": false,
+		"make sure charger off": false, "turn charger off": false, "check charger off": false, "someone switch charger off": false,
+		"charger needs switched off": false, "charger is is off": false, "k3 charger isn't off": false, "charger un-off": false, "n/a off": false,
+		"switch off": false, "power off": false, "motor off": false, "low voltage off": false, "24v? off": false,
 		"": false, " ": false, ",": false, "off": false, "all off": false, "both off": false, "everything off": false,
 		"charger": false, "charger on": false, "unknown": false, "no": false, "nothing": false,
 		"charger, 24 V supply, both off":          false,
@@ -66,7 +76,7 @@ func TestOtherSourcesAreNamedAndOff(t *testing.T) {
 			t.Errorf("%q: sound %v, fault %q", text, fault == "", fault)
 		}
 	}
-	missing := isolationFaults(measure.Board{}, &measure.Isolation{Locked: true, Motor: "unplugged", OtherSources: "cannot be switched off"})
+	missing := isolationFaults([]measure.Board{{}}, &measure.Isolation{Locked: true, Motor: "unplugged", OtherSources: "cannot be switched off"})
 	if len(missing) != 1 || !strings.Contains(missing[0].Unlock, "24 V control supply off, charger unplugged") || !strings.Contains(missing[0].Unlock, "none") {
 		t.Errorf("it does not say what to write: %+v", missing)
 	}
@@ -116,6 +126,7 @@ func TestAnIsolationIsLookedAtAgain(t *testing.T) {
 		{"a week", []string{"2026-12-01T09:40:00+01:00"}, "2026-12-08T09:41:00+01:00", ""},
 		{"looked at again in time", []string{"2026-12-01T08:00:00+01:00", "2026-12-01T15:00:00+01:00"}, "2026-12-01T20:00:00+01:00", "2026-12-01T08:00:00+01:00"},
 		{"looked at again too late", []string{"2026-12-01T08:00:00+01:00", "2026-12-01T17:00:00+01:00"}, "2026-12-01T20:00:00+01:00", "2026-12-01T17:00:00+01:00"},
+		{"the next day, written in another zone", []string{"2026-12-01T23:30:00+01:00", "2026-12-01T18:30:00-05:00"}, "2026-12-02T01:00:00+01:00", "2026-12-01T18:30:00-05:00"},
 		{"looked at again the next day", []string{"2026-12-01T17:00:00+01:00", "2026-12-02T07:30:00+01:00"}, "2026-12-02T08:00:00+01:00", "2026-12-02T07:30:00+01:00"},
 	} {
 		c := parse(t, "topology: low-side-chopper\nsupply: battery\nload: {kind: dc-motor}\nbus: {highest: 60 V}", "")

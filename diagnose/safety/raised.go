@@ -15,7 +15,7 @@ func StoresAt(c *measure.Case, now time.Time) []Store {
 	if c == nil {
 		return nil
 	}
-	return storesOf(c.Board, history{now: now, safety: c.Safety})
+	return historyOf(c, now, nil).stores()
 }
 
 // storesOf builds the stores twice: as the case states them, to know what was expected, and on a bus as high as read.

@@ -1,30 +1,20 @@
 package safety
 
 import (
+	"slices"
 	"time"
 
 	"drivemend/measure"
+	"drivemend/measure/quantity"
 )
 
-// Phase is when in a job a step of the record is done.
-type Phase string
-
-// The phases, in the order of the job.
+// Results of a step of the record.
 const (
-	BeforeTouching Phase = "before touching"
-	WhileRepairing Phase = "while repairing"
-	AfterRepair    Phase = "after the repair"
+	resultDone        = "done"
+	resultFailed      = "failed"
+	resultNotPossible = "not-possible"
+	resultNotFitted   = "not-fitted"
 )
-
-// RecordStep is one step of the record: work that leaves no reading, but must not be forgotten.
-type RecordStep struct {
-	ID    string // one of measure.StepWords
-	Phase Phase
-	Title string // plain words
-	Ask   string // the question, to be answered done, failed, not-possible, not-fitted
-	How   string // how it is done, with the caution where the hazard is
-	Work  Work   // the hold points it stands behind
-}
 
 // RecordStatus is how one step of the record stands at a moment.
 type RecordStatus struct {
@@ -36,21 +26,145 @@ type RecordStatus struct {
 	Missing []Missing          // what withholds it now; empty when it may be done
 }
 
-// RecordSteps lists every step of the record in the order of the job.
-func RecordSteps() []RecordStep { return nil }
-
-// Record tells how every step of the record stands at a moment, in the order of the job.
-func Record(c *measure.Case, now time.Time, e Evidence) []RecordStatus { return nil }
-
 // FollowUpAfter is the time from hand-over to the follow-up. A repair that held so long counts as held. Design of this
 // program, a judgement.
 const FollowUpAfter = 30 * 24 * time.Hour
 
-// NamedWork is one kind of work with its name in plain words.
-type NamedWork struct {
-	Work  Work
-	Title string // "ohms, diode, capacitance"
+// Record tells how every step of the record stands at a moment, in the order of the job. A nil case gives nil.
+func Record(c *measure.Case, now time.Time, e Evidence) []RecordStatus {
+	if c == nil {
+		return nil
+	}
+	r := recordAt{c: c, now: now, evidence: e}
+	var out []RecordStatus
+	for _, step := range RecordSteps() {
+		s := r.status(step)
+		if step.ID == measure.StepHandedOver {
+			s.Missing = append(s.Missing, beforeHandOver(out)...)
+		}
+		if step.ID == measure.StepFollowedUp {
+			s = r.followUp(s, out)
+		}
+		out = append(out, s)
+	}
+	return out
 }
 
-// Works lists every kind of work that has conditions, in the order of the job.
-func Works() []NamedWork { return nil }
+// recordAt is the record of a case at a moment.
+type recordAt struct {
+	c        *measure.Case
+	now      time.Time
+	evidence Evidence
+}
+
+func (r recordAt) status(step RecordStep) RecordStatus {
+	s := RecordStatus{Step: step, Last: entryOf(r.c.Steps, step.ID, r.now), Applies: r.applies(step)}
+	s.Settled = s.Last != nil && settles(s.Last.Result) && !s.Last.At.IsZero() && !s.Last.At.After(r.now)
+	s.Missing = Check(r.c, step.Work, r.now, r.evidence).Missing
+	return s
+}
+
+func settles(result string) bool {
+	return result == resultDone || result == resultNotPossible || result == resultNotFitted
+}
+
+// weight orders the results of one moment: the one that says least for the board counts.
+var weight = map[string]int{resultDone: 1, resultNotFitted: 2, resultNotPossible: 3, resultFailed: 4}
+
+// entryOf gives the newest entry of a step. Done counts once its time has come; everything else counts whatever its
+// time says, and of two entries of one moment the one that says less for the board.
+func entryOf(steps []measure.StepEntry, step string, now time.Time) *measure.StepEntry {
+	var last *measure.StepEntry
+	var lastAt time.Time
+	for k := range steps {
+		e := &steps[k]
+		at := e.At
+		if at.IsZero() || at.After(now) {
+			at = now
+		}
+		if e.Step != step || (e.Result == resultDone && !at.Equal(e.At)) {
+			continue
+		}
+		if last == nil || at.After(lastAt) || (at.Equal(lastAt) && weight[e.Result] >= weight[last.Result]) {
+			last, lastAt = e, at
+		}
+	}
+	return last
+}
+
+// applies tells whether this board, at this stage of the job, asks for a step.
+func (r recordAt) applies(step RecordStep) bool {
+	done := r.c.Rebuild != nil && !r.c.Rebuild.Done.IsZero()
+	switch {
+	case step.ID == measure.StepDeadPartsBagged:
+		return done || r.hasDeadPart()
+	case step.ID == measure.StepBrakeResistorTested:
+		_, brake := storeAt(historyOf(r.c, r.now, nil).stores(), PointBrake)
+		return done && brake
+	case step.Phase == AfterRepair:
+		return done
+	}
+	return true
+}
+
+// hasDeadPart tells whether the case names a part that is dead, or a reading that shows one.
+func (r recordAt) hasDeadPart() bool {
+	if r.c.Outcome != nil && len(r.c.Outcome.Parts) > 0 {
+		return true
+	}
+	return slices.ContainsFunc(r.c.Observations, func(o measure.Observation) bool {
+		word := o.Reading != nil && o.Reading.Kind == quantity.Word && o.Reading.Word == "shorted"
+		return o.Part != "" && (word || o.Result == "shorted")
+	})
+}
+
+// beforeHandOver says which steps still stand before the hand-over.
+func beforeHandOver(done []RecordStatus) []Missing {
+	behind := []string{measure.StepProtectionsProved, measure.StepSettingsRestored, measure.StepMotorTested, measure.StepCableTested,
+		measure.StepBrakeResistorTested, measure.StepLoadTested}
+	var m []Missing
+	for _, s := range done {
+		// The brake resistor is asked for only where the board has one; the others always.
+		asked := s.Applies || s.Step.ID != measure.StepBrakeResistorTested
+		if s.Settled || !asked || !slices.Contains(behind, s.Step.ID) {
+			continue
+		}
+		why := "is not on record"
+		if s.Last != nil {
+			why = "is on record as " + s.Last.Result
+		}
+		m = append(m, Missing{3, "before the board is handed over: \"" + s.Step.Title + "\" " + why,
+			"do it and enter it: drivemend record step CASE " + s.Step.ID + " done; where it cannot be done: drivemend record step CASE " + s.Step.ID + " not-possible --note WORDS"})
+	}
+	return m
+}
+
+// followUpDue counts calendar days, as the loader of a case does: the hour of the hand-over does not matter.
+func followUpDue(over time.Time) time.Time {
+	y, m, d := over.Date()
+	return time.Date(y, m, d+int(FollowUpAfter/(24*time.Hour)), 0, 0, 0, 0, over.Location())
+}
+
+// followUp completes the status of the follow-up: due 30 days after the hand-over, and not to be had earlier.
+func (r recordAt) followUp(s RecordStatus, done []RecordStatus) RecordStatus {
+	var over *measure.StepEntry
+	for _, d := range done {
+		if d.Step.ID == measure.StepHandedOver && d.Last != nil && d.Last.Result == resultDone {
+			over = d.Last
+		}
+	}
+	s.Applies = over != nil
+	if over == nil {
+		s.Settled = false
+		s.Missing = append(s.Missing, Missing{3, "the board is not on record as handed over", "enter it once it is: drivemend record step CASE " + measure.StepHandedOver + " done"})
+		return s
+	}
+	s.Due = followUpDue(over.At)
+	if s.Last != nil && s.Last.At.Before(s.Due) {
+		s.Settled = false
+	}
+	if r.now.Before(s.Due) {
+		s.Missing = append(s.Missing, Missing{3, "the follow-up is due at " + clock(s.Due) + ": a repair counts as held after 30 days", "ask again then; what fails before is a new case, with this one as its earlier repair"})
+	}
+	return s
+}

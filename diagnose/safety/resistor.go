@@ -34,11 +34,13 @@ type Resistor struct {
 	EachOhm float64
 	EachV   float64 // voltage over each part's body at the first moment
 	JoulesJ float64 // energy it takes from all stores one after the other, at the top of the capacitance's interval
+	// UnevenJ is the same with one half of a split bank holding the whole voltage of the bus; 0 without halves.
+	UnevenJ float64
 	PeakW   float64 // at the highest store
 	PeakA   float64
 	// AverageW is the mean power over the first time constant RC, (1−e⁻²)/2 of the peak.
 	AverageW float64
-	RatedW   float64 // advised continuous rating, all parts together, by peak, energy and time constant
+	RatedW   float64 // advised continuous rating, all parts together, by peak, the larger energy and time constant
 	// LoadBank tells that no stack of ordinary resistors does it: a load bank or the maker's discharge tool.
 	LoadBank bool
 	Notes    []string
@@ -66,8 +68,10 @@ func chooseResistor(in Input) Resistor {
 	r.EachOhm, r.EachV = r.Ohm/n, volt/n
 	r.PeakA, r.PeakW = volt/r.Ohm, volt*volt/r.Ohm
 	r.AverageW = r.PeakW * (1 - math.Exp(-2)) / 2
-	r.RatedW = ratedWatts(r.PeakW, r.JoulesJ)
-	r.LoadBank = r.RatedW > mostRatedWatts || r.JoulesJ >= mostStackJoules
+	r.UnevenJ = unevenEnergy(in)
+	most := math.Max(r.JoulesJ, r.UnevenJ)
+	r.RatedW = ratedWatts(r.PeakW, most)
+	r.LoadBank = r.RatedW > mostRatedWatts || most >= mostStackJoules
 	r.Notes = r.faults()
 	r.Within = len(r.Notes) == 0
 	return r
@@ -147,15 +151,15 @@ func (r Resistor) faults() []string {
 type Bleeder struct {
 	Ohm, PowerW float64 // PowerW at the highest bus, V²/R
 	Nominal     Times
-	Wait        Times // with the capacitance at the top of its interval
-	LabelTimeS  float64
-	WithinFiveS bool // down to 60 V within 5 s, so no waiting time need be named
+	Wait        Times   // with the capacitance at the top of its interval
+	LabelTimeS  float64 // what a label would name: down to 60 V, in whole minutes; a lower bound, while the bleeder is whole
+	WithinFiveS bool    // down to 60 V within 5 s, so no waiting time need be named
 }
 
 func bleederOf(in Input) *Bleeder {
 	b := &Bleeder{Ohm: in.BleederOhm, PowerW: in.BusV * in.BusV / in.BleederOhm,
 		Nominal: timesFrom(in.BleederOhm, in.CapacitanceF, in.BusV), Wait: timesFrom(in.BleederOhm, in.HighestF, in.BusV)}
-	b.WithinFiveS = b.Wait.To60V <= 5
+	b.WithinFiveS = b.Wait.To60V <= residualSeconds
 	b.LabelTimeS = 60 * math.Ceil(b.Wait.To60V/60)
 	return b
 }
@@ -170,22 +174,34 @@ func BleederFor(farad, from, to, seconds float64) (ohm, watt float64, err error)
 	return ohm, from * from / ohm, nil
 }
 
+// The share of its voltage that comes back to a bank left open is from memory of makers' guides; the days are read in two
+// makers' texts.
+const (
+	recoveryLow, recoveryHigh         = 0.10, 0.15
+	recoveryDaysLow, recoveryDaysHigh = 10, 20
+)
+
 // Recovery is the voltage that an electrolytic bank left open makes by itself after it was discharged.
 type Recovery struct {
 	LowV, HighV       float64 // 10 and 15 % of the voltage it stood at
 	DaysLow, DaysHigh float64 // how long it keeps rising
 	BackAbove50V      bool    // the high figure reaches 50 V
+	BackAbove60V      bool    // the high figure passes 60 V
 	Text              string
 }
 
-// The share that comes back is from memory of makers' guides, the days are read in two makers' texts.
 func recoveryOf(volt float64) Recovery {
-	r := Recovery{LowV: 0.10 * volt, HighV: 0.15 * volt, DaysLow: 10, DaysHigh: 20}
-	r.BackAbove50V = r.HighV >= LiveVolts
-	r.Text = fmt.Sprintf("left open, the bank can come back to %s to %s by itself, the first part within minutes, rising for 10 to 20 days",
-		format(r.LowV, quantity.Volt), format(r.HighV, quantity.Volt))
-	if r.BackAbove50V {
+	r := Recovery{LowV: recoveryLow * volt, HighV: recoveryHigh * volt, DaysLow: recoveryDaysLow, DaysHigh: recoveryDaysHigh}
+	r.BackAbove50V, r.BackAbove60V = r.HighV >= LiveVolts, r.HighV > TouchVolts
+	r.Text = fmt.Sprintf("left open, the bank can come back to %s to %s by itself, the first part within minutes, rising for %d to %d days",
+		format(r.LowV, quantity.Volt), format(r.HighV, quantity.Volt), recoveryDaysLow, recoveryDaysHigh)
+	switch {
+	case r.BackAbove60V:
+		r.Text += ": back above " + format(LiveVolts, quantity.Volt) + " and above " + format(TouchVolts, quantity.Volt)
+	case r.BackAbove50V:
 		r.Text += ": back above " + format(LiveVolts, quantity.Volt)
+	case r.HighV > DeadVolts:
+		r.Text += ": not above " + format(LiveVolts, quantity.Volt) + ", but too much for an ohmmeter"
 	}
 	return r
 }

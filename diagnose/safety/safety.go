@@ -6,13 +6,14 @@
 //	0  isolation: locked, motor unplugged or its shaft locked, other sources none or named and off
 //	1  every store of energy has a fresh dead check
 //	2  a dead check ages, a shorting link blocks, power ends everything
-//	3  conditions of a powered step
-//	4  conditions of scope, thermal and injection steps
+//	3  conditions of a powered step, of the insulation tester and of a double pulse
+//	4  conditions of scope and injection steps; a camera reading on bare metal is a lower bound
 //	5  cautions stand where the hazard is
 //	6  a reading taken outside its hold point is kept and marked
 //
-// Points 3 and 4 are not kept yet, so every powered step is withheld; their conditions belong beside the others in
-// the answer for the powered needs (history.missing).
+// Check keeps points 0 to 4 before an instruction is given, OutsideHoldPoint judges a reading by them afterwards. What
+// each kind of work asks for is one table of conditions (conditions.go), and what a statement before a step has to say
+// is one table of clauses (clauses.go). The lower bound of point 4 belongs to whoever reads the camera.
 //
 // Everything here gives way to local codes and licensed practice.
 package safety

@@ -55,13 +55,13 @@ func StatusOf(c *measure.Case, now time.Time, e Evidence) Status {
 	return Check(c, Work{Need: NeedQuestion}, now, e).Status
 }
 
-func (h history) status(b measure.Board) Status {
-	s := Status{At: h.now, Isolation: h.isolationStatus(b)}
+func (h history) status() Status {
+	s := Status{At: h.now, Isolation: h.isolationStatus()}
 	s.Link = h.link()
 	s.Dead = s.Isolation.Isolated && !s.Link.Fitted
-	stores := storesOf(b, h)
+	stores := h.stores()
 	s.Alarms = alarmsOf(stores)
-	burn := burns(b, stores)
+	burn := burns(h.boards, stores)
 	for _, store := range standing(stores, s.Isolation) {
 		p := h.pointStatus(store, s, burn)
 		s.Dead = s.Dead && p.Dead
@@ -86,16 +86,16 @@ func standing(stores []Store, i IsolationStatus) []Store {
 	return out
 }
 
-func (h history) isolationStatus(b measure.Board) IsolationStatus {
-	s := IsolationStatus{Last: h.isolation(b)}
+func (h history) isolationStatus() IsolationStatus {
+	s := IsolationStatus{Last: h.isolation()}
 	s.Energised, _ = h.energised()
 	s.Source, _ = h.sourceSeen()
 	if s.Last != nil && !s.Last.At.IsZero() && !s.Last.At.After(h.now) {
 		s.Age, s.Reconfirm = h.now.Sub(s.Last.At), lapsed(s.Last.At, h.now)
 	}
-	s.Missing = h.isolationMissing(b, s)
+	s.Missing = h.isolationMissing(s)
 	if len(s.Missing) == 0 {
-		s.Since = h.isolatedSince(b)
+		s.Since = h.isolatedSince()
 		s.Isolated = !s.Since.IsZero()
 	}
 	if !s.Isolated && len(s.Missing) == 0 {
@@ -105,7 +105,7 @@ func (h history) isolationStatus(b measure.Board) IsolationStatus {
 }
 
 // isolationMissing says what stands against the isolation, the most telling first.
-func (h history) isolationMissing(b measure.Board, s IsolationStatus) []Missing {
+func (h history) isolationMissing(s IsolationStatus) []Missing {
 	_, undated := h.energised()
 	_, seenUndated := h.sourceSeen()
 	switch {
@@ -116,8 +116,8 @@ func (h history) isolationMissing(b measure.Board, s IsolationStatus) []Missing 
 			"correct that time in the case file; then isolate again and find the source"}}
 	case s.Last == nil:
 		return []Missing{{0, "no isolation is stated", "cut the board off from every source, lock it, unplug the motor or lock its shaft, and enter it: " + isolationCommand}}
-	case len(isolationFaults(b, s.Last)) > 0:
-		return isolationFaults(b, s.Last)
+	case len(isolationFaults(h.boards, s.Last)) > 0:
+		return isolationFaults(h.boards, s.Last)
 	case !s.Last.At.After(s.Energised):
 		isolated, power := clocks(s.Last.At, s.Energised)
 		return []Missing{{0, "the board had energy put in at " + power + ", after it was isolated at " + isolated, "isolate it again and state it: " + isolationCommand}}

@@ -44,7 +44,7 @@ func (r Resistor) inWords(spread float64) string {
 		what = fmt.Sprintf("%d resistors of %s in series (%s), each good for %s", r.Series, format(r.EachOhm, quantity.Ohm), format(r.Ohm, quantity.Ohm), format(r.EachV, quantity.Volt))
 	}
 	return fmt.Sprintf("%s, rated %s or more in all, whose pulse rating stands %s at first and %s in all (capacitance %s)", what,
-		format(r.RatedW, quantity.Watt), format(r.PeakW, quantity.Watt), format(r.JoulesJ, quantity.Joule), atTop(spread))
+		format(r.RatedW, quantity.Watt), format(r.PeakW, quantity.Watt), format(max(r.JoulesJ, r.UnevenJ), quantity.Joule), atTop(spread))
 }
 
 func storeSteps(d StoreDischarge, r Resistor) []Step {
@@ -61,9 +61,25 @@ func storeSteps(d StoreDischarge, r Resistor) []Step {
 	first.Text += " AC above 5 V: a source is still connected; no resistor, isolate again and find it."
 	return []Step{first,
 		{s.Point, fmt.Sprintf("%s: put %s across it with insulated probes (%s at first) and watch the meter fall; if it does not, the resistor is open or not connected. %sLeave it on for %s.",
-			name, format(r.Ohm, quantity.Ohm), format(d.PeakCurrentA, quantity.Ampere), levelsText(d.Wait), seconds(d.FiveRC))},
+			name, format(r.Ohm, quantity.Ohm), format(d.peak(), quantity.Ampere), levelsText(d.latest()), seconds(d.FiveRC))},
 		{s.Point, name + ": measure DC and AC again. 5 V or less is dead; below 50 V it may be touched but takes no ohmmeter."},
 	}
+}
+
+// latest are the times down with everything at its worst: a half of a split bank with the whole voltage on it.
+func (d StoreDischarge) latest() Times {
+	if d.Uneven != nil {
+		return d.Uneven.Wait
+	}
+	return d.Wait
+}
+
+// peak is the current at the first moment, likewise.
+func (d StoreDischarge) peak() float64 {
+	if d.Uneven != nil {
+		return d.Uneven.PeakCurrentA
+	}
+	return d.PeakCurrentA
 }
 
 // levelsText gives the times to the levels that lie below the start: "Below 60 V after 5 s, 5 V after 11 s at the latest. ".

@@ -168,7 +168,7 @@ func fusedBank(b measure.Board, bus Store) []Store {
 
 // reservoir takes the energy of a recovery network. With its link open it is pumped up until something breaks down.
 func reservoir(b measure.Board, bus Store) []Store {
-	p := present(b, "bus.reservoir")
+	p := presentAny(b, "bus.reservoir", "snubber.reservoir")
 	kind, _ := b.Word("snubber.kind")
 	if kind != "recovery" && (p == silent || p == absent) {
 		return nil
@@ -229,15 +229,10 @@ func snubber(b measure.Board, bus Store) []Store {
 }
 
 func brake(b measure.Board, bus Store) []Store {
-	p := present(b, "stages.brake.fitted")
+	p := presentAny(b, "stages.brake.fitted", "stages.brake.resistor", "stages.brake.on_voltage")
 	for _, at := range b.Positions() {
 		if at.Name == "brake" {
 			p = fitted
-		}
-	}
-	for _, path := range []string{"stages.brake.resistor", "stages.brake.on_voltage"} {
-		if p == silent {
-			p = present(b, path)
 		}
 	}
 	if p == silent || p == absent {
@@ -276,10 +271,7 @@ func phases(b measure.Board, bus Store) []Store {
 // mains or on a shared bus is taken to have one of its own (judgement); one on a battery hangs on the bus itself.
 func auxiliary(b measure.Board, bus Store) []Store {
 	const path = "stages.auxiliary.primary_capacitance"
-	p := present(b, path)
-	if p == silent {
-		p = present(b, "stages.auxiliary.fitted")
-	}
+	p := presentAny(b, path, "stages.auxiliary.fitted")
 	supply, _ := b.Word("supply")
 	low := supply == "battery" || supply == "bench-supply"
 	if p == absent || (p == silent && low) {

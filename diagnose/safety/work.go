@@ -11,7 +11,7 @@ const (
 	ToolScope       Tool = "scope"             // hold point 4: the probe's reference
 	ToolInjection   Tool = "injection"         // hold point 4: current through a shorted bank
 	ToolInsulation  Tool = "insulation-tester" // hold point 3: only with the electronics disconnected
-	ToolDoublePulse Tool = "double-pulse"      // hold point 3: behind a shield
+	ToolDoublePulse Tool = "double-pulse"      // hold point 3: behind a shield; 4: read with a scope
 )
 
 // Tools lists every tool with conditions of its own.
@@ -22,6 +22,10 @@ type Work struct {
 	Need Need
 	Tool Tool
 }
+
+// Energises tells whether a reading of this work puts energy into the board. The insulation tester does: what it has
+// charged stays charged (judgement).
+func (w Work) Energises() bool { return w.Need.Powered() || w.Tool == ToolInsulation }
 
 // Evidence is what a rule base reads out of the observations of a case for the hold points. The zero Evidence proves
 // nothing: no powered step is given on it.
@@ -36,4 +40,30 @@ type Static struct {
 	Passed                bool
 	At                    time.Time // of the newest reading it rests on; zero without one
 	Because               string    // why it is not passed, in words; "" when it is
+}
+
+// NamedWork is one kind of work with its name in plain words.
+type NamedWork struct {
+	Work  Work
+	Title string // "ohms, diode, capacitance"
+}
+
+// Works lists every kind of work that has conditions, in the order of the job.
+func Works() []NamedWork {
+	return []NamedWork{
+		{Work{NeedQuestion, NoTool}, "asking and looking"},
+		{Work{NeedDeadCheck, NoTool}, "dead checks"},
+		{Work{NeedDischarge, NoTool}, "discharging"},
+		{Work{NeedDead, NoTool}, "ohms, diode, capacitance, ESR"},
+		{Work{NeedDead, ToolInjection}, "current through a shorted bank"},
+		{Work{NeedDead, ToolInsulation}, "insulation tester"},
+		{Work{NeedControlPower, NoTool}, "control power, bus disconnected"},
+		{Work{NeedControlPower, ToolScope}, "scope on control power"},
+		{Work{NeedLowBus, NoTool}, "current-limited bus"},
+		{Work{NeedLowBus, ToolScope}, "scope on a current-limited bus"},
+		{Work{NeedLowBus, ToolDoublePulse}, "double pulse on a current-limited bus"},
+		{Work{NeedFull, NoTool}, "full bus"},
+		{Work{NeedFull, ToolScope}, "scope on the full bus"},
+		{Work{NeedFull, ToolDoublePulse}, "double pulse on the full bus"},
+	}
 }

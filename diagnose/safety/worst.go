@@ -44,9 +44,20 @@ func classOf(b measure.Board) class {
 			return c
 		}
 	}
+	return unstatedClass()
+}
+
+// unstatedClass is taken for a board whose supply nobody knows: the highest of all classes.
+func unstatedClass() class {
 	c := classes[0]
 	c.because = "supply not stated: " + c.because
 	return c
+}
+
+// worstBus is the bus of a board of which neither bus nor supply is known.
+func worstBus() Figure {
+	c := unstatedClass()
+	return Figure{Value: c.highest, Unit: quantity.Volt, Basis: Assumed, Because: "bus voltage not stated: " + c.because}
 }
 
 // busVoltage is the highest voltage the bus may have stood at.

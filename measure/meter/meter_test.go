@@ -32,6 +32,28 @@ func TestGateBleedDividesInParallel(t *testing.T) {
 	}
 }
 
+// Read in circuit, a switch that blocks shows what lies across the rails: the meter's current goes on through the
+// freewheel diode (topology; parallel resistors).
+func TestABlockingSwitchReadsWhatLiesAcrossTheRails(t *testing.T) {
+	for _, c := range []struct {
+		keys string
+		at   Place
+		want float64
+	}{
+		{"", Place{Parallel: 1}, 20e6},
+		{"  bus: {bleeder: 100 kΩ}\n", Place{Parallel: 3}, 99502.5},
+		{"  bus: {bleeder: 100 kΩ}\n", Place{Parallel: 3, Lifted: true}, 20e6},
+		{"  bus: {bleeder: 100 kΩ}\n  freewheel: {fitted: no}\n", Place{Parallel: 1}, 20e6},
+		{"  bus: {halves: yes, balancing: 47 kΩ}\n", Place{Parallel: 1}, 93560.4},
+		{"  bus: {bleeder: none}\n", Place{Parallel: 1}, 20e6},
+	} {
+		q, ok, err := Expected(board(t, c.keys), "expected.blocking", c.at)
+		if err != nil || !ok || q.Value < c.want*0.99999 || q.Value > c.want*1.00001 {
+			t.Errorf("%q %+v: %v %v %v, want %g Ω", c.keys, c.at, q, ok, err, c.want)
+		}
+	}
+}
+
 func TestExpectedSaysWhatItCannotTell(t *testing.T) {
 	if _, ok, err := Expected(board(t, ""), "expected.gate_bleed", Place{Parallel: 2}); ok || err != nil {
 		t.Errorf("a bleed that is not stated: %v %v", ok, err)

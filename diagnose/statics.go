@@ -1,0 +1,320 @@
+package diagnose
+
+import (
+	"fmt"
+	"strings"
+	"time"
+
+	"drivemend/diagnose/safety"
+	"drivemend/knowledge"
+	"drivemend/measure"
+	"drivemend/measure/meter"
+	"drivemend/measure/quantity"
+)
+
+// surePass is the share the passing results must have of a reading, one of them being the likeliest, for a static test
+// to count as passed: as likely as not is not enough to put power on. Judgement.
+const surePass = 0.5
+
+// standing is how a reading of a static test stands, the worst last.
+type standing int
+
+const (
+	passes    standing = iota
+	unsettled          // put off or skipped
+	unclear            // what it reads cannot be told
+	outside            // taken outside its hold point
+	fails              // reads what does not pass
+)
+
+// verdict is how one reading stands, and in words why it does not pass.
+type verdict struct {
+	how     standing
+	because string
+}
+
+// openStatic is a static test that still stands between a position and power.
+type openStatic struct {
+	test     *knowledge.Test
+	position string
+	parts    []string // the parts that are open
+	worst    verdict  // of what was read; it passes when a part was only not read
+}
+
+// staticPlace is what a static reading was taken of: a part, a bank as a whole, or the board as a whole.
+type staticPlace struct {
+	test       string
+	bank, part int // -1: as a whole
+}
+
+// statics judges the static tests of a board on the readings taken since its rebuild.
+type statics struct {
+	c         *measure.Case
+	board     measure.Board
+	held      *held
+	rebuilt   bool
+	tests     []*knowledge.Test
+	positions []measure.Position
+	newest    map[staticPlace]int // index of the newest observation at each place
+	verdicts  map[int]verdict     // of each observation that was asked about
+}
+
+func newStatics(base *knowledge.Base, c *measure.Case, powered []time.Time) *statics {
+	s := &statics{c: c, board: c.Board, newest: map[staticPlace]int{}, verdicts: map[int]verdict{}}
+	if s.rebuilt = c.Rebuild != nil && !c.Rebuild.Done.IsZero(); s.rebuilt {
+		s.board = c.Rebuild.Board
+	}
+	s.positions = s.board.Positions()
+	sight := &view{base: base, board: s.board}
+	for i := range base.Tests {
+		if t := &base.Tests[i]; len(t.Static) > 0 && t.StaticFor(sight.lookup) && sight.applies(t.Applies) && sight.hasEvent(t.Observes) {
+			s.tests = append(s.tests, t)
+		}
+	}
+	if s.rebuilt {
+		s.gather()
+		s.held = newHeld(c, powered)
+		for place, i := range s.newest {
+			s.held.note(WorkOf(base.Test(place.test)), c.Observations[i].At)
+		}
+	}
+	return s
+}
+
+// hasEvent tells whether an event can be on the board.
+func (v *view) hasEvent(id string) bool {
+	e := v.base.Event(id)
+	return e != nil && v.applies(e.Applies)
+}
+
+// gather notes the newest reading at each place. A time decides, of equal ones the later entry.
+func (s *statics) gather() {
+	tests, banks, parts := map[string]*knowledge.Test{}, map[string]int{}, map[string][2]int{}
+	for _, t := range s.tests {
+		tests[t.ID] = t
+	}
+	for b, p := range s.positions {
+		banks[p.Name] = b
+		for i, name := range p.Parts {
+			parts[name] = [2]int{b, i}
+		}
+	}
+	for i := range s.c.Observations {
+		ob := &s.c.Observations[i]
+		t := tests[ob.Test]
+		if t == nil || !s.c.After(*ob) {
+			continue
+		}
+		place, ok := s.place(t, ob, banks, parts)
+		if j, seen := s.newest[place]; ok && (!seen || !ob.At.Before(s.c.Observations[j].At)) {
+			s.newest[place] = i
+		}
+	}
+}
+
+// place gives what a reading was taken of. Leads on a part in circuit read its whole bank. A reading that names no
+// place is of the only position, or of the board; a part that the board does not have, a lifted one that is not named,
+// and a position nobody named on a board with several say nothing.
+func (s *statics) place(t *knowledge.Test, ob *measure.Observation, banks map[string]int, parts map[string][2]int) (staticPlace, bool) {
+	whole := staticPlace{t.ID, -1, -1}
+	if ob.Part != "" {
+		at, known := parts[ob.Part]
+		if t.Per == "part" && (!atTerminals(t) || ob.State == "lifted") {
+			return staticPlace{t.ID, at[0], at[1]}, known
+		}
+		return staticPlace{t.ID, at[0], -1}, known
+	}
+	b, known := banks[ob.Position]
+	switch {
+	case ob.Position != "" && !known:
+		return whole, false
+	case ob.Position == "" && len(s.positions) > 1:
+		return whole, t.Per == ""
+	}
+	unnamed := t.Per == "part" && ob.State == "lifted" && len(s.positions[b].Parts) > 1
+	return staticPlace{t.ID, b, -1}, !unnamed
+}
+
+// judge gives every static test of every position, position by position, and those that are open.
+func (s *statics) judge() ([]safety.Static, []openStatic) {
+	all := make([]safety.Static, 0, len(s.positions)*len(s.tests))
+	var open []openStatic
+	for b := range s.positions {
+		for _, t := range s.tests {
+			st, left := s.one(b, t)
+			all = append(all, st)
+			if !st.Passed {
+				open = append(open, left)
+			}
+		}
+	}
+	return all, open
+}
+
+// one judges a static test of one position: every part has a newest reading that passes, and so has the bank as a whole
+// if it was read. A short beside sound parts is a short all the same.
+func (s *statics) one(b int, t *knowledge.Test) (safety.Static, openStatic) {
+	p := &s.positions[b]
+	st := safety.Static{Test: t.ID, Title: t.Title, Position: p.Name}
+	left := openStatic{test: t, position: p.Name}
+	if !s.rebuilt {
+		st.Because, left.parts = "no rebuild is entered as done", p.Parts
+		return st, left
+	}
+	var wrong, missing []string
+	bank := s.newer(s.at(t, -1, -1), s.at(t, b, -1))
+	read := func(i int) bool {
+		if ob := &s.c.Observations[i]; ob.At.After(st.At) {
+			st.At = ob.At
+		}
+		v := s.verdict(t, p, i)
+		if v.how != passes {
+			wrong = appendNew(wrong, v.because)
+		}
+		if v.how > left.worst.how {
+			left.worst = v
+		}
+		return v.how == passes
+	}
+	whole := bank >= 0 && !read(bank)
+	for i := range p.Parts {
+		switch own := s.newer(bank, s.part(t, b, i)); {
+		case own >= 0 && own != bank && !read(own):
+			left.parts = append(left.parts, p.Parts[i])
+		case own < 0:
+			missing, left.parts = append(missing, p.Parts[i]), append(left.parts, p.Parts[i])
+		}
+	}
+	if whole {
+		left.parts = p.Parts
+	}
+	switch {
+	case len(missing) == len(p.Parts):
+		wrong = append(wrong, "not read since the rebuild of "+s.c.Rebuild.Done.Format("15:04"))
+	case len(missing) > 0:
+		wrong = append(wrong, named(missing)+" not read")
+	}
+	st.Because = strings.Join(wrong, "; ")
+	st.Passed = st.Because == ""
+	return st, left
+}
+
+// named lists parts, the first few of many.
+func named(parts []string) string {
+	const most = 6
+	if len(parts) <= most {
+		return strings.Join(parts, ", ")
+	}
+	return fmt.Sprintf("%s and %d more", strings.Join(parts[:most], ", "), len(parts)-most)
+}
+
+func appendNew(list []string, text string) []string {
+	for _, known := range list {
+		if known == text {
+			return list
+		}
+	}
+	return append(list[:len(list):len(list)], text)
+}
+
+// at gives the newest observation at a place, -1 without one.
+func (s *statics) at(t *knowledge.Test, bank, part int) int {
+	if i, ok := s.newest[staticPlace{t.ID, bank, part}]; ok {
+		return i
+	}
+	return -1
+}
+
+// part is at for one part; a test of a whole position has no readings of parts.
+func (s *statics) part(t *knowledge.Test, bank, part int) int {
+	if t.Per != "part" {
+		return -1
+	}
+	return s.at(t, bank, part)
+}
+
+// newer gives the later of two observations; -1 stands for none.
+func (s *statics) newer(i, j int) int {
+	if i < 0 || j < 0 {
+		return max(i, j)
+	}
+	a, b := s.c.Observations[i].At, s.c.Observations[j].At
+	if a.After(b) || a.Equal(b) && i > j {
+		return i
+	}
+	return j
+}
+
+// verdict judges an observation; each is judged once.
+func (s *statics) verdict(t *knowledge.Test, p *measure.Position, i int) verdict {
+	v, known := s.verdicts[i]
+	if !known {
+		ob := s.c.Observations[i]
+		if v = s.reads(t, p, ob); v.how != passes {
+			v.because = strings.TrimSpace(ob.Part + " " + v.because)
+		}
+		s.verdicts[i] = v
+	}
+	return v
+}
+
+// reads says what speaks against a reading.
+func (s *statics) reads(t *knowledge.Test, p *measure.Position, ob measure.Observation) verdict {
+	switch {
+	case ob.Answer == "later":
+		return verdict{unsettled, "put off"}
+	case ob.Answer != "":
+		return verdict{unsettled, ob.Answer}
+	case ob.Seen != "" && ob.Seen != "at-bench":
+		return verdict{unclear, "known " + ob.Seen + " only, not read at the bench"}
+	}
+	result, why := s.result(t, p, ob)
+	switch {
+	case why != "":
+		return verdict{unclear, why}
+	case !t.Passes(result):
+		return verdict{fails, "reads " + result}
+	}
+	if s.held.outside(WorkOf(t), ob) {
+		return verdict{outside, "read outside its hold point"}
+	}
+	return verdict{}
+}
+
+// sure is the share of the likeliest result, of a passing one together with the others that pass.
+func sure(t *knowledge.Test, shares []Share) float64 {
+	if !t.Passes(shares[0].Result) {
+		return shares[0].P
+	}
+	sum := 0.0
+	for _, s := range shares {
+		if t.Passes(s.Result) {
+			sum += s.P
+		}
+	}
+	return sum
+}
+
+// result gives what a reading shows, or why it cannot be told: a named result, or the likeliest one of a number.
+func (s *statics) result(t *knowledge.Test, p *measure.Position, ob measure.Observation) (result, why string) {
+	switch {
+	case ob.Reading == nil:
+		return ob.Result, ""
+	case ob.Reading.Kind == quantity.Word:
+		return ob.Reading.Word, ""
+	}
+	at := meter.Place{Parallel: len(p.Parts), Lifted: ob.State == "lifted"}
+	if t.Per != "part" || at.Lifted || !atTerminals(t) {
+		at.Parallel = 1
+	}
+	shares, err := readAs(t, ob, expectedOn(s.board, at))
+	switch {
+	case err != nil:
+		return "", "cannot be judged: " + err.Error()
+	case shares[0].Result == "misread":
+		return "", "reads like a slip of the range or a lead"
+	case !(sure(t, shares) > surePass):
+		return "", fmt.Sprintf("may read %s, %.0f %% sure only", shares[0].Result, 100*shares[0].P)
+	}
+	return shares[0].Result, ""
+}
