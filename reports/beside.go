@@ -15,11 +15,12 @@ type Beside struct {
 	Ranking *diagnose.Ranking // for the leading cause beside a repair
 	Safety  *safety.Status    // for a dead board of which no test is left; at the moment of the suggestion
 	Outside []Outside         // for the mark of readings taken outside their hold points
+	Case    *measure.Case     // for the conditions stated before a step, and for readings that are lower bounds
 }
 
 // beside is what a report knows beside each of its results.
 func (r Report) beside() Beside {
-	return Beside{Ranking: r.Ranking, Safety: &r.Safety, Outside: r.Outside}
+	return Beside{Ranking: r.Ranking, Safety: &r.Safety, Outside: r.Outside, Case: r.Case}
 }
 
 // besides gives the one that was passed along, if any.
@@ -28,6 +29,14 @@ func besides(given []Beside) Beside {
 		return Beside{}
 	}
 	return given[0]
+}
+
+// of gives what is known beside a result, with the case it is of.
+func (b Beside) of(c *measure.Case) Beside {
+	if b.Case == nil {
+		b.Case = c
+	}
+	return b
 }
 
 // outside tells whether a finding's reading was taken outside its hold point.
@@ -111,12 +120,35 @@ func (b Beside) stateOfKnowledge() string {
 	return text
 }
 
-// heldDays is how many days a repair must have run before it counts as held.
-const heldDays = 30
-
-// heldOf judges the statement that a repair held by the dates on record: from the day the rebuild was done to the day
-// the case was closed, or to the day of asking where that is earlier or no other is stated. at may be zero.
+// heldOf judges the statement that a repair held by the follow-up on record, as it stands at a moment: it has to be
+// done, 30 days after the hand-over or later. A zero moment is the last one on record. A case without either step, as
+// older ones are, goes by its dates.
 func heldOf(c *measure.Case, at time.Time) (proved bool, record string) {
+	if at.IsZero() {
+		at = lastStep(c)
+	}
+	steps := safety.Record(c, at, safety.Evidence{})
+	f := followUpOf(steps)
+	switch {
+	case f == nil, f.Last == nil && f.Due.IsZero():
+		return heldByDates(c, at)
+	case f.Last != nil && f.Last.Result == "failed":
+		return false, "the follow-up of " + day(f.Last.At) + " says that it failed"
+	case f.Last != nil && f.Settled && f.Last.Result == "done":
+		return true, "followed up " + day(f.Last.At)
+	case f.Last != nil && f.Settled:
+		return false, "the follow-up of " + day(f.Last.At) + " was " + stepName(f.Last.Result)
+	case f.Due.IsZero():
+		return false, "the record does not say when the machine was handed over"
+	case f.Last != nil && f.Last.Result == "done":
+		return false, "the follow-up of " + day(f.Last.At) + " came before the 30 days were over, on " + day(f.Due)
+	}
+	return false, "no follow-up is on record; it is due " + day(f.Due)
+}
+
+// heldByDates judges a case whose record has neither hand-over nor follow-up: from the day the rebuild was done to the
+// day the case was closed, or to the day of asking where that is earlier or no other is stated.
+func heldByDates(c *measure.Case, at time.Time) (proved bool, record string) {
 	if c.Rebuild == nil || c.Rebuild.Done.IsZero() {
 		return false, "the record does not say when the rebuild was done"
 	}
@@ -134,12 +166,36 @@ func heldOf(c *measure.Case, at time.Time) (proved bool, record string) {
 	if days < 0 {
 		return false, "by the record the rebuild was done only after that day"
 	}
-	return days >= heldDays, "the record shows " + count(days, "day", "days")
+	return days >= heldDays, "the record shows " + count(days, "day", "days") + " from rebuild to closing, and no follow-up"
 }
+
+// heldDays is how many days a repair must have run before it counts as held.
+const heldDays = int(safety.FollowUpAfter / (24 * time.Hour))
 
 func dateOf(t time.Time) time.Time {
 	y, m, d := t.Date()
 	return time.Date(y, m, d, 0, 0, 0, 0, time.UTC)
+}
+
+// followUpOf gives the step that asks whether a repair held; nil where the record has none.
+func followUpOf(record []safety.RecordStatus) *safety.RecordStatus {
+	for i := range record {
+		if record[i].Step.ID == measure.StepFollowedUp {
+			return &record[i]
+		}
+	}
+	return nil
+}
+
+// lastStep is the latest moment that a step of the record carries.
+func lastStep(c *measure.Case) time.Time {
+	var last time.Time
+	for _, s := range c.Steps {
+		if s.At.After(last) {
+			last = s.At
+		}
+	}
+	return last
 }
 
 // confirmedWords is how the outcome was confirmed; a repair held is only said where the record bears it out.

@@ -54,10 +54,10 @@ func chain(path string) (Report, error) {
 		return r, err
 	}
 	evidence := diagnose.EvidenceOf(base, c)
-	r.Safety = safety.StatusOf(c, testTime, evidence)
+	r.Safety, r.Record = safety.StatusOf(c, testTime, evidence), safety.Record(c, testTime, evidence)
 	for i, o := range c.Observations {
 		if t := base.Test(o.Test); t != nil {
-			if out, missing := safety.OutsideHoldPoint(c, o, diagnose.WorkOf(t), evidence); out {
+			if out, missing := safety.OutsideHoldPoint(c, o, diagnose.WorkOf(t), diagnose.EvidenceOf(base, safety.AsOf(c, o.At))); out {
 				r.Outside = append(r.Outside, Outside{i, missing})
 			}
 		}

@@ -23,6 +23,8 @@ func frozen(t *testing.T) Report {
 	if err != nil {
 		t.Fatal(err)
 	}
+	file.Case.Steps = append(file.Case.Steps, measure.StepEntry{Step: measure.StepHandedOver, Result: "done", At: reportTime.AddDate(0, 0, -33)},
+		measure.StepEntry{Step: measure.StepFollowedUp, Result: "done", At: reportTime.AddDate(0, 0, -1)})
 	base := frozenBase()
 	return Report{Case: file.Case, Base: base, At: reportTime, Ranking: frozenRanking(base), Next: frozenNext(base), Margin: frozenMargin(),
 		Discharge: frozenPlan(), Safety: frozenStatus(), Outside: []Outside{{1, []safety.Missing{{Point: 2, Text: "the check of 10:00 is 12 min old: it lives 10 min", Unlock: "check again"}}}}}
@@ -79,7 +81,7 @@ func frozenRanking(b *knowledge.Base) *diagnose.Ranking {
 
 func frozenNext(b *knowledge.Base) *diagnose.Suggestion {
 	n := &diagnose.Suggestion{Case: "orchard-pump-3", At: testTime, Price: 210.75, Repair: []string{"fit-clamp"}, Tests: []diagnose.Candidate{
-		{Test: b.Test("fan-turns"), Value: 60.2, Bits: 0.91, Minutes: 4, BlockedBy: []string{"hold points 3 and 4 are not kept by this version"}, UnlockedBy: []string{"nothing in this version"}},
+		{Test: b.Test("fan-turns"), Value: 60.2, Bits: 0.91, Minutes: 4, BlockedBy: []string{"the repair is not stated as finished"}, UnlockedBy: []string{"finish the repair and enter rebuild.done"}},
 		{Test: b.Test("power-terminals-resistance"), Part: "Q1", Lifted: true, Value: 41.3, Bits: 0.83, Minutes: 2, Allowed: true},
 		{Test: b.Test("power-terminals-resistance"), Position: "low", Value: 12.6, Bits: 0.2, Minutes: 2, Allowed: true},
 		{Test: b.Test("failure-moment"), Value: -2, Bits: 0.01, Minutes: 3, Allowed: true}}}
@@ -140,7 +142,7 @@ func frozenPlan() *safety.Plan {
 func frozenStatus() safety.Status {
 	check := &measure.DeadCheck{Point: "bus", DC: quantity.Of(0.4, quantity.Volt), AC: quantity.Of(0, quantity.Volt), MeterProved: true, At: testTime.Add(-12 * time.Minute)}
 	old := []safety.Missing{{Point: 2, Text: "at bus: the check of 09:01 is 12 min old: it lives 10 min", Unlock: "check again"}}
-	return safety.Status{At: testTime, Isolation: safety.IsolationStatus{Isolated: true, Since: testTime.Add(-time.Hour), Last: &measure.Isolation{Locked: true, Motor: "unplugged", OtherSources: "none"}},
+	return safety.Status{At: testTime, Isolation: safety.IsolationStatus{Isolated: true, Since: testTime.Add(-time.Hour), Age: time.Hour, Last: &measure.Isolation{At: testTime.Add(-time.Hour), Locked: true, Motor: "unplugged", OtherSources: "none"}},
 		Link:     safety.LinkStatus{Removed: testTime.Add(-15 * time.Minute)},
 		Points:   []safety.PointStatus{{Store: frozenStore(), Last: check, Age: 12 * time.Minute, ExpiresAt: testTime.Add(-2 * time.Minute), Missing: old}},
 		Unplaced: []string{"clamp"}}

@@ -24,7 +24,7 @@ var terminal = []output{
 	{"why", func(w io.Writer, r Report, s Style) error { return Why(w, r.Case, r.Ranking, s, r.beside()) }},
 	{"next", func(w io.Writer, r Report, s Style) error { return Next(w, r.Base, r.Next, r.Discharge, s, r.beside()) }},
 	{"discharge", func(w io.Writer, r Report, s Style) error { return Discharge(w, r.Discharge, s) }},
-	{"status", func(w io.Writer, r Report, s Style) error { return Status(w, r.Case, r.Safety, s) }},
+	{"status", func(w io.Writer, r Report, s Style) error { return Status(w, statusOfReport(r), s) }},
 	{"margin", func(w io.Writer, r Report, s Style) error { return Margin(w, r.Margin, s) }},
 	{"withheld", func(w io.Writer, r Report, s Style) error {
 		return Withheld(w, "the meter step", []safety.Missing{{Point: 0, Text: "no isolation is stated", Unlock: "isolate it and state it"}}, r.At, s)
@@ -53,7 +53,7 @@ var pages = []output{
 	{"next.json", func(w io.Writer, r Report, _ Style) error { return NextJSON(w, r.Next, r.beside()) }},
 	{"margin.json", func(w io.Writer, r Report, _ Style) error { return MarginJSON(w, r.Margin) }},
 	{"discharge.json", func(w io.Writer, r Report, _ Style) error { return DischargeJSON(w, r.Discharge) }},
-	{"status.json", func(w io.Writer, r Report, _ Style) error { return StatusJSON(w, r.Case, r.Safety) }},
+	{"status.json", func(w io.Writer, r Report, _ Style) error { return StatusJSON(w, statusOfReport(r)) }},
 	{"rules.json", func(w io.Writer, r Report, _ Style) error { return RulesJSON(w, r.Base, "") }},
 	{"keys.json", func(w io.Writer, r Report, _ Style) error { return KeysJSON(w, frozenKeys()) }},
 	{"shelf.json", func(w io.Writer, r Report, _ Style) error { return ShelfJSON(w, frozenShelf(r)) }},
@@ -76,6 +76,11 @@ func frozenShelf(r Report) []ShelfCase {
 
 func frozenDemo(r Report) DemoSummary {
 	return DemoSummary{Folder: "drivemend-demo", Case: r.Case, Ranking: r.Ranking, Margin: r.Margin, Outside: r.Outside, Report: "drivemend-demo/report.html", Command: "drivemend next drivemend-demo/case.yaml"}
+}
+
+// statusOfReport is the status page of what a report holds.
+func statusOfReport(r Report) StatusPage {
+	return StatusPage{Case: r.Case, At: r.Safety.At, Safety: r.Safety, Record: r.Record, Outside: r.Outside, Stated: 24, Assumed: 1, Needs: r.Margin.Needs}
 }
 
 func rendered(t *testing.T, o output, r Report, s Style) string {

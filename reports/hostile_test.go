@@ -1,12 +1,15 @@
 package reports
 
 import (
+	"io"
 	"regexp"
 	"strings"
 	"testing"
 	"unicode"
 
 	"drivemend/diagnose"
+	"drivemend/diagnose/safety"
+	"drivemend/measure"
 	"drivemend/measure/quantity"
 )
 
@@ -32,7 +35,9 @@ func hostile(t *testing.T) Report {
 	}
 	c.Observations[1].Reading = &quantity.Reading{Kind: quantity.Word, Text: all}
 	c.Source.Title = all
+	hostileRecord(&c, all)
 	r.Case = &c
+	r.Record = frozenRecord(&c)
 	r.Base = frozenBase()
 	for i := range r.Base.Causes {
 		r.Base.Causes[i].Title = all
@@ -47,9 +52,59 @@ func hostile(t *testing.T) Report {
 	return r
 }
 
+// hostileRecord fills every text of the record that comes from outside.
+func hostileRecord(c *measure.Case, all string) {
+	c.Repairs = []measure.Repair{{Part: all, Position: all, By: all, Work: all, Was: all, Fitted: all, Because: all, Note: all}}
+	c.FaultLog = []measure.FaultCode{{Code: all, Text: all, At: all, Note: all, Count: 3}}
+	c.Settings = []measure.Setting{{Name: all, Value: all, Note: all}}
+	c.Photographs = []measure.Photograph{{Path: all, Shows: all, Part: all, SHA256: all}, {Path: "javascript:alert(1)"}, {Path: "../../x\" onerror=\"y"}}
+	c.Captures = []measure.Capture{{Name: all, SHA256: all, Kind: all, Position: all, Edge: all, Note: all, Figures: map[string]quantity.Quantity{all: {Unit: quantity.Volt, Text: all}}}}
+	c.Steps = []measure.StepEntry{{Step: measure.StepPhotographed, Result: all, By: all, Note: all, At: testTime}, {Step: measure.StepMotorTested, Result: "failed", By: all, Note: all, At: testTime}}
+	c.Safety.Before = []measure.Before{{Step: all, Motor: all, BrakeResistor: all, Bank: all, Probe: all, ClipOn: all, Supply: all, Note: all}, {Step: measure.BeforeScope, Probe: "earth-clip", ClipOn: all, Supply: all, At: testTime},
+		{Step: measure.BeforeLowBus, Note: all, Fuse: quantity.Quantity{Unit: quantity.Ampere, Text: all}, At: testTime}}
+}
+
+// hostileBench are the outputs of the bench that the record and the conditions reach, each on hostile text.
+func hostileBench(t *testing.T) []output {
+	all := strings.Join(evil, " ")
+	n, _ := underPower(t)
+	n.Tests[0].Again, n.Tests[1].Again = all, all
+	n.Tests[1].BlockedBy, n.Tests[1].UnlockedBy = []string{all}, []string{all}
+	page := halfway(t)
+	page.Open = []OpenTest{{all, all, all}}
+	page.Works[1].Title, page.Works[2].Decision.Missing = all, []safety.Missing{{Point: 1, Text: all, Unlock: all}}
+	page.Safety.Alarms, page.Safety.Unplaced = []string{all}, []string{all}
+	page.Needs[0].Key = all
+	return []output{
+		{"status", func(w io.Writer, r Report, s Style) error {
+			page.Case, page.Record = r.Case, r.Record
+			return Status(w, page, s)
+		}},
+		{"next", func(w io.Writer, r Report, s Style) error { return Next(w, r.Base, n, r.Discharge, s, r.beside()) }},
+		{"status.json", func(w io.Writer, r Report, _ Style) error {
+			page.Case, page.Record = r.Case, r.Record
+			return StatusJSON(w, page)
+		}},
+		{"next.json", func(w io.Writer, r Report, _ Style) error { return NextJSON(w, n, r.beside()) }},
+	}
+}
+
+func TestHostileTextFitsTheBench(t *testing.T) {
+	r := hostile(t)
+	for _, o := range hostileBench(t)[:2] {
+		for _, width := range []int{40, 80, 132} {
+			for i, line := range strings.Split(rendered(t, o, r, Style{Width: width}), "\n") {
+				if n := columns(line); n > width {
+					t.Errorf("%s, line %d takes %d of %d columns", o.name, i+1, n, width)
+				}
+			}
+		}
+	}
+}
+
 func TestHostileTextIsHarmless(t *testing.T) {
 	r := hostile(t)
-	for _, o := range append(append([]output(nil), terminal...), pages...) {
+	for _, o := range append(append(hostileBench(t), terminal...), pages...) {
 		text := rendered(t, o, r, Style{})
 		for _, c := range text {
 			if c != '\n' && unicode.IsControl(c) {
@@ -97,11 +152,14 @@ func TestMarkdownKeepsItsTables(t *testing.T) {
 func TestPrivateLeavesOutWhoAndWhich(t *testing.T) {
 	r := frozen(t)
 	r.Case.Owner, r.Case.Technician, r.Case.Serial, r.Case.Firmware = "OWNER-X", "TECH-X", "SERIAL-X", "FIRM-X"
+	r.Case.Repairs = []measure.Repair{{Part: "Q2", By: "REPAIRER-X"}}
+	r.Case.Steps = append(r.Case.Steps, measure.StepEntry{Step: measure.StepPhotographed, Result: "done", By: "WITNESS-X", At: testTime})
+	r.Record = frozenRecord(r.Case)
 	for _, private := range []bool{false, true} {
 		r.Private = private
 		for _, o := range pages[8:11] {
 			text := rendered(t, o, r, Style{})
-			for _, word := range []string{"OWNER-X", "TECH-X", "SERIAL-X", "FIRM-X"} {
+			for _, word := range []string{"OWNER-X", "TECH-X", "SERIAL-X", "FIRM-X", "REPAIRER-X", "WITNESS-X"} {
 				if strings.Contains(text, word) == private {
 					t.Errorf("%s, private %v: %s", o.name, private, word)
 				}

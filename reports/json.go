@@ -182,7 +182,7 @@ func rankOf(r *diagnose.Ranking, needs []stress.Need, known Beside) *rankJSON {
 		out.Findings = append(out.Findings, findingOf(f, known))
 	}
 	for _, f := range r.Unexplained {
-		out.Unexplained = append(out.Unexplained, unexplainedJSON{testID(f), f.Shown, num(f.Alone)})
+		out.Unexplained = append(out.Unexplained, unexplainedJSON{testID(f), known.shown(f), num(f.Alone)})
 	}
 	for _, u := range r.Unbound {
 		out.Unbound = append(out.Unbound, unboundJSON(u))
@@ -191,7 +191,7 @@ func rankOf(r *diagnose.Ranking, needs []stress.Need, known Beside) *rankJSON {
 }
 
 func findingOf(f diagnose.Finding, known Beside) findingJSON {
-	return findingJSON{Test: testID(f), Result: f.Shown, Part: orNull(f.Part), Position: orNull(f.Position), Source: f.Source,
+	return findingJSON{Test: testID(f), Result: known.shown(f), Part: orNull(f.Part), Position: orNull(f.Position), Source: f.Source,
 		Seen: orNull(f.Seen), DB: num(f.Decibans), AloneDB: num(f.Alone), Assumed: list(f.Assumed), Outside: known.outside(f)}
 }
 
@@ -237,7 +237,11 @@ type testJSON struct {
 	Bits       num      `json:"bits"`
 	Minutes    num      `json:"minutes"`
 	Needs      string   `json:"needs"`
+	Tool       *string  `json:"tool"`    // with conditions of its own, beside the state of the board
+	Carries    []string `json:"carries"` // what its instruction always says
 	Must       bool     `json:"must"`
+	Serves     bool     `json:"serves"` // the hold points after the rebuild, not the ranking
+	Again      *string  `json:"again"`  // a static test that was read and did not pass: what to do
 	Allowed    bool     `json:"allowed"`
 	BlockedBy  []string `json:"blocked_by"`
 	UnlockedBy []string `json:"unlocked_by"`
@@ -273,14 +277,19 @@ func nextOf(n *diagnose.Suggestion, known Beside) *nextJSON {
 		out.Repairs, out.Held = []string{}, &before
 	}
 	for _, c := range n.Tests {
-		out.Tests = append(out.Tests, testJSON{ID: c.Test.ID, Title: c.Test.Title, Part: orNull(c.Part), Position: orNull(c.Position), Lifted: c.Lifted,
-			ValueMin: num(c.Value), Bits: num(c.Bits), Minutes: num(c.Minutes), Needs: c.Test.Needs, Must: c.Test.Must,
-			Allowed: c.Allowed, BlockedBy: list(c.BlockedBy), UnlockedBy: list(c.UnlockedBy)})
+		out.Tests = append(out.Tests, testOf(c))
 	}
 	if n.Stop != "" {
 		out.Stop = &stopJSON{n.Stop}
 	}
 	return out
+}
+
+func testOf(c diagnose.Candidate) testJSON {
+	w := diagnose.WorkOf(c.Test)
+	return testJSON{ID: c.Test.ID, Title: c.Test.Title, Part: orNull(c.Part), Position: orNull(c.Position), Lifted: c.Lifted,
+		ValueMin: num(c.Value), Bits: num(c.Bits), Minutes: num(c.Minutes), Needs: c.Test.Needs, Tool: orNull(string(w.Tool)), Carries: list(carriesOf(w)),
+		Must: c.Test.Must, Serves: c.Serves, Again: orNull(c.Again), Allowed: c.Allowed, BlockedBy: list(c.BlockedBy), UnlockedBy: list(c.UnlockedBy)}
 }
 
 type ruleJSON struct {

@@ -3,6 +3,7 @@ package reports
 import (
 	"io"
 
+	"drivemend/diagnose"
 	"drivemend/measure"
 )
 
@@ -46,6 +47,7 @@ type observationJSON struct {
 	At         *string `json:"at"`
 	Shown      string  `json:"shown"`
 	Seen       *string `json:"seen"`
+	LowerBound bool    `json:"lower_bound"` // a camera reading of a surface that reads too cold
 	Superseded bool    `json:"superseded"`
 }
 
@@ -76,6 +78,7 @@ type reportJSON struct {
 	Observations []observationJSON `json:"observations"`
 	Outside      []outsideJSON     `json:"outside"`
 	Outcome      *outcomeJSON      `json:"outcome"`
+	jobJSON
 }
 
 type changeJSON struct {
@@ -93,6 +96,7 @@ func ReportJSON(w io.Writer, r Report) error {
 	c, known := r.Case, r.beside()
 	out := reportJSON{Case: c.ID, At: instant(r.At), Private: r.Private, Story: orNull(c.Story), Finding: r.findingState(), Rank: rankOf(r.Ranking, nil, known), Next: nextOf(r.Next, known),
 		Margin: marginOf(r.Margin), Discharge: dischargeOf(r.Discharge), Safety: statusOf(c, r.Safety), Outcome: outcomeOf(c.Outcome), Observations: []observationJSON{}, Outside: []outsideJSON{}}
+	out.jobJSON = jobOf(r)
 	if !r.Private {
 		out.Owner, out.Technician, out.Serial, out.Firmware = orNull(c.Owner), orNull(c.Technician), orNull(c.Serial), orNull(c.Firmware)
 	}
@@ -117,11 +121,7 @@ func ReportJSON(w io.Writer, r Report) error {
 
 func (out *reportJSON) addObservations(r Report) {
 	for i, o := range r.Case.Observations {
-		out.Observations = append(out.Observations, observationJSON{o.Test, orNull(o.Part), orNull(o.Position), instant(o.At), shown(o), orNull(o.Seen), r.Case.Superseded(i)})
+		out.Observations = append(out.Observations, observationJSON{o.Test, orNull(o.Part), orNull(o.Position), instant(o.At), r.shown(o), orNull(o.Seen), diagnose.LowerBound(r.test(o.Test), o), r.Case.Superseded(i)})
 	}
-	for _, x := range r.Outside {
-		if x.Observation >= 0 && x.Observation < len(r.Case.Observations) {
-			out.Outside = append(out.Outside, outsideJSON{x.Observation, r.Case.Observations[x.Observation].Test, missingOf(x.Missing)})
-		}
-	}
+	out.Outside = outsideOf(r.Case, r.Outside)
 }

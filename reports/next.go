@@ -13,17 +13,20 @@ import (
 	"drivemend/measure/quantity"
 )
 
-const shownOthers = 5 // tests listed after the one to do now
+const (
+	shownOthers  = 5 // tests listed after the one to do now
+	shownReasons = 5 // things a locked group waits for; they are cleared in this order
+)
 
 // Next prints the test to do now with what its results mean, the ones after it, and what is locked with what unlocks
 // it. The board's joules stand beside the cautions; plan may be nil, and then they are missing. A repair is named only
 // while nothing is withheld or put off and the board is granted dead.
 func Next(w io.Writer, base *knowledge.Base, n *diagnose.Suggestion, plan *safety.Plan, style Style, beside ...Beside) error {
-	s := newScreen(style)
+	s, known := newScreen(style), besides(beside)
 	allowed := n.Allowed()
 	switch {
 	case len(allowed) > 0:
-		writeTest(s, base, allowed[0], plan)
+		writeTest(s, base, allowed[0], plan, known, n.At)
 		writeOthers(s, allowed[1:])
 	case n.Stop != "":
 		s.hang(strong, "STOP  ", n.Stop)
@@ -32,13 +35,13 @@ func Next(w io.Writer, base *knowledge.Base, n *diagnose.Suggestion, plan *safet
 	default:
 		s.hang(strong, "STOP  ", "no test is left that saves more minutes than it costs")
 	}
-	writeRepairs(s, base, n, besides(beside))
+	writeRepairs(s, base, n, known)
 	writeLocked(s, n)
 	s.say(neutral, "At "+moment(n.At)+".")
 	return s.write(w)
 }
 
-func writeTest(s *screen, base *knowledge.Base, c diagnose.Candidate, plan *safety.Plan) {
+func writeTest(s *screen, base *knowledge.Base, c diagnose.Candidate, plan *safety.Plan, known Beside, at time.Time) {
 	t := c.Test
 	s.ends(mandatory, "NEXT", t.Title, worth(c))
 	s.item(strong, "where", placeOf(c))
@@ -54,12 +57,12 @@ func writeTest(s *screen, base *knowledge.Base, c diagnose.Candidate, plan *safe
 		}
 		s.item(strong, label, resultWords(r, t.Unit))
 	}
-	s.item(strong, "needs", needWords(t.Needs)+": allowed at this moment")
-	if t.Needs != "question" && plan != nil {
-		s.item(caution, "caution", storedWords(plan))
-	}
+	writeConditions(s, known, diagnose.WorkOf(t), at, plan)
 	for _, text := range cautionTexts(base, t.Cautions) {
 		s.item(caution, "caution", text)
+	}
+	if c.Again != "" {
+		s.item(caution, "again", c.Again)
 	}
 	s.item(strong, "why", whyNow(c))
 }
@@ -77,6 +80,9 @@ func worth(c diagnose.Candidate) string {
 }
 
 func whyNow(c diagnose.Candidate) string {
+	if c.Serves {
+		return "the board is rebuilt: this has to be read anew, and right, before power goes on; it tells nothing more about the cause"
+	}
 	text := fmt.Sprintf("tells %.2f bit about the cause", c.Bits)
 	if c.Value > 0 {
 		text = "on average it saves " + mins(c.Value) + " of wrong repairs and comebacks beyond its own " + mins(c.Minutes) + "; it " + text
@@ -116,27 +122,6 @@ func resultWords(r knowledge.Result, unit quantity.Unit) string {
 		text += ": " + r.Means
 	}
 	return text
-}
-
-// needWords says what state of the board a test needs.
-func needWords(need string) string {
-	switch safety.Need(need) {
-	case safety.NeedQuestion:
-		return "asking and looking only, nothing is touched"
-	case safety.NeedDead:
-		return "a dead board, every store of energy proved"
-	case safety.NeedControlPower:
-		return "control supply on, bus disconnected"
-	case safety.NeedLowBus:
-		return "a low, current-limited bus"
-	case safety.NeedFull:
-		return "the full bus"
-	}
-	return need
-}
-
-func storedWords(p *safety.Plan) string {
-	return "this board can hold " + mostEnergy(p) + " at up to " + volts(p.BusV) + ", and the charge comes back: a dead check lives 10 minutes"
 }
 
 func cautionTexts(base *knowledge.Base, ids []string) []string {
@@ -218,7 +203,16 @@ func writeLocked(s *screen, n *diagnose.Suggestion) {
 			continue
 		}
 		s.hang(caution, "   ", g.titles())
+		for _, c := range g.tests {
+			if c.Again != "" {
+				s.item(caution, "again", c.Test.Title+": "+c.Again)
+			}
+		}
 		for i, why := range g.why {
+			if i == shownReasons {
+				s.item(neutral, "", "and "+count(len(g.why)-i, "thing more", "things more")+" (drivemend next --json lists all)")
+				break
+			}
 			s.item(neutral, "because", why)
 			if i < len(g.unlock) && g.unlock[i] != "" {
 				s.item(mandatory, "do this", g.unlock[i])
@@ -229,7 +223,7 @@ func writeLocked(s *screen, n *diagnose.Suggestion) {
 		s.hang(neutral, "   ", count(quiet, "other test is", "other tests are")+" locked; none is worth its minutes now.")
 	}
 	if powered > 0 {
-		s.hang(neutral, "   ", count(powered, "powered test stays", "powered tests stay")+" locked in this version until hold points 3 and 4 exist; none is worth its minutes by itself now.")
+		s.hang(neutral, "   ", count(powered, "powered test stays", "powered tests stay")+" locked until hold points 3 and 4 are kept (drivemend status says what is missing); none is worth its minutes by itself now.")
 	}
 }
 

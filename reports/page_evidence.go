@@ -13,7 +13,7 @@ const listed = 8
 
 // pages are what stands behind the first page.
 func (r Report) pages() []section {
-	sections := []section{r.question(), r.evidence(), r.openTests(), r.chances(), r.edges(), r.assumed(), r.needs(), r.cautions(), r.safetyLog(), r.outsideAll(), r.leftOut(), r.boardValues(), r.sources(), deferral()}
+	sections := []section{r.question(), r.evidence(), r.openTests(), r.chances(), r.edges(), r.assumed(), r.needs(), r.earlierRepairs(), r.asFound(), r.cautions(), r.safetyLog(), r.conditions(), r.steps(), r.outsideAll(), r.leftOut(), r.boardValues(), r.files(), r.sources(), deferral()}
 	var out []section
 	for _, s := range sections {
 		if len(s.Blocks) > 0 {
@@ -48,7 +48,7 @@ func (r Report) evidence() section {
 	if len(k.Unexplained) > 0 {
 		var items []string
 		for _, f := range k.Unexplained {
-			items = append(items, known.name(f)+": "+f.Shown+" ("+decibans(f.Alone)+" dB)")
+			items = append(items, known.name(f)+": "+known.shown(f)+" ("+decibans(f.Alone)+" dB)")
 		}
 		s.say(caution, "UNEXPLAINED.", "These speak against "+aboutTitle(k)+" by 3 dB or more:")
 		s.enumerate(false, items...)
@@ -75,7 +75,7 @@ func evidenceRow(f diagnose.Finding, known Beside) []entry {
 	if len(f.Assumed) > 0 {
 		how += ", rests on assumed values"
 	}
-	return cells(title, place(f.Part, f.Position), f.Shown, how, decibans(f.Decibans), decibans(f.Alone))
+	return cells(title, place(f.Part, f.Position), known.shown(f), how, decibans(f.Decibans), decibans(f.Alone))
 }
 
 // chances are the lines of the three layers with the chance before any answer where there is one.
@@ -135,7 +135,7 @@ func (r Report) openTests() section {
 		if c.Value >= 0.5 {
 			saves = mins(c.Value)
 		}
-		row := cells(c.Test.Title, placeShort(c), mins(c.Minutes), saves, fmt.Sprintf("%.2f bit", c.Bits), needWords(c.Test.Needs))
+		row := cells(c.Test.Title, placeShort(c), mins(c.Minutes), saves, fmt.Sprintf("%.2f bit", c.Bits), workWords(diagnose.WorkOf(c.Test)))
 		t.Rows = append(t.Rows, append(row, state))
 	}
 	s.tabulate(t)
@@ -156,7 +156,7 @@ func (r Report) leftOut() section {
 		}
 		named[i] = true
 		o := r.Case.Observations[i]
-		rows = append(rows, cells(r.testTitle(o.Test), place(o.Part, o.Position), shown(o), moment(o.At), why))
+		rows = append(rows, cells(r.testTitle(o.Test), place(o.Part, o.Position), r.shown(o), moment(o.At), why))
 	}
 	if r.Ranking != nil {
 		for _, u := range r.Ranking.Unbound {

@@ -21,7 +21,7 @@ const (
 // Ranking prints the three layers, what is broken, what killed it, what let that happen, on one 80×24 screen.
 // Findings taken outside a hold point carry an asterisk.
 func Ranking(w io.Writer, c *measure.Case, r *diagnose.Ranking, style Style, beside ...Beside) error {
-	s, known := newScreen(style), besides(beside)
+	s, known := newScreen(style), besides(beside).of(c)
 	s.ends(strong, c.ID, boardLine(c.Board), answers(c))
 	numbers := writeLayers(s, r, known)
 	writeDoubts(s, c, r, known, func(id string) string {
@@ -172,7 +172,7 @@ func writeDoubts(s *screen, c *measure.Case, r *diagnose.Ranking, known Beside, 
 	if len(r.Unexplained) > 0 {
 		var names []string
 		for _, f := range r.Unexplained {
-			names = append(names, known.name(f)+": "+f.Shown+" ("+decibans(f.Alone)+" dB)")
+			names = append(names, known.name(f)+": "+known.shown(f)+" ("+decibans(f.Alone)+" dB)")
 		}
 		s.say(caution, "Speaks against "+name(r.About)+" by 3 dB or more: "+strings.Join(names, "; ")+".")
 	}

@@ -27,7 +27,8 @@ type Report struct {
 	Discharge *safety.Plan
 	Safety    safety.Status
 	Outside   []Outside
-	Private   bool // leave out owner, technician, serial number and firmware
+	Record    []safety.RecordStatus // steps that leave no reading, at the moment of the report
+	Private   bool                  // leave out owner, technician, serial number, firmware and who did a step or repair
 }
 
 // Outside is a reading that was taken outside its hold point.

@@ -22,9 +22,28 @@ var shapes = map[string][]string{
 		"stresses", "assumed[].key", "assumed[].value", "assumed[].unit", "assumed[].why", "needs[].key", "needs[].for"},
 }
 
+// jobShapes are the keys of the whole job's outputs.
+var jobShapes = map[string][]string{
+	"job-status.json": {"case", "at", "answers", "dead", "alarms", "isolation.isolated", "isolation.since", "isolation.stated_at", "isolation.age_s", "isolation.energised", "isolation.missing", "link.fitted", "link.since", "link.removed",
+		"points[].point", "points[].dead", "points[].dc_v", "points[].ac_v", "points[].meter_proved", "points[].at", "points[].age_s", "points[].expires_at", "points[].missing[].hold_point", "unplaced", "outcome",
+		"works[].need", "works[].tool", "works[].title", "works[].allowed", "works[].missing[].hold_point", "works[].missing[].text", "works[].missing[].unlock",
+		"record[].step", "record[].phase", "record[].result", "record[].at", "record[].settled", "record[].due", "record[].missing", "outside[].observation", "open[].test", "open[].title", "open[].why", "needs[].key", "needs[].for", "stated", "assumed"},
+	"job-next.json": {"tests[].tool", "tests[].carries", "tests[].serves", "tests[].again", "tests[].needs", "tests[].blocked_by"},
+	"job-report.json": {"finding", "finding_stated", "repairs[].part", "repairs[].done", "repairs[].work", "repairs[].was", "repairs[].fitted", "repairs[].because", "fault_log[].code", "fault_log[].count", "settings[].name", "settings[].value",
+		"photographs[].path", "photographs[].sha256", "captures[].name", "captures[].bytes", "captures[].sha256", "captures[].figures.peak.value", "captures[].figures.peak.unit", "steps[].step", "steps[].result", "steps[].at", "steps[].by",
+		"record[].step", "record[].due", "conditions[].step", "conditions[].at", "conditions[].fuse_a", "conditions[].second_person", "conditions[].probe", "conditions[].earth_clips", "observations[].shown", "observations[].lower_bound"},
+}
+
 func TestShapes(t *testing.T) {
-	r := frozen(t)
-	for _, o := range pages[:9] {
+	checkShapes(t, frozen(t), pages[:9], shapes)
+	checkShapes(t, job(t), jobWriters(t), jobShapes)
+}
+
+func checkShapes(t *testing.T, r Report, outputs []output, shapes map[string][]string) {
+	for _, o := range outputs {
+		if !strings.HasSuffix(o.name, ".json") {
+			continue
+		}
 		text := rendered(t, o, r, Style{})
 		var v any
 		if err := json.Unmarshal([]byte(text), &v); err != nil {

@@ -101,26 +101,35 @@ func TestThePeakRestsOnTheWholeRebuild(t *testing.T) {
 	}
 }
 
-// TestHeldByTheDates: a repair held 30 days only where the record shows 30 days.
-func TestHeldByTheDates(t *testing.T) {
-	day := func(n int) time.Time { return time.Date(2026, 12, 1+n, 0, 0, 0, 0, time.UTC) }
+// TestHeldByTheFollowUp: a repair held 30 days only where the outcome says so and a follow-up, 30 days after the
+// hand-over or later, is on record as done.
+func TestHeldByTheFollowUp(t *testing.T) {
+	at := func(day int) time.Time { return time.Date(2026, 12, 2+day, 12, 0, 0, 0, time.UTC) }
+	step := func(name, result string, day int) measure.StepEntry {
+		return measure.StepEntry{Step: name, Result: result, At: at(day)}
+	}
+	over, up := measure.StepHandedOver, measure.StepFollowedUp
 	for _, c := range []struct {
-		name              string
-		done, closed, now time.Time
-		want              string
+		name  string
+		steps []measure.StepEntry
+		now   time.Time
+		want  string // "" for held
 	}{
-		{"thirty days", day(0).Add(14 * time.Hour), day(30), day(40), ""},
-		{"a day short", day(0), day(29), day(40), "the record shows 29 days"},
-		{"closed the day after", day(0), day(1), day(90), "the record shows 1 day"},
-		{"closed in the future", day(0), day(31), day(3), "the record shows 3 days"},
-		{"not closed, long ago", day(0), time.Time{}, day(30), ""},
-		{"not closed, lately", day(0), time.Time{}, day(2), "the record shows 2 days"},
-		{"not done", time.Time{}, day(31), day(40), "the record does not say when the rebuild was done"},
-		{"done after it was closed", day(5), day(1), day(40), "by the record the rebuild was done only after that day"},
-		{"no date but done", day(0), time.Time{}, time.Time{}, "the record does not say when the case was closed"},
+		{"thirty days", []measure.StepEntry{step(over, "done", 0), step(up, "done", 30)}, at(40), ""},
+		{"a day short", []measure.StepEntry{step(over, "done", 0), step(up, "done", 29)}, at(40), "the follow-up of 2026-12-31 came before the 30 days were over, on 2027-01-01"},
+		{"not asked yet", []measure.StepEntry{step(over, "done", 0)}, at(3), "no follow-up is on record; it is due 2027-01-01"},
+		{"asked too early, then again", []measure.StepEntry{step(over, "done", 0), step(up, "done", 5), step(up, "done", 31)}, at(40), ""},
+		{"failed in the end", []measure.StepEntry{step(over, "done", 0), step(up, "done", 31), step(up, "failed", 35)}, at(40), "the follow-up of 2027-01-06 says that it failed"},
+		{"failed before its day", []measure.StepEntry{step(over, "done", 0), step(up, "failed", 4)}, at(40), "the follow-up of 2026-12-06 says that it failed"},
+		{"nobody to be reached", []measure.StepEntry{step(over, "done", 0), step(up, "not-possible", 31)}, at(40), "the follow-up of 2027-01-02 was not possible"},
+		{"never handed over", []measure.StepEntry{step(up, "done", 31)}, at(40), "the record does not say when the machine was handed over"},
+		{"in the future", []measure.StepEntry{step(over, "done", 0), step(up, "done", 31)}, at(20), "no follow-up is on record; it is due 2027-01-01"},
+		{"neither, thirty days by the dates", nil, at(40), ""},
+		{"neither, not yet thirty days", nil, at(20), "the record shows 21 days from rebuild to closing, and no follow-up"},
+		{"no date but held", []measure.StepEntry{step(over, "done", 0), step(up, "done", 31)}, time.Time{}, ""},
 	} {
 		r := frozen(t)
-		r.Case.Rebuild.Done, r.Case.Outcome.Closed, r.At = c.done, c.closed, c.now
+		r.Case.Steps, r.At = c.steps, c.now
 		state := map[bool]string{true: "REPAIR HELD 30 DAYS.", false: "INFERRED."}[c.want == ""]
 		text := said(t, r, "report.md")
 		if !strings.Contains(text, "**"+state+"**") {
@@ -134,7 +143,12 @@ func TestHeldByTheDates(t *testing.T) {
 		}
 	}
 	r := frozen(t)
-	r.Case.Rebuild = nil
+	r.Case.Outcome.ConfirmedBy = "plausible"
+	if text := said(t, r, "report.md"); !strings.Contains(text, "**INFERRED.**") || !strings.Contains(text, "the outcome does not say that this confirms the cause") || !strings.Contains(text, "Done 2027-01-03: the repair held") {
+		t.Errorf("a follow-up without an outcome that rests on it:\n%.2000s", text)
+	}
+	r = frozen(t)
+	r.Case.Steps = nil
 	if text := said(t, r, "status"); !strings.Contains(text, "stated as held 30 days, but") {
 		t.Errorf("the status passes the claim on: %s", text)
 	}
@@ -280,7 +294,7 @@ func TestWhyPoweredTestsStayLocked(t *testing.T) {
 	if err := Next(&b, base, n, nil, Style{}); err != nil {
 		t.Fatal(err)
 	}
-	if text := strings.Join(strings.Fields(b.String()), " "); !strings.Contains(text, "1 powered test stays locked in this version until hold points 3 and 4 exist") {
+	if text := strings.Join(strings.Fields(b.String()), " "); !strings.Contains(text, "1 powered test stays locked until hold points 3 and 4 are kept") {
 		t.Errorf("not said why:\n%s", text)
 	}
 }

@@ -18,7 +18,7 @@ var whyColumns = []column{{title: "finding"}, {title: "shown", width: 16}, {titl
 // Why prints what speaks for and against the line r.About, in decibans that add up from its starting to its present
 // odds. Findings taken outside a hold point carry an asterisk.
 func Why(w io.Writer, c *measure.Case, r *diagnose.Ranking, style Style, beside ...Beside) error {
-	s, known := newScreen(style), besides(beside)
+	s, known := newScreen(style), besides(beside).of(c)
 	s.ends(strong, c.ID, "why: "+aboutTitle(r), answers(c))
 	s.grid(whyColumns, whyRows(r.Findings, known))
 	s.add(whyColumns, []entry{{Text: "sum"}, {}, {}, {decibans(sumOf(r.Findings)), strong}})
@@ -41,7 +41,7 @@ func whyRows(findings []diagnose.Finding, known Beside) [][]entry {
 		if isShared(f) {
 			name += " (shared)"
 		}
-		rows = append(rows, []entry{{Text: name}, {Text: fit(plain(f.Shown), 32)}, {Text: f.Source}, {Text: decibans(f.Decibans)}, {Text: decibans(f.Alone)}})
+		rows = append(rows, []entry{{Text: name}, {Text: fit(plain(known.shown(f)), 64)}, {Text: f.Source}, {Text: decibans(f.Decibans)}, {Text: decibans(f.Alone)}})
 	}
 	if len(rows) == 0 {
 		rows = [][]entry{{{Text: "no finding counts yet"}}}

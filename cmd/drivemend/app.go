@@ -72,7 +72,7 @@ func (a *app) command() *cobra.Command {
 		title    string
 		commands []*cobra.Command
 	}{
-		{benchGroup, []*cobra.Command{a.benchCommand(), a.newCommand(), a.statusCommand(), a.enterCommand(), a.safeCommand(),
+		{benchGroup, []*cobra.Command{a.benchCommand(), a.newCommand(), a.statusCommand(), a.enterCommand(), a.recordCommand(), a.safeCommand(),
 			a.dischargeCommand(), a.nextCommand(), a.rankCommand()}},
 		{figureGroup, []*cobra.Command{a.marginCommand(), a.reportCommand()}},
 		{shopGroup, []*cobra.Command{a.rulesCommand(), a.keysCommand(), a.casesCommand(), a.demoCommand()}},

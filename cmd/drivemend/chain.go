@@ -139,7 +139,7 @@ func (k *chain) discharge(at time.Time) (*safety.Plan, error) {
 // state at a moment.
 func (k *chain) beside(r *diagnose.Ranking, at time.Time) reports.Beside {
 	status := safety.StatusOf(k.c, at, k.evidence())
-	return reports.Beside{Ranking: r, Safety: &status, Outside: k.outside()}
+	return reports.Beside{Ranking: r, Safety: &status, Outside: k.outside(), Case: k.c}
 }
 
 func (k *chain) evidence() safety.Evidence { return diagnose.EvidenceOf(k.base, k.c) }
@@ -153,17 +153,22 @@ func (k *chain) check(need safety.Need, at time.Time) safety.Decision {
 // tells what they needed.
 func (k *chain) outside() []reports.Outside {
 	var out []reports.Outside
-	evidence := k.evidence()
 	for i, o := range k.c.Observations {
-		t := k.base.Test(o.Test)
-		if t == nil {
-			continue
-		}
-		if yes, missing := safety.OutsideHoldPoint(k.c, o, diagnose.WorkOf(t), evidence); yes {
+		if missing := k.missedAt(o); len(missing) > 0 {
 			out = append(out, reports.Outside{Observation: i, Missing: missing})
 		}
 	}
 	return out
+}
+
+// missedAt tells what was missing when a reading was taken, from the record as it stood then.
+func (k *chain) missedAt(o measure.Observation) []safety.Missing {
+	t := k.base.Test(o.Test)
+	if t == nil {
+		return nil
+	}
+	_, missing := safety.OutsideHoldPoint(k.c, o, diagnose.WorkOf(t), diagnose.EvidenceOf(k.base, safety.AsOf(k.c, o.At)))
+	return missing
 }
 
 // report gathers everything a fault report is written from.
@@ -182,7 +187,7 @@ func (k *chain) report(at time.Time) (reports.Report, error) {
 	if r.Discharge, err = k.discharge(at); err != nil {
 		return r, err
 	}
-	r.Safety = safety.StatusOf(k.c, at, k.evidence())
+	r.Safety, r.Record = safety.StatusOf(k.c, at, k.evidence()), safety.Record(k.c, at, k.evidence())
 	return r, nil
 }
 

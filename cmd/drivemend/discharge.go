@@ -34,7 +34,7 @@ func (a *app) dischargeCommand() *cobra.Command {
 			return a.discharge(args[0], bare.resistor)
 		},
 	}
-	c.Flags().StringVar(&bare.bus, "bus", "", "highest bus `VOLTAGE`, 390V")
+	c.Flags().StringVar(&bare.bus, "bus", "", "highest bus `VOLTAGE`, 390V; the worst case when left out")
 	c.Flags().StringVar(&bare.capacitance, "capacitance", "", "bus `CAPACITANCE`, 2200uF; the worst case when left out")
 	c.Flags().StringVar(&bare.resistor, "resistor", "", "the discharge `RESISTOR` at hand, 2k2; one is chosen when left out")
 	return a.figures(a.timed(c))
@@ -43,10 +43,10 @@ func (a *app) dischargeCommand() *cobra.Command {
 // dischargeBare plans from the command line alone. No hold point can be checked without a case, and the plan begins
 // with the isolation.
 func (a *app) dischargeBare(bare bareBus) error {
-	if bare.bus == "" {
+	if bare == (bareBus{}) {
 		return wrongCommand("discharge needs a case, or --bus", "drivemend discharge CASE, or drivemend discharge --bus 390V --capacitance 2200uF")
 	}
-	in := safety.Input{MotorCanTurn: true}
+	in := safety.Input{MotorCanTurn: true, BusUnknown: bare.bus == ""}
 	for _, f := range []struct {
 		flag, text string
 		unit       quantity.Unit

@@ -6,9 +6,9 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"time"
 
 	"drivemend/diagnose"
-	"drivemend/diagnose/safety"
 	"drivemend/knowledge"
 	"drivemend/measure"
 	"drivemend/measure/quantity"
@@ -21,8 +21,7 @@ var bareNumber = regexp.MustCompile(`^([<>]|above|below)?\s*[+-]?(\d+\.?\d*|\.\d
 // gets the unit of the test. The error says what may be typed.
 func answerTo(t *knowledge.Test, text string) (measure.Observation, error) {
 	o := measure.Observation{Test: t.ID}
-	text = strings.TrimSpace(text)
-	word := strings.ToLower(text)
+	word := strings.ToLower(strings.TrimSpace(text))
 	switch {
 	case t.Result(word) != nil:
 		o.Result = word
@@ -31,25 +30,54 @@ func answerTo(t *knowledge.Test, text string) (measure.Observation, error) {
 		o.Answer = word
 		return o, nil
 	case t.Unit == "":
-		return o, wrongInput(fmt.Sprintf("%s has no result %q", t.ID, text), "its results are "+strings.Join(resultIDs(t), ", "))
+		return o, noResult(t, text)
 	}
-	text = withTestUnit(t.Unit, text)
+	r, err := readingOf(t, text)
+	if err == nil {
+		o.Reading = &r
+	}
+	return o, err
+}
+
+// noResult says which results a test has, the one that is spelt most like what was typed first.
+func noResult(t *knowledge.Test, text string) error {
+	var hints []string
+	if near := nearestOf(text, resultIDs(t)); near != "" {
+		hints = append(hints, "did you mean "+near+"?")
+	}
+	allowed := "its results are " + strings.Join(resultIDs(t), ", ")
+	if t.Unit != "" {
+		allowed = "give a reading in " + string(t.Unit) + ", or one of: " + strings.Join(resultIDs(t), ", ")
+	}
+	return wrongInput(fmt.Sprintf("%s has no result %q", t.ID, strings.TrimSpace(text)), append(hints, allowed, "what they mean: drivemend rules show "+t.ID)...)
+}
+
+// readingOf reads what an instrument showed in the unit of a test, as it can stand in a case file.
+func readingOf(t *knowledge.Test, text string) (quantity.Reading, error) {
+	text = withTestUnit(t.Unit, strings.TrimSpace(text))
 	r, err := quantity.ParseReading(text, t.Unit)
 	if err != nil {
-		return o, wrongInput(err.Error(), "or give a result by name: "+strings.Join(resultIDs(t), ", "))
+		return r, wrongInput(err.Error(), "or give a result by name: "+strings.Join(resultIDs(t), ", "))
 	}
 	if r.Kind == quantity.Word {
-		return o, wrongInput(fmt.Sprintf("%s has no result %q", t.ID, text), "give a reading in "+string(t.Unit)+", or one of: "+strings.Join(resultIDs(t), ", "))
+		return r, noResult(t, text)
 	}
 	// In a case file a reading carries its unit; a code such as 4k7 is written out.
 	if alone, err := quantity.ParseReading(r.Text, quantity.Any); err != nil || alone.Unit != r.Unit {
 		r.Text = r.String()
 		if _, err := quantity.ParseReading(r.Text, quantity.Any); err != nil {
-			return o, wrongInput(fmt.Sprintf("%q needs its unit", text), "write it with its unit, such as "+sampleReading(t.Unit))
+			return r, wrongInput(fmt.Sprintf("%q needs its unit", text), "write it with its unit, such as "+sampleReading(t.Unit))
 		}
 	}
-	o.Reading = &r
-	return o, nil
+	return r, nil
+}
+
+// within names the flag in front of what is wrong with its value.
+func within(flag string, err error) error {
+	if f, ok := err.(*failure); ok {
+		return &failure{f.status, flag + ": " + f.message, f.hints}
+	}
+	return err
 }
 
 // sampleReading is how a reading of a unit is written in full.
@@ -86,13 +114,35 @@ func resultIDs(t *knowledge.Test) []string {
 	return ids
 }
 
-// place puts an observation at a part or a position of the board, and says what the board has if that is none of it.
-func place(b measure.Board, t *knowledge.Test, o *measure.Observation, part, position string) error {
-	var parts, positions []string
-	for _, p := range b.Positions() {
-		positions = append(positions, p.Name)
-		parts = append(parts, p.Parts...)
+// boardsOf gives the boards a reading can be taken at: as found, and as rebuilt.
+func boardsOf(c *measure.Case) []measure.Board {
+	if c.Rebuild == nil {
+		return []measure.Board{c.Board}
 	}
+	return []measure.Board{c.Board, c.Rebuild.Board}
+}
+
+// placesOf names the positions of some boards and their parts, each once.
+func placesOf(boards []measure.Board) (positions, parts []string) {
+	add := func(list *[]string, name string) {
+		if !slices.Contains(*list, name) {
+			*list = append(*list, name)
+		}
+	}
+	for _, b := range boards {
+		for _, p := range b.Positions() {
+			add(&positions, p.Name)
+			for _, part := range p.Parts {
+				add(&parts, part)
+			}
+		}
+	}
+	return positions, parts
+}
+
+// place puts an observation at a part or a position of one of the boards, and says what there is if that is none of it.
+func place(boards []measure.Board, t *knowledge.Test, o *measure.Observation, part, position string) error {
+	positions, parts := placesOf(boards)
 	switch {
 	case part != "" && !slices.Contains(parts, part):
 		return noSuch("part", part, nearestOf(part, parts), "this board has "+strings.Join(parts, ", "))
@@ -102,29 +152,89 @@ func place(b measure.Board, t *knowledge.Test, o *measure.Observation, part, pos
 		return wrongCommand(t.ID+" is taken at a place of the board", "add --position "+strings.Join(positions, "|")+", or --part "+strings.Join(parts, "|"))
 	case part == "" && position == "" && t.Per != "":
 		position = positions[0]
-	case part != "" && position != "" && b.PositionOf(part) != position:
-		return wrongInput(part + " is in position " + b.PositionOf(part) + ", not in " + position)
+	case part != "" && position != "" && !slices.ContainsFunc(boards, func(b measure.Board) bool { return b.PositionOf(part) == position }):
+		return wrongInput(part + " is in position " + boards[0].PositionOf(part) + ", not in " + position)
 	}
 	o.Part, o.Position = part, position
 	return nil
 }
 
-// nearestOf gives the name that equals another but for case and punctuation, "" when none does.
-func nearestOf(name string, names []string) string {
-	bare := func(s string) string {
-		return strings.Map(func(r rune) rune {
-			if r == '-' || r == '_' || r == '.' || r == ' ' {
-				return -1
-			}
-			return r
-		}, strings.ToLower(s))
+// mostNear is how many tests a wrong name is answered with.
+const mostNear = 4
+
+// testsWith gives the tests whose id or title hold the words of a name, those with most of them first, at most mostNear.
+func testsWith(base *knowledge.Base, name string) []*knowledge.Test {
+	split := func(s string) []string {
+		return strings.FieldsFunc(strings.ToLower(s), func(r rune) bool { return strings.ContainsRune("-_ ./,", r) })
 	}
+	hits := map[int][]*knowledge.Test{}
+	words, most := split(name), 0
+	for i := range base.Tests {
+		t := &base.Tests[i]
+		if t.Computed != "" {
+			continue
+		}
+		known, n := append(split(t.ID), split(t.Title)...), 0
+		for _, w := range words {
+			if len(w) > 2 && nearestOf(w, known) != "" {
+				n++
+			}
+		}
+		hits[n], most = append(hits[n], t), max(most, n)
+	}
+	var out []*knowledge.Test
+	for n := most; n > 0 && len(out) < mostNear; n-- {
+		out = append(out, hits[n]...)
+	}
+	return out[:min(len(out), mostNear)]
+}
+
+// nearestOf gives the name that is spelt most like another, letters in capitals and punctuation left aside: one letter
+// in three may differ. "" when none is so near.
+func nearestOf(name string, names []string) string {
+	name = bareName(name)
+	best, least := "", len([]rune(name))/3+1
 	for _, n := range names {
-		if bare(n) == bare(name) {
-			return n
+		if d := letters(name, bareName(n)); d < least {
+			best, least = n, d
 		}
 	}
-	return ""
+	return best
+}
+
+// bareName is a name without capitals and punctuation.
+func bareName(s string) string {
+	return strings.Map(func(r rune) rune {
+		if r == '-' || r == '_' || r == '.' || r == ' ' {
+			return -1
+		}
+		return r
+	}, strings.ToLower(s))
+}
+
+// letters counts the letters to add, drop or change to turn a into b (Levenshtein distance).
+func letters(a, b string) int {
+	x, y := []rune(a), []rune(b)
+	if len(x) > 80 {
+		x = x[:80] // a longer word is near to nothing
+	}
+	row := make([]int, len(y)+1)
+	for j := range row {
+		row[j] = j
+	}
+	for i, r := range x {
+		corner := row[0]
+		row[0] = i + 1
+		for j, q := range y {
+			changed := corner
+			if r != q {
+				changed++
+			}
+			corner = row[j+1]
+			row[j+1] = min(row[j+1]+1, row[j]+1, changed)
+		}
+	}
+	return row[len(y)]
 }
 
 // echo says how an observation was taken: "0.4 Ω at Q2: shorted 98 %, leaky 2 %".
@@ -176,15 +286,43 @@ func (k *chain) afterwards(r *diagnose.Ranking) []string {
 			}
 		}
 	}
-	t := k.base.Test(o.Test)
-	if t == nil {
-		return lines
-	}
-	if yes, missing := safety.OutsideHoldPoint(k.c, o, diagnose.WorkOf(t), k.evidence()); yes {
+	if missing := k.missedAt(o); len(missing) > 0 {
 		lines = append(lines, "kept, and marked as taken outside its hold point:")
 		for _, m := range missing {
 			lines = append(lines, fmt.Sprintf("  point %d: %s", m.Point, m.Text))
 		}
 	}
 	return lines
+}
+
+// replaces says which answer the one that was entered last takes the place of.
+func replaces(before, c *measure.Case) []string {
+	var lines []string
+	last := c.Observations[len(c.Observations)-1]
+	for i, o := range before.Observations {
+		if !c.Superseded(i) || before.Superseded(i) {
+			continue
+		}
+		text := o.Result + o.Answer
+		if o.Reading != nil {
+			text = o.Reading.Text
+		}
+		if !o.At.IsZero() {
+			text += " of " + shortClock(o.At, last.At)
+		}
+		lines = append(lines, "replaces "+text+", which stays in the file")
+		if o.At.After(last.At) {
+			lines = append(lines, "note: it was taken before what it replaces; the one entered last counts")
+		}
+	}
+	return lines
+}
+
+// shortClock is a moment as it is told at another one: the time of day alone on the same day.
+func shortClock(t, now time.Time) string {
+	t = t.In(now.Location())
+	if t.Format(time.DateOnly) == now.Format(time.DateOnly) {
+		return t.Format("15:04")
+	}
+	return t.Format("2006-01-02 15:04")
 }

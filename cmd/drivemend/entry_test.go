@@ -138,7 +138,7 @@ func TestPlace(t *testing.T) {
 		{board, "Q4", "", ""}, {board, "", "middle", ""}, {board, "", "", ""}, {single, "", "", "/low"},
 	} {
 		var o measure.Observation
-		err := place(c.board, ohms, &o, c.part, c.position)
+		err := place([]measure.Board{c.board}, ohms, &o, c.part, c.position)
 		if got := o.Part + "/" + o.Position; (err != nil) != (c.want == "") || err == nil && got != c.want {
 			t.Errorf("%q %q gives %q, %v; want %q", c.part, c.position, got, err, c.want)
 		}

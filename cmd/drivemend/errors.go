@@ -54,7 +54,7 @@ func noSuch(what, name, nearest, elsewhere string) error {
 func report(w io.Writer, err error) int {
 	var f *failure
 	var p measure.Problems
-	var changed *measure.ChangedError
+	var save *measure.SaveError
 	switch {
 	case err == nil:
 		return exitDone
@@ -69,8 +69,8 @@ func report(w io.Writer, err error) int {
 			one.Hint = ""
 			printFault(w, one.String(), hint)
 		}
-	case errors.As(err, &changed):
-		printFault(w, err.Error())
+	case errors.As(err, &save):
+		printFault(w, save.Path+": not saved, "+save.Failed+": "+save.Reason+"; "+save.Stands, save.Todo)
 	default:
 		printFault(w, err.Error())
 	}

@@ -8,7 +8,6 @@ import (
 
 	"drivemend/cmd/drivemend/internal/ask"
 	"drivemend/diagnose"
-	"drivemend/diagnose/safety"
 	"drivemend/diagnose/stress"
 	"drivemend/measure/quantity"
 	"drivemend/reports"
@@ -48,6 +47,14 @@ func (s *session) finish() (func() *step, error) {
 		case "later":
 			s.laters = s.putOffTests()
 			return s.pick()
+		case "rebuilt":
+			return s.rebuiltStep, nil
+		case "power":
+			return s.choosePower()
+		case "steps":
+			if next, err := s.chooseRecord(); next != nil || err != nil {
+				return next, err
+			}
 		default:
 			return nil, nil
 		}
@@ -84,6 +91,8 @@ func (s *session) conclude() error {
 	}
 	s.sayNext(n)
 	s.sayLocked(n)
+	s.sayPowered(n)
+	s.sayRecord()
 	s.say(marginLine(s.margin, needed(s.wantedValues())))
 	s.say("MORE    drivemend rank, next, margin or status " + quoted(s.file.Path))
 	return nil
@@ -92,7 +101,7 @@ func (s *session) conclude() error {
 // sayNext says which test is worth most of those that can be done now.
 func (s *session) sayNext(n *diagnose.Suggestion) {
 	for _, c := range n.Tests {
-		if c.Allowed && (c.Value > 0 || c.Must) && !safety.Need(c.Test.Needs).Powered() && n.Stop == "" {
+		if c.Allowed && (c.Value > 0 || c.Must) && n.Stop == "" && !(diagnose.WorkOf(c.Test).Need.Powered() && s.heldBack(diagnose.WorkOf(c.Test))) {
 			s.left++
 			if s.left == 1 {
 				s.say(fmt.Sprintf("NEXT    %s, %.0f min", strings.TrimSuffix(c.Test.Title+": "+s.placeOf(c), ": "), c.Minutes))
@@ -115,7 +124,7 @@ func (s *session) sayLocked(n *diagnose.Suggestion) {
 	var reasons, unlock []string
 	tests := map[string]int{}
 	for _, c := range n.Tests {
-		if c.Allowed || c.Value <= 0 && !c.Must || len(c.BlockedBy) == 0 || safety.Need(c.Test.Needs).Powered() {
+		if c.Allowed || c.Value <= 0 && !c.Must || len(c.BlockedBy) == 0 || diagnose.WorkOf(c.Test).Need.Powered() {
 			continue
 		}
 		s.left++
@@ -177,6 +186,14 @@ func (s *session) closing() ask.Question {
 	if n := len(s.putOffTests()); n > 0 {
 		q.Choices = append(q.Choices, ask.Choice{Word: "later", Means: fmt.Sprintf("ask the %d tests that were put off", n)})
 	}
+	if n := len(s.openRecords("")); n > 0 {
+		q.Choices = append(q.Choices, ask.Choice{Word: "steps", Means: fmt.Sprintf("take up one of %d open steps of the record", n)})
+	}
+	if s.isRebuilt() {
+		q.Choices = append(q.Choices, ask.Choice{Word: "power", Means: "state the conditions for power, then do what waits for it"})
+	} else {
+		q.Choices = append(q.Choices, ask.Choice{Word: "rebuilt", Means: "the repair is done: prove the board, then bring it up"})
+	}
 	q.Choices = append(q.Choices, ask.Choice{Word: "stop", Means: "leave the session"})
 	return q
 }
@@ -211,7 +228,7 @@ func (s *session) putOffTests() []diagnose.Candidate {
 	var out []diagnose.Candidate
 	for _, o := range s.file.Case.Current() {
 		t := s.base.Test(o.Test)
-		if o.Answer == "later" && t != nil && !safety.Need(t.Needs).Powered() {
+		if o.Answer == "later" && t != nil {
 			out = append(out, diagnose.Candidate{Test: t, Part: o.Part, Position: o.Position, Lifted: o.State == "lifted", Minutes: t.Minutes})
 		}
 	}

@@ -7,6 +7,7 @@ import (
 
 	"drivemend/cmd/drivemend/internal/ask"
 	"drivemend/diagnose"
+	"drivemend/diagnose/safety"
 	"drivemend/measure"
 )
 
@@ -75,7 +76,7 @@ func TestNextKnowsOfPoweredTests(t *testing.T) {
 			t.Fatal(err)
 		}
 		for _, c := range n.Tests {
-			if c.Test.Needs == "dead" && c.Allowed != want {
+			if diagnose.WorkOf(c.Test) == (safety.Work{Need: safety.NeedDead}) && c.Allowed != want {
 				t.Fatalf("%s: allowed %v, want %v", c.Test.ID, c.Allowed, want)
 			}
 		}

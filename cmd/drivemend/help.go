@@ -55,6 +55,9 @@ func helpOne(w io.Writer, c *cobra.Command) {
 	if text == "" {
 		text = c.Short
 	}
+	if note := heldNote(c); note != "" {
+		text += "\n" + note
+	}
 	for _, par := range strings.Split(text, "\n") {
 		for _, line := range ask.Wrapped(par, "", "", 80) {
 			fmt.Fprintln(w, line)

@@ -71,3 +71,34 @@ func TestYesNoIsOfferedOnce(t *testing.T) {
 		}
 	}
 }
+
+// TestEveryKeyHasAnExampleThatLoads proves that the line which keys NAME shows can be copied into the file of a board with
+// two parts in parallel, and states that very key.
+func TestEveryKeyHasAnExampleThatLoads(t *testing.T) {
+	shown := 0
+	for _, k := range measure.Keys() {
+		line := exampleOf(k)
+		if line == "" {
+			if !holdsKeys(k) {
+				t.Errorf("%s has no example", k.Path)
+			}
+			continue
+		}
+		shown++
+		head := ""
+		for _, must := range []string{"drivemend: 1", "case: one", "board: {topology: low-side-chopper, positions: {low: {parts: [Q1, Q2]}}}"} {
+			if name, _, _ := strings.Cut(must, ":"); !strings.HasPrefix(line, name+":") {
+				head += must + "\n"
+			}
+		}
+		if _, err := measure.Parse("example", []byte(head+line+"\n")); err != nil {
+			t.Errorf("%s: %s\n%v", k.Path, line, err)
+		}
+		if last := k.Path[strings.LastIndex(k.Path, ".")+1:]; !strings.Contains(line, last+":") {
+			t.Errorf("%s is not stated by its example %s", k.Path, line)
+		}
+	}
+	if shown < 150 {
+		t.Errorf("only %d examples", shown)
+	}
+}

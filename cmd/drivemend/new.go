@@ -7,6 +7,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"drivemend/diagnose/safety"
 	"drivemend/measure"
 )
 
@@ -17,7 +18,7 @@ func (a *app) newCommand() *cobra.Command {
 		Use:   "new CASE",
 		Short: "start a case file",
 		Long: "Starts a case file: CASE is its name, .yaml is added when left out. The file is plain text; it can be edited " +
-			"by hand at any time. drivemend bench CASE then asks for the rest.",
+			"by hand at any time. Nothing has to be stated now; drivemend bench CASE asks for what is needed.",
 		Example: "drivemend new pump --story 'full speed as soon as the isolator closed' --set board.bus.nominal='310 V'",
 		Args:    takes(1, 1),
 		RunE:    func(_ *cobra.Command, args []string) error { return a.newCase(args[0], story, set) },
@@ -54,7 +55,19 @@ func (a *app) newCase(path, story string, set []string) error {
 		return err
 	}
 	fmt.Fprintf(a.out, "started %s, opened %s\nnext: drivemend bench %s\n", f.Path, f.Case.Opened.Format("2006-01-02"), quoted(f.Path))
+	a.wrapped("before anything is touched: "+strings.Join(beforeTouching(), ", ")+"; each is entered with drivemend record step", "", "  ")
 	return nil
+}
+
+// beforeTouching names the steps of the record that come before any other, for they cannot be made up for.
+func beforeTouching() []string {
+	var out []string
+	for _, s := range safety.RecordSteps() {
+		if s.Phase == safety.BeforeTouching {
+			out = append(out, s.Title)
+		}
+	}
+	return out
 }
 
 // startCase makes a case that is not yet on disk; one that is there is refused.

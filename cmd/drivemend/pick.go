@@ -38,11 +38,28 @@ func (s *session) pick() (func() *step, error) {
 	if err != nil {
 		return nil, err
 	}
-	return s.pickTest(n), nil
+	return s.pickWork(n), nil
 }
 
-// opening lists the first five minutes: what is still open of them, "" for what is settled. Making safe comes first on
-// a fresh case; later it comes again before the step that needs it.
+// pickWork gives the next step at the board: first what is to be done under the power that was stated for, then the
+// tests, then what the record asks for after the repair.
+func (s *session) pickWork(n *diagnose.Suggestion) func() *step {
+	if n.Stop == "" {
+		if next := s.pickPowered(n); next != nil {
+			return next
+		}
+	}
+	if next := s.pickRecord(true); next != nil {
+		return next
+	}
+	if next := s.pickTest(n); next != nil {
+		return next
+	}
+	return s.pickRecord(false)
+}
+
+// opening lists the first five minutes and the steps before touching: what is still open of them, "" for what is
+// settled. Making safe comes first on a fresh case; later it comes again before the step that needs it.
 func (s *session) opening() []string {
 	var ids []string
 	fresh := len(s.file.Case.Observations) == 0
@@ -59,7 +76,7 @@ func (s *session) opening() []string {
 	for _, test := range history {
 		ids = append(ids, s.openTest(test))
 	}
-	return append(ids, s.openValue("history"))
+	return append(append(ids, s.openValue("history")), s.openBefore()...)
 }
 
 // openTest names the step of a history question while it has no answer.
@@ -89,6 +106,8 @@ func (s *session) stepNamed(id string) func() *step {
 		return s.linkStep
 	case "parts":
 		return s.partsStep
+	case "record":
+		return func() *step { return s.recordStep(name) }
 	case "test":
 		t := s.base.Test(name)
 		return func() *step { return s.testStep(diagnose.Candidate{Test: t, Minutes: t.Minutes, Allowed: true}) }
@@ -96,8 +115,8 @@ func (s *session) stepNamed(id string) func() *step {
 	return func() *step { return s.valueStep(name) }
 }
 
-// pickTest gives the most valuable test that is not put off. Where only a hold point stands before it that can be
-// settled now, that comes first.
+// pickTest gives the most valuable test of a dead board, or question, that is not put off. Where only a hold point
+// stands before it that can be settled now, that comes first.
 func (s *session) pickTest(n *diagnose.Suggestion) func() *step {
 	if n.Stop != "" {
 		return nil
@@ -106,31 +125,43 @@ func (s *session) pickTest(n *diagnose.Suggestion) func() *step {
 	worth := false
 	for i := range n.Tests {
 		c := n.Tests[i]
+		w := diagnose.WorkOf(c.Test)
+		ready := c.Allowed && !s.heldBack(w)
 		switch {
-		case s.putOff[testID(c)] || safety.Need(c.Test.Needs).Powered():
+		case s.putOff[testID(c)] || w.Need.Powered():
 			continue
-		case c.Value <= 0 && !c.Test.Must:
-			if c.Allowed && !s.heldBack(safety.Need(c.Test.Needs)) && (spare == nil || c.Bits > spare.Bits) {
+		case c.Value <= 0 && !c.Must:
+			if ready && (spare == nil || c.Bits > spare.Bits) {
 				spare = &c
 			}
 			continue
 		}
 		worth = true
-		if c.Allowed && !s.heldBack(safety.Need(c.Test.Needs)) {
+		if ready {
 			return s.testOrKey(c)
 		}
-		if id := s.unlocking(); id != "" {
-			if !s.told["unlocking "+testID(c)] {
-				s.told["unlocking "+testID(c)] = true
-				s.say("The test worth most now is: " + c.Test.Title + ". It needs a board that is proved dead.")
-			}
-			return s.stepNamed(id)
+		if next := s.toward(w); next != nil {
+			s.sayToward(c)
+			return next
 		}
 	}
 	if spare != nil && !worth && len(n.Allowed()) == 0 {
 		return s.testOrKey(*spare)
 	}
 	return nil
+}
+
+// sayToward says once for which test the board is made ready.
+func (s *session) sayToward(c diagnose.Candidate) {
+	if s.told["unlocking "+testID(c)] {
+		return
+	}
+	s.told["unlocking "+testID(c)] = true
+	needs := " It needs a board that is proved dead."
+	if s.status().Dead && !s.held() {
+		needs = ""
+	}
+	s.say("The test worth most now is: " + c.Test.Title + "." + needs)
 }
 
 // unlocking names the step that would bring the board back to proved dead, "" when it is put off. An isolation that

@@ -15,14 +15,14 @@ import (
 func (a *app) safeCommand() *cobra.Command {
 	c := &cobra.Command{
 		Use:   "safe",
-		Short: "enter the safety history: isolation, dead checks, link",
+		Short: "enter the safety history: isolation, dead checks, link, conditions",
 		Long:  "Enters the safety history of a case, which the hold points are checked against. Only what is stated in full counts.",
 		Args:  takes(0, 0),
 		RunE: func(*cobra.Command, []string) error {
-			return wrongCommand("safe needs a word", "drivemend safe isolation, dead-check, link or energised")
+			return wrongCommand("safe needs a word", "drivemend safe isolation, dead-check, link, energised or before")
 		},
 	}
-	c.AddCommand(a.isolationCommand(), a.deadCheckCommand(), a.linkCommand(), a.energisedCommand())
+	c.AddCommand(a.isolationCommand(), a.deadCheckCommand(), a.linkCommand(), a.energisedCommand(), a.beforeCommand())
 	return c
 }
 
@@ -149,23 +149,29 @@ func (a *app) energisedCommand() *cobra.Command {
 
 // safe makes one entry of the safety history and says what is missing from then on.
 func (a *app) safe(path string, enter func(*measure.File, time.Time) error) error {
-	at, err := a.stamp()
+	f, at, err := a.enterSafety(path, enter)
 	if err != nil {
-		return err
-	}
-	f, err := a.loadToChange(path)
-	if err != nil {
-		return err
-	}
-	if err := notBefore(f.Case, at); err != nil {
-		return err
-	}
-	if err := enter(f, at); err != nil {
-		return err
-	}
-	if err := f.Save(); err != nil {
 		return err
 	}
 	fmt.Fprintf(a.out, "entered at %s\n", at.Format(time.RFC3339))
 	return a.status(f.Path)
+}
+
+// enterSafety makes one entry of the safety history and saves it.
+func (a *app) enterSafety(path string, enter func(*measure.File, time.Time) error) (*measure.File, time.Time, error) {
+	at, err := a.stamp()
+	if err != nil {
+		return nil, at, err
+	}
+	f, err := a.loadToChange(path)
+	if err != nil {
+		return nil, at, err
+	}
+	if err := notBefore(f.Case, at); err != nil {
+		return nil, at, err
+	}
+	if err := enter(f, at); err != nil {
+		return nil, at, err
+	}
+	return f, at, f.Save()
 }

@@ -146,6 +146,9 @@ func (s *session) farewell() {
 		s.say("Nothing was answered, so nothing was written.")
 		return
 	}
+	if s.underPower() {
+		s.say("! The board counts as powered: switch off, take the supply away, and let nobody touch it before it is isolated and proved dead.")
+	}
 	s.say("Everything answered is saved in " + s.file.Path + ". Go on with: drivemend bench " + quoted(s.file.Path))
 }
 
@@ -258,7 +261,11 @@ func (s *session) retry() (bool, error) {
 func (s *session) refused(err error) {
 	var p measure.Problems
 	var f *failure
+	var save *measure.SaveError
 	switch {
+	case errors.As(err, &save):
+		s.say("! not saved, " + save.Failed + ": " + save.Reason + "; " + save.Stands)
+		s.say("  " + save.Todo)
 	case errors.As(err, &p):
 		for _, one := range p {
 			s.say("! " + one.Message)

@@ -112,9 +112,14 @@ func (s *session) value(key string, k measure.Key, q ask.Question) (ask.Kind, er
 
 // tried tells what is wrong with a value, without changing the case.
 func (s *session) tried(path, text string) error {
+	return s.trial(func(f *measure.File) error { return f.Set(path, text) })
+}
+
+// trial tells what is wrong with a change, without making it.
+func (s *session) trial(change func(f *measure.File) error) error {
 	f, err := measure.Parse(s.file.Path, s.file.Bytes())
 	if err == nil {
-		err = f.Set(path, text)
+		err = change(f)
 	}
 	var p measure.Problems
 	if errors.As(err, &p) && len(p) > 0 {

@@ -11,7 +11,7 @@ import (
 
 // put asks a question at which everything else that can be entered is one word away.
 func (s *session) put(q ask.Question) (ask.Answer, error) {
-	q.Asides = append(q.Asides, ask.Aside{Word: "more", Means: "link, isolation, story, rebuild, board values, outcome", Do: s.more})
+	q.Asides = append(q.Asides, ask.Aside{Word: "more", Means: "link, isolation, steps, story, rebuild, board values, outcome", Do: s.more})
 	return s.asker.Ask(q)
 }
 
@@ -23,6 +23,7 @@ func (s *session) more() error {
 			{Word: "dead-check", Means: "take up the dead checks that were put off"},
 			{Word: "link", Means: "a shorting link was fitted or taken off"},
 			{Word: "energised", Means: "a source, a powered step or a turned shaft put energy in"},
+			{Word: "step", Means: "a step of the record: pictures, fault memory, tests before connecting"},
 			{Word: "story", Means: "what happened, in the owner's words"},
 			{Word: "value", Means: "a value of the board, by its key"},
 			{Word: "rebuild", Means: "a value of the rebuild that was chosen, by its key"},
@@ -53,6 +54,10 @@ func (s *session) enterMore(word string) error {
 		}
 		s.say("Every store of energy is proved dead at this moment.")
 		return nil
+	case "step":
+		next, err := s.chooseRecord()
+		s.jump = next
+		return err
 	case "link":
 		return s.enterLink()
 	case "energised":

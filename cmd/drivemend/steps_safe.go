@@ -153,8 +153,8 @@ func (s *session) deadCheck(p safety.PointStatus) (ask.Kind, error) {
 	if s.held() {
 		return s.standStep().run()
 	}
-	if d := s.chain.check(safety.NeedDeadCheck, s.clock()); !d.Allowed {
-		return ask.Later, reports.Withheld(s.out, "the dead check at "+p.Store.Point, d.Missing, d.At, s.style())
+	if d := s.check(safety.Work{Need: safety.NeedDeadCheck}); !d.Allowed {
+		return ask.Later, s.withheld("the dead check at "+p.Store.Point, d.Missing)
 	}
 	plan, err := s.chain.discharge(s.clock())
 	if err != nil {

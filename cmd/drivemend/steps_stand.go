@@ -13,9 +13,6 @@ import (
 // it still stands, nothing at the board is asked for.
 func (s *session) held() bool { return !s.stands && s.status().Isolation.Isolated }
 
-// heldBack tells whether a step of a need waits for that word.
-func (s *session) heldBack(need safety.Need) bool { return need != safety.NeedQuestion && s.held() }
-
 // standStep asks at a resume whether the isolation on record still stands.
 func (s *session) standStep() *step {
 	return &step{"stands", func() (ask.Kind, error) {

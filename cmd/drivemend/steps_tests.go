@@ -1,6 +1,7 @@
 package main
 
 import (
+	"errors"
 	"fmt"
 	"slices"
 	"strings"
@@ -12,7 +13,6 @@ import (
 	"drivemend/measure"
 	"drivemend/measure/meter"
 	"drivemend/measure/quantity"
-	"drivemend/reports"
 )
 
 // testID names the step of a test at its place.
@@ -48,9 +48,9 @@ func (s *session) uncompared(c diagnose.Candidate) string {
 
 // testStep asks one test at its place.
 func (s *session) testStep(c diagnose.Candidate) *step {
-	t := c.Test
+	t, w := c.Test, diagnose.WorkOf(c.Test)
 	q := ask.Question{Title: t.Title, Place: s.placeOf(c), Ask: t.Ask, Choices: s.results(t),
-		Asides: []ask.Aside{s.text("how", "how it is done", t.How), s.text("why", "why this is asked", whyTest(c))}}
+		Asides: []ask.Aside{s.heldText(w, t.Title, t.How), s.text("why", "why this is asked", whyTest(c))}}
 	if s.given() >= firstRanking {
 		q.Asides = append(q.Asides, s.rankingAside())
 	}
@@ -69,7 +69,8 @@ func (s *session) testStep(c diagnose.Candidate) *step {
 			q.Lines = append(q.Lines, "! "+s.cautionText(id, caution.Text))
 		}
 	}
-	if t.Needs != string(safety.NeedQuestion) {
+	q.Lines = append(q.Lines, s.carried(w)...)
+	if w.Need != safety.NeedQuestion {
 		q.Lines = append(q.Lines, s.joules()...)
 	}
 	return &step{testID(c), func() (ask.Kind, error) { return s.test(c, q) }}
@@ -169,15 +170,23 @@ func whyTest(c diagnose.Candidate) string {
 // test asks, keeps what was said, and says how it was read. The hold points are checked again with the clock before
 // the instruction stands on the screen.
 func (s *session) test(c diagnose.Candidate, q ask.Question) (ask.Kind, error) {
-	if s.heldBack(safety.Need(c.Test.Needs)) {
-		return s.standStep().run()
+	w := diagnose.WorkOf(c.Test)
+	if pass, kind, err := s.gate(w, c.Test.Title); !pass {
+		return kind, err
 	}
-	if d := s.chain.check(safety.Need(c.Test.Needs), s.clock()); !d.Allowed {
-		return ask.Later, reports.Withheld(s.out, c.Test.Title, d.Missing, d.At, s.style())
+	surface, kind, err := s.surface(c.Test, &q)
+	if err != nil || kind != ask.Given {
+		return kind, err
+	}
+	if ok, err := s.powerOn(w); !ok {
+		return ask.Later, err
 	}
 	fmt.Fprintln(s.out)
 	s.say(s.standing())
 	answer, err := s.put(q)
+	if answer.Kind != ask.Given || err != nil {
+		err = errors.Join(s.leftCharged(w), err)
+	}
 	if err != nil || answer.Kind == ask.Back || answer.Kind == ask.Quit || answer.Kind == ask.Moved {
 		return answer.Kind, err
 	}
@@ -185,21 +194,54 @@ func (s *session) test(c diagnose.Candidate, q ask.Question) (ask.Kind, error) {
 	if err != nil {
 		return ask.Later, err
 	}
+	o.Surface = surface
 	ok, err := s.keep(func(f *measure.File) error { return f.Observe(o) })
 	if err != nil || !ok {
 		return ask.Later, err
 	}
 	if answer.Kind == ask.Given {
-		s.say("  read as " + echo(c.Test, s.file.Case.Board, o))
-		for _, line := range s.chain.afterwards(s.ranked) {
-			s.say("  ! " + line)
-		}
-		if missing := s.uncompared(c); missing != "" && o.Reading != nil {
-			s.say("  ! to make it count: more, then value, then " + missing + " and the resistor that is fitted; or drivemend enter " + quoted(s.file.Path) + " board." + missing + " 10k")
-		}
+		s.sayRead(c, o)
 		return answer.Kind, s.alsoKey(c.Test, o.Result)
 	}
 	return answer.Kind, nil
+}
+
+// sayRead says how an observation was taken, and what it leaves to be done.
+func (s *session) sayRead(c diagnose.Candidate, o measure.Observation) {
+	s.say("  read as " + echo(c.Test, s.file.Case.Board, o))
+	for _, line := range s.chain.afterwards(s.ranked) {
+		s.say("  ! " + line)
+	}
+	if missing := s.uncompared(c); missing != "" && o.Reading != nil {
+		s.say("  ! to make it count: more, then value, then " + missing + " and the resistor that is fitted; or drivemend enter " + quoted(s.file.Path) + " board." + missing + " 10k")
+	}
+	if diagnose.WorkOf(c.Test).Energises() {
+		s.resume("isolation", "stands", "link", "check ")
+		s.say("  ! energy was put in: isolation and every dead check before are over; they are asked again before the next step at a dead board.")
+	}
+}
+
+// surfaces are what a camera can look at.
+var surfaces = []ask.Choice{{Word: "matt-dot", Means: "a dot of matt paint"}, {Word: "tape", Means: "a piece of tape that has taken the temperature"},
+	{Word: "moulded", Means: "the plastic of the part"}, {Word: "painted", Means: "paint or solder mask"},
+	{Word: "bare-metal", Means: "looks colder than it is: the reading is kept as a lower bound"}}
+
+// surface asks what a camera will look at, before it is warm and under power; "" for every other instrument. Bare metal
+// and a surface that is not stated give a lower bound, which is said beside the question.
+func (s *session) surface(t *knowledge.Test, q *ask.Question) (string, ask.Kind, error) {
+	if t.Instrument != "camera" {
+		return "", ask.Given, nil
+	}
+	answer, err := s.put(ask.Question{Title: t.Title, Ask: "What does the camera look at?", Choices: surfaces,
+		Lines: []string{"Put a matt dot or tape on metal now, while nothing is switched on."}})
+	if err != nil || answer.Kind != ask.Given && answer.Kind != ask.Skipped {
+		return "", answer.Kind, err
+	}
+	if answer.Text == "" || answer.Text == "bare-metal" {
+		s.say("  ! A lower bound: the surface is at least as warm as the camera shows, and may be much hotter.")
+		q.Lines = append(q.Lines, "! What the camera shows is kept as a lower bound: the metal may be much hotter.")
+	}
+	return answer.Text, ask.Given, nil
 }
 
 // alsoKey offers to keep as a value of the board what an answer has just said of it: a missing snubber is a network of

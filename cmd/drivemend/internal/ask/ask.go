@@ -58,7 +58,8 @@ type Question struct {
 
 	// Danger marks a question that a safety step rests on: only a word typed in full answers it.
 	Danger bool
-	// Enter is what Enter alone answers; "" and every question of danger: nothing.
+	// Enter is what Enter alone answers, as if it were typed: a choice, a free text, or a command such as later; "" and
+	// every question of danger: nothing.
 	Enter string
 	// NoBack and NoSkip take those commands off where there is nothing to go back to or to leave open.
 	NoBack, NoSkip bool
@@ -148,12 +149,19 @@ func (q Question) enter() (Answer, error) {
 	switch {
 	case q.Danger:
 		return Answer{}, errors.New("Enter alone confirms nothing here; type " + q.expected())
+	case q.isCommand(q.Enter):
+		return q.answer(q.Enter)
 	case q.Enter != "":
 		return Answer{Given, q.Enter}, nil
 	case q.NoSkip:
 		return Answer{}, errors.New("Enter alone answers nothing; type " + q.expected())
 	}
 	return Answer{}, errors.New("Enter alone answers nothing; type " + q.expected() + ", or ? if you don't know")
+}
+
+// isCommand tells whether a text is a command here.
+func (q Question) isCommand(text string) bool {
+	return q.exact(text) == "" && slices.ContainsFunc(q.commands(), func(c command) bool { return slices.Contains(c.words, text) })
 }
 
 // exact gives the choice with this word, in capitals or not. Digits never choose: at the next question they may be a

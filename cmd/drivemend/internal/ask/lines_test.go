@@ -181,3 +181,16 @@ func TestNumbersKeepTheirUnit(t *testing.T) {
 		t.Errorf("got %q", got)
 	}
 }
+
+// TestEnterMayBeACommand: Enter alone stands for a command where a question says so, and never where a safety step rests
+// on the answer.
+func TestEnterMayBeACommand(t *testing.T) {
+	q := Question{Choices: []Choice{{Word: "done"}}, Enter: "later"}
+	if a, err := q.answer(""); err != nil || a.Kind != Later {
+		t.Errorf("Enter alone gives %v, %v", a, err)
+	}
+	q.Danger = true
+	if a, err := q.answer(""); err == nil {
+		t.Errorf("Enter alone answers a question of danger: %v", a)
+	}
+}

@@ -4,8 +4,6 @@ import (
 	"io"
 
 	"drivemend/diagnose/safety"
-	"drivemend/measure"
-	"drivemend/measure/quantity"
 )
 
 type storeJSON struct {
@@ -21,6 +19,8 @@ type storeJSON struct {
 	To60         *num    `json:"time_to_60v_s"`
 	To50         *num    `json:"time_to_50v_s"`
 	To5          *num    `json:"time_to_5v_s"`
+	// Uneven is a half of a split bank with the whole voltage of the bus on it; null for every other store.
+	Uneven *unevenJSON `json:"out_of_balance"`
 }
 
 type cautionJSON struct {
@@ -51,7 +51,10 @@ type dischargeJSON struct {
 	ResistorOhm     num           `json:"resistor_ohm"`
 	ResistorSeries  int           `json:"resistor_series"`
 	ResistorEnergyJ num           `json:"resistor_energy_j"`
+	ResistorUnevenJ *num          `json:"resistor_uneven_energy_j"` // one half of a split bank holding the whole voltage; null without halves
 	ResistorPowerW  num           `json:"resistor_power_w"`
+	ResistorEachV   num           `json:"resistor_body_v"` // over each part in series
+	AveragePowerW   num           `json:"average_power_w"` // over the first time constant
 	ResistorWithin  bool          `json:"resistor_within"`
 	ResistorNotes   []string      `json:"resistor_notes"`
 	PeakCurrentA    num           `json:"peak_current_a"`
@@ -66,9 +69,12 @@ type dischargeJSON struct {
 	Bleeder         *bleederJSON  `json:"bleeder"`
 	RecoveryLowV    num           `json:"recovery_low_v"`
 	RecoveryHighV   num           `json:"recovery_high_v"`
+	RecoveryAbove50 bool          `json:"recovery_above_50v"`
+	RecoveryAbove60 bool          `json:"recovery_above_60v"`
 	Stores          []storeJSON   `json:"stores"`
 	Steps           []stepJSON    `json:"steps"`
 	Cautions        []cautionJSON `json:"cautions"`
+	Limits          []limitJSON   `json:"limits"`
 	Assumed         []string      `json:"assumed"`
 	Needs           []wantedJSON  `json:"needs"`
 }
@@ -79,6 +85,30 @@ type bleederJSON struct {
 	To60          num `json:"time_to_60v_s"`
 	To50          num `json:"time_to_50v_s"`
 	To5           num `json:"time_to_5v_s"`
+	// LabelTimeS is what a label would name, down to 60 V: a lower bound while the bleeder is whole.
+	LabelTimeS  num  `json:"label_time_s"`
+	WithinFiveS bool `json:"within_5s"`
+}
+
+type unevenJSON struct {
+	VoltageV     num `json:"voltage_v"`
+	EnergyJ      num `json:"energy_j"`
+	PeakCurrentA num `json:"peak_current_a"`
+	To60         num `json:"time_to_60v_s"`
+	To50         num `json:"time_to_50v_s"`
+	To5          num `json:"time_to_5v_s"`
+}
+
+type limitJSON struct {
+	Hazard    string `json:"hazard"`
+	Threshold string `json:"threshold"`
+	Answers   string `json:"answers"`
+	Board     string `json:"board"`
+	Above     *bool  `json:"above"` // null where this board's figure is not known
+	Applies   bool   `json:"applies"`
+	Lowest    bool   `json:"lowest"`
+	Source    string `json:"source"`
+	Read      string `json:"read"`
 }
 
 // DischargeJSON writes the discharge plan. time_to_… are with the capacitance as stated, wait_to_… with the top of its
@@ -91,14 +121,14 @@ func dischargeOf(p *safety.Plan) *dischargeJSON {
 	}
 	r := p.Resistor
 	out := &dischargeJSON{BusV: num(p.BusV), CapacitanceF: num(p.CapacitanceF), EnergyJ: num(p.EnergyJ), Withheld: missingOf(p.Withheld), WorstEnergyJ: some(p.WorstEnergyJ), TotalEnergyJ: num(p.TotalEnergyJ), ChargeC: num(p.ChargeC),
-		ResistorOhm: num(r.Ohm), ResistorSeries: r.Series, ResistorEnergyJ: num(r.JoulesJ), ResistorPowerW: num(r.RatedW), ResistorWithin: r.Within, ResistorNotes: list(r.Notes),
+		ResistorOhm: num(r.Ohm), ResistorSeries: r.Series, ResistorEnergyJ: num(r.JoulesJ), ResistorUnevenJ: some(r.UnevenJ), ResistorPowerW: num(r.RatedW), ResistorEachV: num(r.EachV), AveragePowerW: num(r.AverageW), ResistorWithin: r.Within, ResistorNotes: list(r.Notes),
 		PeakCurrentA: num(p.PeakCurrentA), PeakPowerW: num(p.PeakPowerW), TimeConstantS: num(p.TimeConstantS),
 		To60: num(p.Nominal.To60V), To50: num(p.Nominal.To50V), To5: num(p.Nominal.To5V),
 		Wait60: num(p.Wait.To60V), Wait50: num(p.Wait.To50V), Wait5: num(p.Wait.To5V),
-		RecoveryLowV: num(p.Recovery.LowV), RecoveryHighV: num(p.Recovery.HighV), Assumed: []string{},
-		Stores: []storeJSON{}, Steps: []stepJSON{}, Cautions: []cautionJSON{}, Needs: []wantedJSON{}}
+		RecoveryLowV: num(p.Recovery.LowV), RecoveryHighV: num(p.Recovery.HighV), RecoveryAbove50: p.Recovery.BackAbove50V, RecoveryAbove60: p.Recovery.BackAbove60V, Assumed: []string{},
+		Stores: []storeJSON{}, Steps: []stepJSON{}, Cautions: []cautionJSON{}, Limits: []limitJSON{}, Needs: []wantedJSON{}}
 	if b := p.Bleeder; b != nil {
-		out.Bleeder = &bleederJSON{num(b.Ohm), num(b.PowerW), num(b.Wait.To60V), num(b.Wait.To50V), num(b.Wait.To5V)}
+		out.Bleeder = &bleederJSON{num(b.Ohm), num(b.PowerW), num(b.Wait.To60V), num(b.Wait.To50V), num(b.Wait.To5V), num(b.LabelTimeS), b.WithinFiveS}
 	}
 	out.addLists(p)
 	return out
@@ -120,6 +150,9 @@ func (out *dischargeJSON) addLists(p *safety.Plan) {
 	for _, c := range p.Cautions {
 		out.Cautions = append(out.Cautions, cautionJSON{c.ID, c.Text, orNull(c.Source), string(c.Read)})
 	}
+	for _, l := range p.Limits {
+		out.Limits = append(out.Limits, limitOf(l))
+	}
 	for _, n := range p.Needs {
 		out.Needs = append(out.Needs, wantedJSON{n.Key, []string{n.Why}})
 	}
@@ -133,109 +166,16 @@ func storeOf(d safety.StoreDischarge) storeJSON {
 		t60, t50, t5 := num(d.Wait.To60V), num(d.Wait.To50V), num(d.Wait.To5V)
 		out.CapacitanceF, out.EnergyJ, out.ChargeC, out.To60, out.To50, out.To5 = &c, &e, &q, &t60, &t50, &t5
 	}
-	return out
-}
-
-type missingJSON struct {
-	HoldPoint int    `json:"hold_point"`
-	Text      string `json:"text"`
-	Unlock    string `json:"unlock"`
-}
-
-func missingOf(missing []safety.Missing) []missingJSON {
-	out := []missingJSON{}
-	for _, m := range missing {
-		out = append(out, missingJSON{m.Point, m.Text, m.Unlock})
+	if u := d.Uneven; u != nil {
+		out.Uneven = &unevenJSON{num(u.Volt), num(u.EnergyJ), num(u.PeakCurrentA), num(u.Wait.To60V), num(u.Wait.To50V), num(u.Wait.To5V)}
 	}
 	return out
 }
 
-type checkJSON struct {
-	Point       string        `json:"point"`
-	Dead        bool          `json:"dead"`
-	DCV         *num          `json:"dc_v"`
-	ACV         *num          `json:"ac_v"`
-	MeterProved *bool         `json:"meter_proved"`
-	At          *string       `json:"at"`
-	AgeS        *num          `json:"age_s"`
-	ExpiresAt   *string       `json:"expires_at"`
-	Missing     []missingJSON `json:"missing"`
-}
-
-type isolationJSON struct {
-	Isolated  bool          `json:"isolated"`
-	Since     *string       `json:"since"`
-	Energised *string       `json:"energised"`
-	Missing   []missingJSON `json:"missing"`
-}
-
-type linkJSON struct {
-	Fitted  bool    `json:"fitted"`
-	Since   *string `json:"since"`
-	Removed *string `json:"removed"`
-}
-
-type statusJSON struct {
-	Case      string        `json:"case"`
-	At        *string       `json:"at"`
-	Answers   int           `json:"answers"`
-	Dead      bool          `json:"dead"`
-	Isolation isolationJSON `json:"isolation"`
-	Link      linkJSON      `json:"link"`
-	Points    []checkJSON   `json:"points"`
-	Unplaced  []string      `json:"unplaced"`
-	Outcome   *outcomeJSON  `json:"outcome"`
-}
-
-// StatusJSON writes where a case stands at one moment.
-func StatusJSON(w io.Writer, c *measure.Case, st safety.Status) error {
-	return writeJSON(w, statusOf(c, st))
-}
-
-func statusOf(c *measure.Case, st safety.Status) *statusJSON {
-	i, l := st.Isolation, st.Link
-	out := &statusJSON{Case: c.ID, At: instant(st.At), Answers: answered(c), Dead: st.Dead,
-		Isolation: isolationJSON{i.Isolated, instant(i.Since), instant(i.Energised), missingOf(i.Missing)},
-		Link:      linkJSON{l.Fitted, instant(l.Since), instant(l.Removed)}, Points: []checkJSON{}, Unplaced: list(st.Unplaced), Outcome: outcomeOf(c.Outcome)}
-	for _, p := range st.Points {
-		out.Points = append(out.Points, checkOf(p))
-	}
-	return out
-}
-
-func checkOf(p safety.PointStatus) checkJSON {
-	out := checkJSON{Point: p.Store.Point, Dead: p.Dead, Missing: missingOf(p.Missing)}
-	if d := p.Last; d != nil {
-		age := num(p.Age.Seconds())
-		out.DCV, out.ACV, out.MeterProved, out.At, out.AgeS, out.ExpiresAt = voltOf(d.DC), voltOf(d.AC), &d.MeterProved, instant(d.At), &age, instant(p.ExpiresAt)
-	}
-	return out
-}
-
-func voltOf(q quantity.Quantity) *num {
-	if q.Unit != quantity.Volt {
-		return nil
-	}
-	n := num(q.Value)
-	return &n
-}
-
-type outcomeJSON struct {
-	Faults      []string `json:"faults"`
-	Parts       []string `json:"parts"`
-	Stress      *string  `json:"stress"`
-	Causes      []string `json:"causes"`
-	ConfirmedBy *string  `json:"confirmed_by"`
-	Closed      *string  `json:"closed"`
-}
-
-func outcomeOf(o *measure.Outcome) *outcomeJSON {
-	if o == nil {
-		return nil
-	}
-	out := &outcomeJSON{list(o.Faults), list(o.Parts), orNull(o.Stress), list(o.Causes), orNull(o.ConfirmedBy), nil}
-	if !o.Closed.IsZero() {
-		out.Closed = orNull(o.Closed.Format("2006-01-02"))
+func limitOf(l safety.Limit) limitJSON {
+	out := limitJSON{Hazard: l.Hazard, Threshold: l.Threshold, Answers: l.Answers, Board: l.Board, Above: &l.Above, Applies: !l.Apart, Lowest: l.Lowest, Source: l.Source, Read: string(l.Read)}
+	if l.Unknown {
+		out.Above = nil
 	}
 	return out
 }
