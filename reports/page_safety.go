@@ -35,7 +35,31 @@ func (r Report) cautions() section {
 		items = append(items, c.Text+basisOf(c))
 	}
 	s.enumerate(false, items...)
+	if t := limitsTable(p.Limits); len(t.Rows) > 0 {
+		s.tabulate(t)
+	}
 	return s
+}
+
+// limitsTable holds the lines of all sources that are drawn for such a board side by side, with how each was read.
+func limitsTable(limits []safety.Limit) table {
+	t := table{Caption: "Limits, source by source; * the lowest for its hazard here, and gone by", Heads: []string{"Hazard", "Limit", "This board", "Stands", "Source", "Read"}}
+	for _, l := range limits {
+		if l.Apart {
+			continue
+		}
+		row := limitRow(l)
+		source := l.Source
+		if source == "" {
+			source = l.Short
+		}
+		hazard := l.Hazard
+		if l.Lowest {
+			hazard += " *"
+		}
+		t.Rows = append(t.Rows, []entry{{Text: hazard}, row[1], row[3], row[4], {Text: source}, row[5]})
+	}
+	return t
 }
 
 // logged is one entry of the safety log.

@@ -5,6 +5,8 @@ import (
 	"io"
 	"strings"
 
+	"drivemend/diagnose"
+	"drivemend/diagnose/safety"
 	"drivemend/knowledge"
 )
 
@@ -189,10 +191,32 @@ func writeLinks(s *screen, b *knowledge.Base, links []knowledge.Link) {
 	}
 }
 
+// standsBehind says which hold points keep a test, so that its how is not read as leave to do it.
+func standsBehind(t *knowledge.Test) string {
+	w := diagnose.WorkOf(t)
+	switch {
+	case t.Computed != "" || w.Need == safety.NeedQuestion:
+		return ""
+	case w.Need.Powered():
+		return "hold points 2 to 4: drivemend next gives it, and the session, once their conditions are kept"
+	}
+	return "hold points 0 to 2 and those of its instrument: drivemend next gives it, and the session, once they are kept"
+}
+
+// staticWords says which results every position has to show before power.
+func staticWords(t *knowledge.Test) string {
+	if len(t.Static) == 0 {
+		return ""
+	}
+	return "every position passes it before power: " + strings.Join(t.Static, " or ")
+}
+
 func writeTestRule(s *screen, b *knowledge.Base, t *knowledge.Test) {
 	s.ends(strong, t.ID, t.Title, testNote(*t)+", "+mins(t.Minutes))
 	s.item(strong, "ask", t.Ask)
 	s.item(strong, "how", t.How)
+	s.item(strong, "behind", standsBehind(t))
+	s.item(strong, "static", staticWords(t))
 	s.item(strong, "observes", t.Observes)
 	s.item(strong, "pattern of", t.PatternOf)
 	s.item(strong, "computed", t.Computed)

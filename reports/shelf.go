@@ -49,6 +49,9 @@ func writeKey(s *screen, k measure.Key) {
 }
 
 func kindWords(k measure.Key) string {
+	if k.Kind == measure.KindQuantity && k.Unit == quantity.Any {
+		return "number in the unit of the reading"
+	}
 	if k.Kind == measure.KindQuantity {
 		return "number in " + string(k.Unit)
 	}

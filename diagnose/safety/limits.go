@@ -73,12 +73,14 @@ func limits(h hazard) []Limit {
 	for _, t := range thresholds {
 		l := Limit{ID: t.id, Hazard: t.hazard, Threshold: t.text, Answers: t.answers,
 			Source: t.from.long, Short: t.from.short, Read: t.from.read, Lowest: h.lowest(t)}
-		switch t.by {
-		case byAC:
-			l.Unknown, l.Board = true, "no AC is stored"
-		case bySource:
+		switch {
+		case h.foreign(t):
+			l.Apart, l.Board = true, "no vehicle ("+h.in.Supply+")"
+		case t.by == byAC:
+			l.Unknown, l.Apart, l.Board = true, true, "no AC is stored"
+		case t.by == bySource:
 			h.holdSource(t, &l)
-		case byBattery:
+		case t.by == byBattery:
 			h.holdBattery(t, &l)
 		default:
 			h.holdStores(t, &l)
@@ -88,12 +90,21 @@ func limits(h hazard) []Limit {
 	return out
 }
 
+// foreign tells of a line about vehicles on a board that no battery feeds; one whose supply is not stated may be a
+// vehicle's.
+func (h hazard) foreign(t threshold) bool {
+	return (t.from == citeVehicles || t.from == citeCrashed) && h.in.Supply != "" && !h.battery()
+}
+
 // lowest tells whether no other line of the same hazard lies lower at some store of this board that the line reaches.
 func (h hazard) lowest(t threshold) bool {
+	if h.foreign(t) {
+		return false
+	}
 	for _, s := range h.in.Stores {
 		own, least := t.level(s.Voltage.Value), math.Inf(1)
 		for _, other := range thresholds {
-			if other.hazard == t.hazard {
+			if other.hazard == t.hazard && !h.foreign(other) {
 				least = min(least, other.level(s.Voltage.Value))
 			}
 		}
