@@ -14,13 +14,17 @@ func rebuiltBy(c *measure.Case, now time.Time) bool {
 }
 
 // afterRebuild parts the candidates once the board is rebuilt. Dead tests do not vote any more: of them only the checks
-// that must be done are left, and they save nothing. The static tests are asked anew, of the board as it now stands.
-func afterRebuild(all []Candidate, statics []safety.Static, open []openStatic) (voting, serving []Candidate) {
+// that must be done are left, and they save nothing. The static tests are asked anew, of the board as it now stands, and
+// so is whatever speaks for a fault since.
+func afterRebuild(all []Candidate, statics []safety.Static, open toRead) (voting, serving []Candidate) {
 	static := map[string]bool{}
 	for _, st := range statics {
 		static[st.Test] = true
 	}
-	serving = staticCandidates(open)
+	serving = staticCandidates(open.statics)
+	for _, f := range open.failing {
+		serving = append(serving, f.candidate())
+	}
 	for _, c := range all {
 		switch {
 		case c.Test.Needs != "dead":
@@ -40,8 +44,14 @@ func staticCandidates(open []openStatic) []Candidate {
 	asked := map[*knowledge.Test]bool{}
 	for _, o := range open {
 		c := Candidate{Test: o.test, Position: o.position, Must: true, Serves: true, Minutes: o.test.Minutes,
-			Deferred: o.worst.how == unsettled, Again: o.again()}
+			Static: true, Deferred: o.worst.how == unsettled, Again: o.again()}
+		for _, part := range o.lifted {
+			lifted := c
+			lifted.Part, lifted.Position, lifted.Lifted, lifted.Minutes = part, "", true, c.Minutes+liftMinutes
+			out = append(out, lifted)
+		}
 		switch {
+		case len(o.lifted) > 0 && len(o.lifted) == len(o.parts):
 		case o.test.Per == "" && asked[o.test]:
 		case o.test.Per == "":
 			asked[o.test], c.Position = true, ""

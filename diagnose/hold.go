@@ -17,28 +17,35 @@ func WorkOf(t *knowledge.Test) safety.Work {
 }
 
 // EvidenceOf reads out of the observations of a case what the hold points need of them: when energy was put into the
-// board, and how the static tests of every position stand. It judges the rebuilt board once the rebuild is done, else
+// board, how the static tests of every position stand, and which other readings since the rebuild speak for a fault. It judges the rebuilt board once the rebuild is done, else
 // the board as found, and knows no clock: that a reading has come to be is for the hold points to ask.
 func EvidenceOf(base *knowledge.Base, c *measure.Case) safety.Evidence {
 	if c == nil {
 		return safety.Evidence{}
 	}
-	var e safety.Evidence
-	e, _ = evidenceOf(base, c)
+	e, _ := evidenceOf(base, c)
 	return e
 }
 
+// toRead is what still has to be read at the rebuilt board before power.
+type toRead struct {
+	statics []openStatic
+	failing []openFailing
+}
+
 // evidenceOf is EvidenceOf, and what is left to be read.
-func evidenceOf(base *knowledge.Base, c *measure.Case) (safety.Evidence, []openStatic) {
+func evidenceOf(base *knowledge.Base, c *measure.Case) (safety.Evidence, toRead) {
 	e := safety.Evidence{Powered: poweredTimes(base, c)}
-	var open []openStatic
-	e.Statics, open = newStatics(base, c, e.Powered).judge()
+	var open toRead
+	s := newStatics(base, c, e.Powered)
+	e.Statics, open.statics = s.judge()
+	e.Failing, e.Mended, open.failing = s.failing()
 	return e, open
 }
 
-// poweredTimes gives the times at which a test of the case put energy into the board. A reading of a test that this
-// base does not know is taken as powered: nobody here can tell that it was not. An insulation tester leaves its voltage
-// behind, so that its readings count too (judgement).
+// poweredTimes gives the times at which a test of the case put energy into the board. What a test that this base does
+// not know showed, a reading or a result with its time, is taken as powered: nobody here can tell that it was not. An
+// insulation tester leaves its voltage behind, so that its readings count too (judgement).
 func poweredTimes(base *knowledge.Base, c *measure.Case) []time.Time {
 	powers := map[string]bool{}
 	for i := range base.Tests {
@@ -49,7 +56,7 @@ func poweredTimes(base *knowledge.Base, c *measure.Case) []time.Time {
 	for i := range c.Observations {
 		ob := &c.Observations[i]
 		does, known := powers[ob.Test]
-		if ob.Answer == "" && (does || !known && ob.Reading != nil) {
+		if ob.Answer == "" && (does || !known && (ob.Reading != nil || ob.Result != "" && !ob.At.IsZero())) {
 			times = append(times, ob.At)
 		}
 	}

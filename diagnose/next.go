@@ -23,7 +23,8 @@ type Candidate struct {
 	Lifted         bool    // take the part's reading with a lead lifted
 	Must           bool    // a check that stands until it is done
 	Serves         bool    // a dead test after the rebuild: it serves the hold points, does not vote and saves nothing
-	Again          string  // a static test that was read and did not pass: what was read, and what to do
+	Static         bool    // a test that every position passes before power: it has to be read, and right
+	Again          string  // a dead test that was read after the rebuild and stands against power: what was read, and what to do
 	Deferred       bool    // put off by the technician; comes after the rest
 	Value          float64 // minutes saved, net of the test's own minutes and hazard price
 	Bits           float64 // expected information about the causes
@@ -120,7 +121,7 @@ type gates struct {
 	c        *measure.Case
 	now      time.Time
 	evidence safety.Evidence
-	open     []openStatic // the static tests of it that are open
+	open     toRead // what of it stands against power
 	seen     map[safety.Work]safety.Decision
 }
 

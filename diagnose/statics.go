@@ -2,6 +2,7 @@ package diagnose
 
 import (
 	"fmt"
+	"sort"
 	"strings"
 	"time"
 
@@ -38,13 +39,15 @@ type openStatic struct {
 	test     *knowledge.Test
 	position string
 	parts    []string // the parts that are open
+	lifted   []string // those of them that were read lifted and failed: their bank in circuit cannot clear them
 	worst    verdict  // of what was read; it passes when a part was only not read
 }
 
-// staticPlace is what a static reading was taken of: a part, a bank as a whole, or the board as a whole.
+// staticPlace is what a dead reading was taken of: a part, a bank as a whole, or the board as a whole.
 type staticPlace struct {
 	test       string
-	bank, part int // -1: as a whole
+	bank, part int    // -1: as a whole
+	name       string // "" unless the reading names a place that the board does not have, or not which one
 }
 
 // statics judges the static tests of a board on the readings taken since its rebuild.
@@ -55,12 +58,14 @@ type statics struct {
 	rebuilt   bool
 	tests     []*knowledge.Test
 	positions []measure.Position
-	newest    map[staticPlace]int // index of the newest observation at each place
-	verdicts  map[int]verdict     // of each observation that was asked about
+	base      *knowledge.Base
+	readings  map[staticPlace][]int // the observations at each place, the oldest first
+	placeOf   map[int]staticPlace   // of each of them
+	verdicts  map[int]verdict       // of each observation that was asked about
 }
 
 func newStatics(base *knowledge.Base, c *measure.Case, powered []time.Time) *statics {
-	s := &statics{c: c, board: c.Board, newest: map[staticPlace]int{}, verdicts: map[int]verdict{}}
+	s := &statics{c: c, board: c.Board, base: base, readings: map[staticPlace][]int{}, placeOf: map[int]staticPlace{}, verdicts: map[int]verdict{}}
 	if s.rebuilt = c.Rebuild != nil && !c.Rebuild.Done.IsZero(); s.rebuilt {
 		s.board = c.Rebuild.Board
 	}
@@ -74,7 +79,7 @@ func newStatics(base *knowledge.Base, c *measure.Case, powered []time.Time) *sta
 	if s.rebuilt {
 		s.gather()
 		s.held = newHeld(c, powered)
-		for place, i := range s.newest {
+		for i, place := range s.placeOf {
 			s.held.note(WorkOf(base.Test(place.test)), c.Observations[i].At)
 		}
 	}
@@ -87,12 +92,9 @@ func (v *view) hasEvent(id string) bool {
 	return e != nil && v.applies(e.Applies)
 }
 
-// gather notes the newest reading at each place. A time decides, of equal ones the later entry.
+// gather lists the readings of dead tests at each place, the oldest first: a time decides, of equal ones the later entry.
 func (s *statics) gather() {
-	tests, banks, parts := map[string]*knowledge.Test{}, map[string]int{}, map[string][2]int{}
-	for _, t := range s.tests {
-		tests[t.ID] = t
-	}
+	tests, banks, parts := s.deadTests(), map[string]int{}, map[string][2]int{}
 	for b, p := range s.positions {
 		banks[p.Name] = b
 		for i, name := range p.Parts {
@@ -106,23 +108,48 @@ func (s *statics) gather() {
 			continue
 		}
 		place, ok := s.place(t, ob, banks, parts)
-		if j, seen := s.newest[place]; ok && (!seen || !ob.At.Before(s.c.Observations[j].At)) {
-			s.newest[place] = i
+		if !ok {
+			place.name = strings.Join([]string{ob.Position, ob.Part, ob.State}, "/")
+		}
+		s.placeOf[i] = place
+		s.readings[place] = append(s.readings[place], i)
+	}
+	for _, list := range s.readings {
+		s.inOrder(list)
+	}
+}
+
+// deadTests gives the tests of a dead board that observe something.
+func (s *statics) deadTests() map[string]*knowledge.Test {
+	tests := map[string]*knowledge.Test{}
+	for i := range s.base.Tests {
+		if t := &s.base.Tests[i]; t.Needs == "dead" && t.Observes != "" {
+			tests[t.ID] = t
 		}
 	}
+	return tests
+}
+
+// inOrder puts observations into the order of their times, those of one moment into that of their entry.
+func (s *statics) inOrder(list []int) {
+	sort.Slice(list, func(a, b int) bool {
+		i, j := list[a], list[b]
+		x, y := s.c.Observations[i].At, s.c.Observations[j].At
+		return x.Before(y) || x.Equal(y) && i < j
+	})
 }
 
 // place gives what a reading was taken of. Leads on a part in circuit read its whole bank. A reading that names no
 // place is of the only position, or of the board; a part that the board does not have, a lifted one that is not named,
 // and a position nobody named on a board with several say nothing.
 func (s *statics) place(t *knowledge.Test, ob *measure.Observation, banks map[string]int, parts map[string][2]int) (staticPlace, bool) {
-	whole := staticPlace{t.ID, -1, -1}
+	whole := staticPlace{test: t.ID, bank: -1, part: -1}
 	if ob.Part != "" {
 		at, known := parts[ob.Part]
 		if t.Per == "part" && (!atTerminals(t) || ob.State == "lifted") {
-			return staticPlace{t.ID, at[0], at[1]}, known
+			return staticPlace{test: t.ID, bank: at[0], part: at[1]}, known
 		}
-		return staticPlace{t.ID, at[0], -1}, known
+		return staticPlace{test: t.ID, bank: at[0], part: -1}, known
 	}
 	b, known := banks[ob.Position]
 	switch {
@@ -132,7 +159,7 @@ func (s *statics) place(t *knowledge.Test, ob *measure.Observation, banks map[st
 		return whole, t.Per == ""
 	}
 	unnamed := t.Per == "part" && ob.State == "lifted" && len(s.positions[b].Parts) > 1
-	return staticPlace{t.ID, b, -1}, !unnamed
+	return staticPlace{test: t.ID, bank: b, part: -1}, !unnamed
 }
 
 // judge gives every static test of every position, position by position, and those that are open.
@@ -158,7 +185,7 @@ func (s *statics) one(b int, t *knowledge.Test) (safety.Static, openStatic) {
 	st := safety.Static{Test: t.ID, Title: t.Title, Position: p.Name}
 	left := openStatic{test: t, position: p.Name}
 	if !s.rebuilt {
-		st.Because, left.parts = "no rebuild is entered as done", p.Parts
+		st.Because, left.parts = "no rebuild is entered as done, and a reading before rebuild.done does not count", p.Parts
 		return st, left
 	}
 	var wrong, missing []string
@@ -178,7 +205,17 @@ func (s *statics) one(b int, t *knowledge.Test) (safety.Static, openStatic) {
 	}
 	whole := bank >= 0 && !read(bank)
 	for i := range p.Parts {
+		failed := s.stands(t, p, b, i)
 		switch own := s.newer(bank, s.part(t, b, i)); {
+		case failed >= 0:
+			read(failed)
+			if own == bank {
+				wrong = appendNew(wrong, "a later reading of its bank in circuit does not clear it, read the part lifted")
+			}
+			left.parts = append(left.parts, p.Parts[i])
+			if atTerminals(t) {
+				left.lifted = append(left.lifted, p.Parts[i])
+			}
 		case own >= 0 && own != bank && !read(own):
 			left.parts = append(left.parts, p.Parts[i])
 		case own < 0:
@@ -187,6 +224,9 @@ func (s *statics) one(b int, t *knowledge.Test) (safety.Static, openStatic) {
 	}
 	if whole {
 		left.parts = p.Parts
+	}
+	if len(left.lifted) == 1 && len(left.parts) == 1 {
+		st.Part, st.Lifted = left.lifted[0], true
 	}
 	switch {
 	case len(missing) == len(p.Parts):
@@ -219,8 +259,24 @@ func appendNew(list []string, text string) []string {
 
 // at gives the newest observation at a place, -1 without one.
 func (s *statics) at(t *knowledge.Test, bank, part int) int {
-	if i, ok := s.newest[staticPlace{t.ID, bank, part}]; ok {
-		return i
+	list := s.readings[staticPlace{test: t.ID, bank: bank, part: part}]
+	if len(list) == 0 {
+		return -1
+	}
+	return list[len(list)-1]
+}
+
+// stands gives the reading of a part by itself that failed and has not been followed by one that passes; -1 without one.
+// A bank read in circuit does not answer it: it cannot see a part with its lead up.
+func (s *statics) stands(t *knowledge.Test, p *measure.Position, bank, part int) int {
+	list := s.readings[staticPlace{test: t.ID, bank: bank, part: part}]
+	for k := len(list) - 1; k >= 0 && t.Per == "part"; k-- {
+		switch s.verdict(t, p, list[k]).how {
+		case passes:
+			return -1
+		case fails:
+			return list[k]
+		}
 	}
 	return -1
 }

@@ -210,7 +210,7 @@ func TestPoweredTimes(t *testing.T) {
 	base := loadBase(t)
 	c := caseOf(t, chopper, "", "fan-turns, result: turns, at: 2026-12-01T10:00:00+01:00", "driver-supply, result: low, at: 2026-12-01T11:00:00+01:00", "no-such-test, result: good, at: 2026-12-01T12:00:00+01:00")
 	times := poweredTimes(base, c)
-	if len(times) != 1 || times[0].UTC().Hour() != 10 {
-		t.Errorf("powered at %v, want 11:00 at the bench only", times)
+	if len(times) != 2 || times[0].UTC().Hour() != 10 || times[1].UTC().Hour() != 11 {
+		t.Errorf("powered at %v, want 11:00, and 12:00 of the unknown test", times)
 	}
 }

@@ -44,10 +44,17 @@ func (d *decoder) decode(m *merge) {
 	}{{"stresses", Stress}, {"faults", Fault}, {"signs", Sign}} {
 		for _, e := range m.entries[l.list] {
 			d.base.Events = append(d.base.Events, d.event(e, l.layer))
+			if below, replaces := m.below[l.list+" "+e.id]; replaces {
+				d.later = append(d.later, func() { d.keepsEvent(e, below, l.layer) })
+			}
 		}
 	}
 	for _, e := range m.entries["tests"] {
-		d.base.Tests = append(d.base.Tests, d.test(e))
+		t := d.test(e)
+		if below, replaces := m.below["tests "+e.id]; replaces && d.rows[e.id].sound {
+			d.keepsTest(e, below, &t)
+		}
+		d.base.Tests = append(d.base.Tests, t)
 	}
 	for _, e := range m.entries["repairs"] {
 		d.base.Repairs = append(d.base.Repairs, d.repair(e))

@@ -141,7 +141,8 @@ func isNull(n *yaml.Node) bool { return n.Kind == yaml.ScalarNode && n.ShortTag(
 type merge struct {
 	*collector
 	entries map[string][]entry
-	at      map[string]int // place of an entry in its list, by "list id"
+	at      map[string]int   // place of an entry in its list, by "list id"
+	below   map[string]entry // the first entry of an id that another one has taken the place of, by "list id"
 }
 
 // entry is one entry of a list and its id.
@@ -151,7 +152,7 @@ type entry struct {
 }
 
 func newMerge(faults *collector) *merge {
-	return &merge{faults, map[string][]entry{}, map[string]int{}}
+	return &merge{faults, map[string][]entry{}, map[string]int{}, map[string]entry{}}
 }
 
 // kebab is the form of every id: words of small letters and digits with hyphens between them.
@@ -179,6 +180,9 @@ func (m *merge) add(list, file string, raw []byte) {
 func (m *merge) put(list string, e entry) {
 	key := list + " " + e.id
 	if i, known := m.at[key]; known {
+		if _, twice := m.below[key]; !twice {
+			m.below[key] = m.entries[list][i]
+		}
 		m.entries[list][i] = e
 		return
 	}

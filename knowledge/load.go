@@ -38,7 +38,8 @@ func Load() (*Base, error) { return load(embeddedLayer()) }
 
 // LoadWith gives the embedded base with the files of a folder laid over it: an entry with a known id takes the
 // place of the old one, a new id is added at the end. The folder may hold any of the files of a base; a folder
-// without any, or with a YAML file of another name, is an error. Errors are as for Load.
+// without any, or with a YAML file of another name, is an error, and so is an entry that would let a step past a hold
+// point before which the built-in one stood. Errors are as for Load.
 func LoadWith(dir string) (*Base, error) {
 	return load(embeddedLayer(), layer{name: dir, fsys: os.DirFS(dir)})
 }

@@ -11,18 +11,19 @@ func TestStaticTestsOfTheBase(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	chopper := []string{"power-terminals-resistance bleeder", "gate-resistance good", "freewheel-diode-drop normal", "freewheel-path-check closed"}
-	leg := []string{"power-terminals-resistance bleeder", "gate-resistance good", "reverse-diode-drop normal"}
-	all := []string{"power-terminals-resistance bleeder", "gate-resistance good", "reverse-diode-drop normal", "freewheel-diode-drop normal", "freewheel-path-check closed"}
+	chopper := []string{"power-terminals-resistance bleeder", "gate-resistance good", "freewheel-diode-drop normal", "freewheel-path-check closed", "gate-pull-down present"}
+	leg := []string{"power-terminals-resistance bleeder", "gate-resistance good", "reverse-diode-drop normal", "gate-pull-down present"}
+	all := []string{"power-terminals-resistance bleeder", "gate-resistance good", "reverse-diode-drop normal", "freewheel-diode-drop normal", "freewheel-path-check closed", "gate-pull-down present"}
 	for _, c := range []struct {
 		stated map[string]string
 		want   []string
 	}{
 		{map[string]string{"topology": "low-side-chopper"}, chopper},
 		{map[string]string{"topology": "high-side-chopper", "freewheel.fitted": "yes"}, chopper},
-		{map[string]string{"topology": "low-side-chopper", "freewheel.fitted": "no"}, chopper[:2]},
+		{map[string]string{"topology": "low-side-chopper", "freewheel.fitted": "no"}, []string{chopper[0], chopper[1], chopper[4]}},
 		{map[string]string{"topology": "half-bridge"}, leg},
 		{map[string]string{"topology": "h-bridge"}, leg},
+		{map[string]string{"topology": "h-bridge", "gate.pull_down": "none"}, leg[:3]},
 		{map[string]string{"topology": "three-phase"}, leg},
 		{map[string]string{"topology": "other"}, all},
 		{nil, all}, // what is not stated counts as applying

@@ -27,6 +27,7 @@ func (d *decoder) test(e entry) Test {
 	d.testResults(f, &t, rows)
 	d.testLinks(f, &t)
 	d.testGaps(f, &t)
+	d.testWork(e, f, &t)
 	d.testStatic(f, &t)
 	rows.at, rows.sound = e.spot, len(d.list) == before
 	d.rows[e.id] = rows

@@ -10,6 +10,7 @@ import (
 	"strings"
 	"testing"
 
+	"github.com/rogpeppe/go-internal/txtar"
 	"github.com/santhosh-tekuri/jsonschema/v6"
 	"gopkg.in/yaml.v3"
 )
@@ -147,22 +148,42 @@ func editorReads(raw []byte) (any, bool) {
 	return generic(&doc)
 }
 
-// TestSchemaAgrees proves for every case file at hand that loader and schema agree, and that the list of faults that
-// no schema sees is no longer than it must be.
+// casePlaces are where case files stand in the tree.
+var casePlaces = []string{"../testdata/cases/*.yaml", "../testdata/full-case.yaml", "../testdata/older-cases/*.yaml", "testdata/*.yaml",
+	"../testdata/broken-cases/*.yaml", "../reports/testdata/*.yaml", "../cmd/drivemend/demo/*.yaml", "../diagnose/safety/testdata/*.yaml"}
+
+// TestSchemaAgrees proves for every case file at hand, also for those inside the scripts, that loader and schema agree,
+// and that the list of faults that no schema sees is no longer than it must be.
 func TestSchemaAgrees(t *testing.T) {
 	s := compiledSchema(t)
 	listed := map[string]bool{}
-	for _, pattern := range []string{"../testdata/cases/*.yaml", "../testdata/full-case.yaml", "../testdata/older-cases/*.yaml",
-		"testdata/*.yaml", "../testdata/broken-cases/*.yaml"} {
-		paths, err := filepath.Glob(pattern)
-		if err != nil || len(paths) == 0 {
-			t.Fatalf("no files %s", pattern)
-		}
-		for _, path := range paths {
+	for _, pattern := range casePlaces {
+		for _, path := range filesOf(t, pattern) {
+			raw, err := os.ReadFile(path)
+			if err != nil {
+				t.Fatal(err)
+			}
 			if name := filepath.Base(path); name != "labels.yaml" {
-				agree(t, s, path, listed)
+				agree(t, s, path, name, raw, listed)
 			}
 		}
+	}
+	scripted := 0
+	for _, path := range filesOf(t, "../testdata/scripts/*.txtar") {
+		archive, err := txtar.ParseFile(path)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, f := range archive.Files {
+			if isCase.Match(f.Data) {
+				scripted++
+				name := filepath.Base(path) + "/" + f.Name
+				agree(t, s, name, name, f.Data, listed)
+			}
+		}
+	}
+	if scripted < 20 {
+		t.Errorf("only %d cases stand in the scripts", scripted)
 	}
 	for name := range beyondSchema {
 		if !listed[name] {
@@ -171,14 +192,22 @@ func TestSchemaAgrees(t *testing.T) {
 	}
 }
 
-// agree compares loader and schema on one file.
-func agree(t *testing.T, s *jsonschema.Schema, path string, listed map[string]bool) {
+// isCase finds the cases among the files of a script: they begin a line with the version of the form.
+var isCase = regexp.MustCompile(`(?m)^drivemend:`)
+
+// filesOf gives the files of a pattern; none is a fault of the test.
+func filesOf(t *testing.T, pattern string) []string {
 	t.Helper()
-	raw, err := os.ReadFile(path)
-	if err != nil {
-		t.Fatal(err)
+	paths, err := filepath.Glob(pattern)
+	if err != nil || len(paths) == 0 {
+		t.Fatalf("no files %s", pattern)
 	}
-	name := filepath.Base(path)
+	return paths
+}
+
+// agree compares loader and schema on one file.
+func agree(t *testing.T, s *jsonschema.Schema, path, name string, raw []byte, listed map[string]bool) {
+	t.Helper()
 	_, loads := Parse(name, raw)
 	var refused error
 	v, ok := editorReads(raw)

@@ -92,7 +92,7 @@ func beforeKeys() []Key {
 		yes("shield", "double pulse: a shield stands over the board"),
 		yes("electronics_disconnected", "insulation tester: the electronics are disconnected from what is tested"),
 		yes("sources_off", "injection: every other source is off"),
-		yes("gates_held", "injection: every gate is held to its emitter or source"),
+		yes("gates_held", "injection: every gate that is not under test is held to its emitter or source"),
 		yes("limit_set", "injection: current and voltage limit were set before connecting"),
 		yes("attended", "injection: somebody stays with it"),
 		word(at+"probe", "scope: what the probe's reference is", "differential", "isolated-input", "earth-clip").

@@ -16,6 +16,8 @@ type Beside struct {
 	Safety  *safety.Status    // for a dead board of which no test is left; at the moment of the suggestion
 	Outside []Outside         // for the mark of readings taken outside their hold points
 	Case    *measure.Case     // for the conditions stated before a step, and for readings that are lower bounds
+	// Record is how the steps of the record stand at the moment of the suggestion, for those that stand open.
+	Record []safety.RecordStatus
 }
 
 // beside is what a report knows beside each of its results.

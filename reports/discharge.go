@@ -11,28 +11,31 @@ import (
 	"drivemend/measure/quantity"
 )
 
-// Discharge prints how the board is made dead: the energy, the resistor, the times, the steps, the cautions, and at the end
-// the limits of every source side by side. Of a plan that must not be carried out it prints why, and neither resistor nor
-// times nor steps.
+// Discharge prints how the board is made dead. What is done stands at the end, where a terminal stops scrolling, with the
+// cautions right above it; the figures, and the limits of every source side by side, come first. Of a plan that must not
+// be carried out it prints why, and neither resistor nor times nor steps.
 func Discharge(w io.Writer, p *safety.Plan, style Style) error {
 	s := newScreen(style)
 	s.head("STORED", storedTotal(p))
 	s.grid(chargeColumns, chargeRows(p))
 	writeTaken(s, p)
-	if len(p.Withheld) > 0 {
-		s.hang(danger, "WITHHELD  ", "the steps of this discharge")
-		writeMissing(s, p.Withheld)
-	} else {
+	withheld := len(p.Withheld) > 0
+	if !withheld {
 		writeResistor(s, p)
 		writeTimes(s, p)
-		writeSteps(s, p)
 	}
+	writeWanted(s, p.Needs)
+	writeLimits(s, p.Limits)
 	s.head("CAUTION", "")
 	for _, c := range p.Cautions {
 		s.hang(caution, " ! ", c.Text+basisOf(c))
 	}
-	writeLimits(s, p.Limits)
-	writeWanted(s, p.Needs)
+	if withheld {
+		s.hang(danger, "WITHHELD  ", "the steps of this discharge")
+		writeMissing(s, p.Withheld)
+	} else {
+		writeSteps(s, p)
+	}
 	return s.write(w)
 }
 

@@ -49,6 +49,7 @@ func hostile(t *testing.T) Report {
 	r.Ranking.Faults[0].Parts = []diagnose.PartChance{{Part: all, Probability: 0.5}}
 	r.Ranking.Findings[0].Shown, r.Ranking.Findings[0].Part = all, all
 	r.Margin.Case = all
+	r.OutsideSteps = []OutsideStep{{0, []safety.Missing{{Point: 3, Text: all + "; " + all + "; " + all, Unlock: all}}}}
 	return r
 }
 

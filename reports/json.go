@@ -12,6 +12,7 @@ import (
 	"unicode"
 
 	"drivemend/diagnose"
+	"drivemend/diagnose/safety"
 	"drivemend/diagnose/stress"
 	"drivemend/knowledge"
 	"drivemend/measure"
@@ -260,6 +261,7 @@ type nextJSON struct {
 	Tests    []testJSON `json:"tests"`
 	Stop     *stopJSON  `json:"stop"`
 	Withheld bool       `json:"withheld"`
+	Steps    []string   `json:"open_steps"` // of the record, those that may be done now
 }
 
 // NextJSON writes the tests in order of value, and why to stop. Repairs are named as on the terminal: none while
@@ -272,7 +274,7 @@ func nextOf(n *diagnose.Suggestion, known Beside) *nextJSON {
 	if n == nil {
 		return nil
 	}
-	out := &nextJSON{Case: n.Case, At: instant(n.At), PriceMin: num(n.Price), Repairs: list(n.Repair), Withheld: n.Withheld(), Tests: []testJSON{}}
+	out := &nextJSON{Case: n.Case, At: instant(n.At), PriceMin: num(n.Price), Repairs: list(n.Repair), Withheld: n.Withheld(), Tests: []testJSON{}, Steps: list(openSteps(known.Record))}
 	if before := repairHeld(n, known); before != "" && len(n.Repair) > 0 {
 		out.Repairs, out.Held = []string{}, &before
 	}
@@ -288,7 +290,7 @@ func nextOf(n *diagnose.Suggestion, known Beside) *nextJSON {
 func testOf(c diagnose.Candidate) testJSON {
 	w := diagnose.WorkOf(c.Test)
 	return testJSON{ID: c.Test.ID, Title: c.Test.Title, Part: orNull(c.Part), Position: orNull(c.Position), Lifted: c.Lifted,
-		ValueMin: num(c.Value), Bits: num(c.Bits), Minutes: num(c.Minutes), Needs: c.Test.Needs, Tool: orNull(string(w.Tool)), Carries: list(carriesOf(w)),
+		ValueMin: num(c.Value), Bits: num(c.Bits), Minutes: num(c.Minutes), Needs: c.Test.Needs, Tool: orNull(string(w.Tool)), Carries: list(safety.Carries(w)),
 		Must: c.Test.Must, Serves: c.Serves, Again: orNull(c.Again), Allowed: c.Allowed, BlockedBy: list(c.BlockedBy), UnlockedBy: list(c.UnlockedBy)}
 }
 

@@ -63,6 +63,10 @@ type entryJSON struct {
 	At     *string `json:"at"`
 	By     *string `json:"by"`
 	Note   *string `json:"note"`
+	// Superseded tells that another entry of the same step counts instead, or that this one does not count yet.
+	Superseded bool          `json:"superseded"`
+	Outside    bool          `json:"outside_hold_point"`
+	Missing    []missingJSON `json:"missing"` // at the hold point, when it was done
 }
 
 type conditionsJSON struct {
@@ -124,11 +128,22 @@ func jobOf(r Report) jobJSON {
 	for _, x := range c.Captures {
 		out.Captures = append(out.Captures, captureOf(x))
 	}
-	for _, x := range c.Steps {
-		out.Steps = append(out.Steps, entryJSON{x.Step, x.Result, instant(x.At), orNull(r.who(x.By)), orNull(x.Note)})
+	for i := range c.Steps {
+		out.Steps = append(out.Steps, r.entryOf(i))
 	}
 	for _, x := range c.Safety.Before {
 		out.Conditions = append(out.Conditions, conditionsOf(x))
+	}
+	return out
+}
+
+// entryOf is one entry of the record with what is to be said of it.
+func (r Report) entryOf(i int) entryJSON {
+	x := r.Case.Steps[i]
+	out := entryJSON{Step: x.Step, Result: x.Result, At: instant(x.At), By: orNull(r.who(x.By)), Note: orNull(x.Note),
+		Superseded: r.resultWords(i) != stepName(x.Result), Missing: []missingJSON{}}
+	if o := r.outsideStep(i); o != nil {
+		out.Outside, out.Missing = true, missingOf(o.Missing)
 	}
 	return out
 }

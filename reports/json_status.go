@@ -59,6 +59,7 @@ type statusJSON struct {
 	Link      linkJSON      `json:"link"`
 	Points    []checkJSON   `json:"points"`
 	Unplaced  []string      `json:"unplaced"`
+	Spared    []string      `json:"spared"` // stores that need no check now, and why
 	Outcome   *outcomeJSON  `json:"outcome"`
 }
 
@@ -67,7 +68,7 @@ func statusOf(c *measure.Case, st safety.Status) *statusJSON {
 	i, l := st.Isolation, st.Link
 	out := &statusJSON{Case: c.ID, At: instant(st.At), Answers: answered(c), Dead: st.Dead, Alarms: list(st.Alarms),
 		Isolation: isolationJSON{i.Isolated, instant(i.Since), isolationStated(i), isolationAge(i), instant(i.Energised), missingOf(i.Missing)},
-		Link:      linkJSON{l.Fitted, instant(l.Since), instant(l.Removed)}, Points: []checkJSON{}, Unplaced: list(st.Unplaced), Outcome: outcomeOf(c.Outcome)}
+		Link:      linkJSON{l.Fitted, instant(l.Since), instant(l.Removed)}, Points: []checkJSON{}, Unplaced: list(st.Unplaced), Spared: list(st.Spared), Outcome: outcomeOf(c.Outcome)}
 	for _, p := range st.Points {
 		out.Points = append(out.Points, checkOf(p))
 	}
@@ -120,16 +121,18 @@ type pageJSON struct {
 	Works   []workJSON    `json:"works"`
 	Record  []recordJSON  `json:"record"`
 	Outside []outsideJSON `json:"outside"`
-	Open    []openJSON    `json:"open"`
-	Needs   []needJSON    `json:"needs"`
-	Stated  int           `json:"stated"`  // values of the board
-	Assumed int           `json:"assumed"` // of the stated ones
+	// OutsideSteps are entries of the record done outside their hold points.
+	OutsideSteps []outsideStepJSON `json:"outside_steps"`
+	Open         []openJSON        `json:"open"`
+	Needs        []needJSON        `json:"needs"`
+	Stated       int               `json:"stated"`  // values of the board
+	Assumed      int               `json:"assumed"` // of the stated ones
 }
 
 // StatusJSON writes where a case stands at one moment, with the same content as the screen and everything that is
 // missing.
 func StatusJSON(w io.Writer, p StatusPage) error {
-	out := pageJSON{statusJSON: statusOf(p.Case, p.Safety), Works: []workJSON{}, Record: recordOf(p.Record), Outside: outsideOf(p.Case, p.Outside),
+	out := pageJSON{statusJSON: statusOf(p.Case, p.Safety), Works: []workJSON{}, Record: recordOf(p.Record), Outside: outsideOf(p.Case, p.Outside), OutsideSteps: outsideStepsOf(p.Case, p.OutsideSteps),
 		Open: []openJSON{}, Needs: needsJSON(p.Needs), Stated: p.Stated, Assumed: p.Assumed}
 	for _, x := range p.Works {
 		d := x.Decision
@@ -158,6 +161,22 @@ func outsideOf(c *measure.Case, readings []Outside) []outsideJSON {
 	for _, x := range readings {
 		if x.Observation >= 0 && x.Observation < len(c.Observations) {
 			out = append(out, outsideJSON{x.Observation, c.Observations[x.Observation].Test, missingOf(x.Missing)})
+		}
+	}
+	return out
+}
+
+type outsideStepJSON struct {
+	Entry   int           `json:"entry"`
+	Step    string        `json:"step"`
+	Missing []missingJSON `json:"missing"`
+}
+
+func outsideStepsOf(c *measure.Case, steps []OutsideStep) []outsideStepJSON {
+	out := []outsideStepJSON{}
+	for _, x := range steps {
+		if x.Entry >= 0 && x.Entry < len(c.Steps) {
+			out = append(out, outsideStepJSON{x.Entry, c.Steps[x.Entry].Step, missingOf(x.Missing)})
 		}
 	}
 	return out

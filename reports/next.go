@@ -35,6 +35,7 @@ func Next(w io.Writer, base *knowledge.Base, n *diagnose.Suggestion, plan *safet
 	default:
 		s.hang(strong, "STOP  ", "no test is left that saves more minutes than it costs")
 	}
+	writeMayBeDone(s, n, plan, known)
 	writeRepairs(s, base, n, known)
 	writeLocked(s, n)
 	s.say(neutral, "At "+moment(n.At)+".")
@@ -65,6 +66,7 @@ func writeTest(s *screen, base *knowledge.Base, c diagnose.Candidate, plan *safe
 		s.item(caution, "again", c.Again)
 	}
 	s.item(strong, "why", whyNow(c))
+	writeEnter(s, c)
 }
 
 // worth is the minutes of a test and what it saves: "6 min, saves about 40".
@@ -80,8 +82,14 @@ func worth(c diagnose.Candidate) string {
 }
 
 func whyNow(c diagnose.Candidate) string {
-	if c.Serves {
-		return "the board is rebuilt: this has to be read anew, and right, before power goes on; it tells nothing more about the cause"
+	const rebuilt, silent = "the board is rebuilt: ", "; it tells nothing more about the cause"
+	switch {
+	case c.Serves && c.Static:
+		return rebuilt + "this has to be read anew, and right, before power goes on" + silent
+	case c.Serves && c.Again != "":
+		return rebuilt + "this was read since, and no power goes on until it reads right" + silent
+	case c.Serves:
+		return rebuilt + "this check was never done; power does not wait for it, but goes on no more once it reads wrong" + silent
 	}
 	text := fmt.Sprintf("tells %.2f bit about the cause", c.Bits)
 	if c.Value > 0 {
@@ -213,10 +221,11 @@ func writeLocked(s *screen, n *diagnose.Suggestion) {
 				s.item(neutral, "", "and "+count(len(g.why)-i, "thing more", "things more")+" (drivemend next --json lists all)")
 				break
 			}
-			s.item(neutral, "because", why)
-			if i < len(g.unlock) && g.unlock[i] != "" {
-				s.item(mandatory, "do this", g.unlock[i])
+			unlock := ""
+			if i < len(g.unlock) {
+				unlock = g.unlock[i]
 			}
+			writeLack(s, "because", lackOf(why, unlock))
 		}
 	}
 	if quiet > 0 {
@@ -289,22 +298,4 @@ func lockedGroups(n *diagnose.Suggestion) []lockedGroup {
 		groups[k].tests = append(groups[k].tests, c)
 	}
 	return groups
-}
-
-// Withheld prints which hold points withhold an instruction, and what to do about each.
-func Withheld(w io.Writer, what string, missing []safety.Missing, at time.Time, style Style) error {
-	s := newScreen(style)
-	s.hang(danger, "WITHHELD  ", what)
-	writeMissing(s, missing)
-	s.say(neutral, "At "+moment(at)+". Local codes and licensed practice come first.")
-	return s.write(w)
-}
-
-func writeMissing(s *screen, missing []safety.Missing) {
-	for _, m := range missing {
-		s.item(caution, "point "+strconv.Itoa(m.Point), m.Text)
-		if m.Unlock != "" {
-			s.item(mandatory, "do this", m.Unlock)
-		}
-	}
 }

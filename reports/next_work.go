@@ -54,14 +54,9 @@ func writeConditions(s *screen, known Beside, w safety.Work, at time.Time, plan 
 	if w.Need != safety.NeedQuestion && plan != nil {
 		s.item(caution, "caution", storedWords(plan, w.Need))
 	}
-	for _, text := range carriesOf(w) {
+	for _, text := range safety.Carries(w) {
 		s.item(caution, "caution", text)
 	}
-}
-
-// carriesOf gives what the instruction for a work always carries with it, on whatever case.
-func carriesOf(w safety.Work) []string {
-	return safety.Check(nil, w, time.Time{}, safety.Evidence{}).Carries
 }
 
 func storedWords(p *safety.Plan, need safety.Need) string {

@@ -145,9 +145,11 @@ func (r Report) openTests() section {
 	return s
 }
 
+const leftOutTitle = "Observations that do not count"
+
 // leftOut lists every observation that takes no part in the ranking, and why; none is dropped.
 func (r Report) leftOut() section {
-	s := section{ID: "left-out", Title: "Observations that do not count"}
+	s := section{ID: "left-out", Title: leftOutTitle}
 	var rows [][]entry
 	named := map[int]bool{}
 	add := func(i int, why string) {

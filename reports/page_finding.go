@@ -21,7 +21,7 @@ func (r Report) finding() section {
 	s := section{ID: "finding", Title: "How sure the cause is, and what we ask for"}
 	switch state := r.findingState(); state {
 	case "inferred":
-		s.say(caution, "INFERRED.", "The cause follows from "+answers(r.Case)+" and the rule base. "+r.unconfirmed()+r.statedOnly())
+		s.say(caution, "INFERRED.", "The cause follows from "+r.basis()+" "+r.unconfirmed()+r.statedOnly())
 	case "reproduced":
 		s.say(normal, "REPRODUCED.", "The failure was reproduced with this cause: "+r.outcomeCauses()+".")
 	default:
@@ -41,6 +41,30 @@ func (r Report) finding() section {
 	}
 	s.say(mandatory, "THE ONE CHANGE WE ASK FOR.", r.changeTitle()+". "+r.changeBecause())
 	return s
+}
+
+// basis says on what an inferred cause rests: the answers that vote, and how many entries of the case do not.
+func (r Report) basis() string {
+	if r.Ranking == nil {
+		return answers(r.Case) + " and the rule base."
+	}
+	voting, others := map[int]bool{}, 0
+	for _, f := range r.Ranking.Findings {
+		if f.Observation < 0 {
+			others++
+			continue
+		}
+		voting[f.Observation] = true
+	}
+	text := count(len(voting), "answer", "answers")
+	if others > 0 {
+		text += ", " + count(others, "finding", "findings") + " from the values of the board"
+	}
+	text += " and the rule base."
+	if rest := len(r.Case.Observations) - len(voting); rest > 0 {
+		text += " " + count(rest, "further entry does", "further entries do") + " not count; each stands with its reason under: " + leftOutTitle + "."
+	}
+	return text
 }
 
 // unconfirmed says what an inferred cause lacks. A repair that held proves nothing of a cause that the outcome does not

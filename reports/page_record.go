@@ -6,7 +6,6 @@ import (
 	"strings"
 	"time"
 
-	"drivemend/diagnose/safety"
 	"drivemend/measure"
 	"drivemend/measure/quantity"
 )
@@ -136,54 +135,4 @@ func momentOr(t time.Time) string {
 		return ""
 	}
 	return moment(t)
-}
-
-// steps are the steps that leave no reading, with every entry made for them, and those that stand open.
-func (r Report) steps() section {
-	s := section{ID: "steps", Title: "Steps before touching and after the repair"}
-	t := table{Caption: "Steps that leave no reading; of several entries for one step the last counts", Heads: []string{"Step", "When in the job", "Result", "Time", "By", "Note"}, Numeric: make([]bool, 6)}
-	record := r.record()
-	for _, x := range record {
-		t.Rows = append(t.Rows, r.stepRows(x)...)
-	}
-	s.tabulateAny(t)
-	if tone, text := followUpWords(record, r.At); text != "" {
-		s.say(tone, "FOLLOW-UP.", capital(text)+".")
-	}
-	return s
-}
-
-// record is how the steps stand, also where that was not worked out beforehand: no entry is left out for want of it.
-func (r Report) record() []safety.RecordStatus {
-	if r.Record != nil {
-		return r.Record
-	}
-	return safety.Record(r.Case, r.At, safety.Evidence{})
-}
-
-func (r Report) stepRows(x safety.RecordStatus) [][]entry {
-	var rows [][]entry
-	for _, e := range r.Case.Steps {
-		if e.Step == x.Step.ID {
-			row := cells(capital(x.Step.Title), string(x.Step.Phase), stepName(e.Result), moment(e.At), r.who(e.By), e.Note)
-			row[2].Tone = resultTone(e.Result)
-			rows = append(rows, row)
-		}
-	}
-	if len(rows) == 0 && x.Applies {
-		row := cells(capital(x.Step.Title), string(x.Step.Phase), "open", "", "", "")
-		row[2].Tone = caution
-		rows = append(rows, row)
-	}
-	return rows
-}
-
-func resultTone(result string) tone {
-	switch result {
-	case "done":
-		return normal
-	case "failed":
-		return danger
-	}
-	return caution
 }

@@ -27,14 +27,22 @@ type Report struct {
 	Discharge *safety.Plan
 	Safety    safety.Status
 	Outside   []Outside
-	Record    []safety.RecordStatus // steps that leave no reading, at the moment of the report
-	Private   bool                  // leave out owner, technician, serial number, firmware and who did a step or repair
+	// OutsideSteps are the entries of the record that were done outside their hold points.
+	OutsideSteps []OutsideStep
+	Record       []safety.RecordStatus // steps that leave no reading, at the moment of the report
+	Private      bool                  // leave out owner, technician, serial number, firmware and who did a step or repair
 }
 
 // Outside is a reading that was taken outside its hold point.
 type Outside struct {
 	Observation int // index into the case's observations
 	Missing     []safety.Missing
+}
+
+// OutsideStep is an entry of the record whose step was done outside its hold point.
+type OutsideStep struct {
+	Entry   int // index into the case's steps
+	Missing []safety.Missing
 }
 
 // Style is how a terminal is written to.

@@ -21,6 +21,7 @@ type StatusPage struct {
 	Works           []WorkLine // every kind of work, in the order of the job
 	Record          []safety.RecordStatus
 	Outside         []Outside     // readings taken outside their hold points
+	OutsideSteps    []OutsideStep // steps of the record done outside theirs
 	Open            []OpenTest    // what has to be done, and what was put off
 	Needs           []stress.Need // values of the board that figures wait for
 	Stated, Assumed int           // how many values of the board are stated, and how many of them assumed
@@ -50,6 +51,9 @@ func Status(w io.Writer, p StatusPage, style Style) error {
 	}
 	writeIsolation(s, p.Safety)
 	s.grid(pointColumns, pointRows(p.Safety))
+	for _, text := range p.Safety.Spared {
+		s.item(neutral, "spared", text)
+	}
 	if len(p.Safety.Unplaced) > 0 {
 		s.item(caution, "note", "dead checks at points this board does not have: "+strings.Join(p.Safety.Unplaced, ", "))
 	}
@@ -108,14 +112,22 @@ func clockAt(t, beside time.Time) string {
 	return t.Format("2006-01-02 15:04")
 }
 
-// ago prints an age in hours and minutes, rounded up so that it never looks younger than it is.
+// ago prints an age with its minutes, from two days on in days, rounded up so that it never looks younger than it is.
 func ago(d time.Duration) string {
-	m := int64((d + time.Minute - 1) / time.Minute)
-	if m < 60 {
-		return strconv.FormatInt(m, 10) + " min ago"
+	m := upTo(d, time.Minute)
+	switch {
+	case d >= 2*day24:
+		return strconv.FormatInt(upTo(d, day24), 10) + " days ago"
+	case m >= 60:
+		return strconv.FormatInt(m/60, 10) + " h " + strconv.FormatInt(m%60, 10) + " min ago"
 	}
-	return strconv.FormatInt(m/60, 10) + " h " + strconv.FormatInt(m%60, 10) + " min ago"
+	return strconv.FormatInt(m, 10) + " min ago"
 }
+
+const day24 = 24 * time.Hour
+
+// upTo counts units of time, a part of one as a whole one.
+func upTo(d, unit time.Duration) int64 { return int64((d + unit - 1) / unit) }
 
 // hoursWords prints a span of whole hours.
 func hoursWords(d time.Duration) string { return strconv.Itoa(int(d/time.Hour)) + " h" }
@@ -130,13 +142,10 @@ func minutesLeft(d time.Duration) string {
 
 var pointColumns = []column{{title: "dead check", width: 11}, {title: "what"}, {title: "DC", width: 8, right: true}, {title: "AC", width: 8, right: true}, {title: "age", width: 8, right: true}, {title: "left", width: 6, right: true}, {title: "state", width: 5}}
 
-// shownStore is how many columns the title of a store takes at most; its point is what it is entered by.
-const shownStore = 28
-
 func pointRows(st safety.Status) [][]entry {
 	var rows [][]entry
 	for _, p := range st.Points {
-		row := []entry{{Text: p.Store.Point}, {Text: fit(plain(p.Store.Title), shownStore)}, {Text: "-"}, {Text: "-"}, {Text: "-"}, {Text: "-"}, {"OPEN", danger}}
+		row := []entry{{Text: p.Store.Point}, {Text: p.Store.Title}, {Text: "-"}, {Text: "-"}, {Text: "-"}, {Text: "-"}, {"OPEN", danger}}
 		if p.Last != nil {
 			row[2].Text, row[3].Text, row[4].Text = readingOr(p.Last.DC), readingOr(p.Last.AC), ageWords(p)
 		}
@@ -158,16 +167,18 @@ func readingOr(q quantity.Quantity) string {
 	return q.String()
 }
 
-// ageWords rounds up, so that an age never looks younger than it is.
+// ageWords is an age in minutes, from two hours on in hours, from two days on in days; rounded up, so that it never
+// looks younger than it is.
 func ageWords(p safety.PointStatus) string {
-	m := int64((p.Age + time.Minute - 1) / time.Minute)
 	switch {
 	case p.Age < 0:
 		return "future"
-	case m > 999:
-		return ">999 min"
+	case p.Age >= 2*day24:
+		return strconv.FormatInt(upTo(p.Age, day24), 10) + " days"
+	case p.Age >= 2*time.Hour:
+		return strconv.FormatInt(upTo(p.Age, time.Hour), 10) + " h"
 	}
-	return strconv.FormatInt(m, 10) + " min"
+	return strconv.FormatInt(upTo(p.Age, time.Minute), 10) + " min"
 }
 
 // rebuildWords says how a rebuild stands, naming so many of the keys it changes.
@@ -240,6 +251,10 @@ func boardKnown(p StatusPage) string {
 	text := count(p.Stated, "value stated", "values stated") + ", " + strconv.Itoa(p.Assumed) + " of them assumed"
 	var keys []string
 	for _, n := range p.Needs {
+		if p.Case.Board.Stated(strings.TrimPrefix(n.Key, "board.")) && len(n.For) > 0 {
+			text += "; figures: " + clause(n.For[0]) // the key is there; what is missing is something else
+			continue
+		}
 		keys = append(keys, n.Key)
 	}
 	if len(keys) > 0 {

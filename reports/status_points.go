@@ -28,10 +28,10 @@ func (p StatusPage) holdPoint(n int) (state entry, text string) {
 	case 5:
 		return entry{Text: "-"}, storesWords(p.Safety)
 	case 6:
-		if len(p.Outside) > 0 {
-			return entry{"NOTE", caution}, count(len(p.Outside), "reading is", "readings are") + " kept, and marked in the report"
+		if len(p.Outside)+len(p.OutsideSteps) > 0 {
+			return entry{"NOTE", caution}, outsideCount(len(p.Outside), len(p.OutsideSteps)) + " kept, and marked in the report"
 		}
-		return entry{"kept", normal}, "no reading on record"
+		return entry{"kept", normal}, "no reading and no step on record"
 	}
 	missing := p.missingAt(n)
 	if len(missing) == 0 {
@@ -48,6 +48,24 @@ func (p StatusPage) holdPoint(n int) (state entry, text string) {
 		text = fmt.Sprintf("kept for %d of %d kinds of work; ", free, all) + text
 	}
 	return entry{"OPEN", danger}, text
+}
+
+// outsideCount counts readings and steps: "1 reading and 2 steps are".
+func outsideCount(readings, steps int) string {
+	var parts []string
+	for _, x := range []struct {
+		n         int
+		one, many string
+	}{{readings, "reading", "readings"}, {steps, "step", "steps"}} {
+		if x.n > 0 {
+			parts = append(parts, count(x.n, x.one, x.many))
+		}
+	}
+	verb := " are"
+	if readings+steps == 1 {
+		verb = " is"
+	}
+	return strings.Join(parts, " and ") + verb
 }
 
 // clause is what a text says before it goes into the details: up to its colon, semicolon or bracket, if that stands
@@ -191,7 +209,7 @@ type workGroup struct {
 }
 
 // shownHeld is how many kinds of work that wait for the same thing are named.
-const shownHeld = 3
+const shownHeld = 2
 
 // writeWorks says what may be done now, and of the rest what is missing first; kinds of work that wait for the same
 // thing share a line. Of what stands in the way of the job it says what to do. Asking is always allowed, and only named
@@ -214,8 +232,23 @@ func writeWorks(s *screen, works []WorkLine, rebuilding bool) {
 	for i, g := range groups {
 		s.hang(caution, "NOT YET ", fmt.Sprintf("%s: point %d, %s", someOf(g.titles, shownHeld, "; "), g.first.Point, clause(g.first.Text))+moreWords(g.most-1))
 		if i == next && g.first.Unlock != "" {
-			s.hang(mandatory, "do this ", g.first.Unlock)
+			writeInTheWay(s, lackOf(g.first.Text, g.first.Unlock))
 		}
+	}
+}
+
+// writeInTheWay says what is missing for the work that keeps the job from going on, and what to do.
+func writeInTheWay(s *screen, l lack) {
+	for _, c := range l.conditions {
+		s.hang(caution, "        - ", c.what)
+		if c.do != "" {
+			s.hang(mandatory, "          → ", c.do)
+		}
+	}
+	mark := "do this "
+	for _, do := range l.do {
+		s.hang(mandatory, mark, do)
+		mark = strings.Repeat(" ", len(mark))
 	}
 }
 

@@ -25,7 +25,7 @@ func writeRecord(s *screen, p StatusPage) {
 		}
 	}
 	if t, text := followUpWords(p.Record, p.At); text != "" {
-		s.hang(t, "FOLLOW  ", "up "+text)
+		s.hang(t, "FOLLOW-UP  ", text)
 	}
 }
 

@@ -64,7 +64,7 @@ func (a *app) command() *cobra.Command {
 	root.CompletionOptions.DisableDefaultCmd = true
 	root.PersistentFlags().StringVar(&a.rules, "rules", "", "a `DIR` with rule files to lay over the built-in base")
 	root.SetFlagErrorFunc(func(c *cobra.Command, err error) error {
-		return wrongCommand(err.Error(), "see "+c.CommandPath()+" --help")
+		return wrongFlag(err.Error(), "see "+c.CommandPath()+" --help")
 	})
 	root.SetHelpFunc(a.help)
 	root.SetHelpCommand(a.helpCommand())

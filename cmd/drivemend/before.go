@@ -15,6 +15,7 @@ import (
 	"drivemend/diagnose/safety"
 	"drivemend/measure"
 	"drivemend/measure/quantity"
+	"drivemend/reports"
 )
 
 // condition is one condition that can be stated before a step: its flag, the steps it belongs to, and how it goes into
@@ -105,9 +106,10 @@ func (c condition) register(f *pflag.FlagSet) {
 
 // before makes one statement and says what its step still waits for.
 func (a *app) before(path, step string, flags *pflag.FlagSet) error {
+	typed := step
 	step = strings.ToLower(step)
 	if !slices.Contains(measure.BeforeWords(), step) {
-		return wrongCommand(fmt.Sprintf("no conditions are stated before %q", step), nearHints(step, measure.BeforeWords(), "the steps are "+strings.Join(measure.BeforeWords(), ", "))...)
+		return wrongCommand(fmt.Sprintf("no conditions are stated before %q", typed), nearHints(step, measure.BeforeWords(), "the steps are "+strings.Join(measure.BeforeWords(), ", "))...)
 	}
 	b := measure.Before{Step: step}
 	if err := stated(&b, flags); err != nil {
@@ -120,6 +122,7 @@ func (a *app) before(path, step string, flags *pflag.FlagSet) error {
 	if err != nil {
 		return err
 	}
+	a.sayAsItStood(at)
 	fmt.Fprintf(a.out, "stated before %s at %s: %s\n", step, at.Format(time.RFC3339), saidOf(f.Case))
 	base, err := a.base()
 	if err != nil {
@@ -242,16 +245,15 @@ func (a *app) waitsFor(works []safety.NamedWork, step string, c *measure.Case, a
 			continue
 		}
 		fmt.Fprintf(a.out, "%s: still missing\n", w.Title)
-		again := 0
+		var fresh []safety.Missing
 		for _, m := range d.Missing {
-			if told[m.Text] {
-				again++
-				continue
+			if !told[m.Text] {
+				fresh = append(fresh, m)
 			}
 			told[m.Text] = true
-			a.wrapped(fmt.Sprintf("point %d: %s: %s", m.Point, m.Text, m.Unlock), "  ", "    ")
 		}
-		if again > 0 {
+		_ = reports.Missing(a.out, fresh, a.style())
+		if again := len(d.Missing) - len(fresh); again > 0 {
 			fmt.Fprintf(a.out, "  and %d of what stands above\n", again)
 		}
 	}
@@ -277,13 +279,17 @@ func stepOf(w safety.Work) string {
 
 // wrapped prints a text broken to the width.
 func (a *app) wrapped(text, first, rest string) {
-	width := a.width
-	if width < 40 {
-		width = 80
-	}
-	for _, line := range ask.Wrapped(ask.Clean(text), first, rest, width) {
+	for _, line := range ask.Wrapped(ask.Clean(text), first, rest, a.columns()) {
 		fmt.Fprintln(a.out, line)
 	}
+}
+
+// columns is the width that plain text is broken to.
+func (a *app) columns() int {
+	if a.width < 40 {
+		return 80
+	}
+	return a.width
 }
 
 // orWords joins words as alternatives: "a, b or c".

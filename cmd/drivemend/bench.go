@@ -48,6 +48,9 @@ func (a *app) bench(asker ask.Asker, path string) error {
 	}
 	f, err := measure.Load(onDisk(path))
 	if errors.Is(err, fs.ErrNotExist) {
+		if err := folderGone(onDisk(path)); err != nil {
+			return err
+		}
 		f, err = a.startAsked(asker, path)
 	}
 	if err != nil || f == nil {
@@ -109,6 +112,9 @@ func (a *app) nameCase(asker ask.Asker) error {
 	answer, err := asker.Ask(ask.Question{
 		Title: "New case", Ask: "What shall the case be called?", Free: "one word, pump-3",
 		Check: func(name string) error {
+			if strings.ContainsAny(name, " \t") {
+				return fmt.Errorf("a case is named in one word; write %s", strings.Join(strings.Fields(name), "-"))
+			}
 			_, err := a.startCase(name)
 			return err
 		},

@@ -293,7 +293,7 @@ func TestCheckReadings(t *testing.T) {
 		{"yes", nil, "asked by itself"},
 		{"0.4 0.1 0.2", nil, "type one or two voltages"},
 		{"0,4", nil, "with a point"},
-		{"0.4 A", nil, `"a" is not understood`},
+		{"0.4 A", nil, `"A" is not understood`},
 		{"0.4 0 y", nil, `"y" is not understood`},
 		{"4 Ω", nil, "is not understood"},
 	} {

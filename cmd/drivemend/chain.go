@@ -35,6 +35,9 @@ func (a *app) load(path string) (*measure.File, error) {
 	path = onDisk(path)
 	f, err := measure.Load(path)
 	if err != nil && errors.Is(err, fs.ErrNotExist) {
+		if gone := folderGone(path); gone != nil {
+			return nil, gone
+		}
 		return nil, wrongInput(path+": there is no such case here", "start it: drivemend new "+quoted(path), "or look at what is here: drivemend cases "+quoted(folderOf(path)))
 	}
 	return f, err
@@ -63,6 +66,20 @@ func isCaseName(path string) bool {
 }
 
 func folderOf(path string) string { return filepath.Dir(path) }
+
+// folderGone tells of a path whose folder is not there, or not there any more: a case in it cannot be started, only
+// lost. nil when the folder is there.
+func folderGone(path string) error {
+	if !filepath.IsAbs(path) {
+		if _, err := os.Getwd(); err != nil {
+			return wrongInput(path+": the folder you are in is gone: it was moved or deleted meanwhile", "go to the folder that holds the case, or name it with its whole path; nothing was changed")
+		}
+	}
+	if _, err := os.Stat(folderOf(path)); err != nil {
+		return wrongInput(path+": there is no folder "+folderOf(path), "make the folder first, or name another place")
+	}
+	return nil
+}
 
 // chain is the pure way from one case to its results. It is run anew after every answer.
 type chain struct {
@@ -138,8 +155,9 @@ func (k *chain) discharge(at time.Time) (*safety.Plan, error) {
 // beside is what a screen shows beside its result: what was read outside its hold point, the leading cause, the safety
 // state at a moment.
 func (k *chain) beside(r *diagnose.Ranking, at time.Time) reports.Beside {
-	status := safety.StatusOf(k.c, at, k.evidence())
-	return reports.Beside{Ranking: r, Safety: &status, Outside: k.outside(), Case: k.c}
+	e := k.evidence()
+	status := safety.StatusOf(k.c, at, e)
+	return reports.Beside{Ranking: r, Safety: &status, Outside: k.outside(), Case: k.c, Record: safety.Record(k.c, at, e)}
 }
 
 func (k *chain) evidence() safety.Evidence { return diagnose.EvidenceOf(k.base, k.c) }
@@ -171,9 +189,21 @@ func (k *chain) missedAt(o measure.Observation) []safety.Missing {
 	return missing
 }
 
+// outsideSteps lists the steps of the record that were done outside their hold points, each from the record as it stood
+// then.
+func (k *chain) outsideSteps() []reports.OutsideStep {
+	var out []reports.OutsideStep
+	for i, s := range k.c.Steps {
+		if missing := safety.OutsideStep(k.c, i, diagnose.EvidenceOf(k.base, safety.AsOf(k.c, s.At))); len(missing) > 0 {
+			out = append(out, reports.OutsideStep{Entry: i, Missing: missing})
+		}
+	}
+	return out
+}
+
 // report gathers everything a fault report is written from.
 func (k *chain) report(at time.Time) (reports.Report, error) {
-	r := reports.Report{Case: k.c, Base: k.base, At: at, Outside: k.outside()}
+	r := reports.Report{Case: k.c, Base: k.base, At: at, Outside: k.outside(), OutsideSteps: k.outsideSteps()}
 	var err error
 	if r.Ranking, err = k.rank(""); err != nil {
 		return r, err

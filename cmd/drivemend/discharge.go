@@ -83,6 +83,7 @@ func (a *app) discharge(path, resistor string) error {
 		return err
 	}
 	a.remark(k.c, at)
+	a.sayAsItStood(at)
 	in := safety.InputAt(k.c, at)
 	if resistor != "" {
 		q, err := quantity.Parse(resistor, quantity.Ohm)

@@ -152,7 +152,7 @@ func (a *app) enterKey(f *measure.File, key, text string, e entry, at time.Time)
 			return err
 		}
 	}
-	was := statedText(f.Case, key)
+	was, before := statedText(f.Case, key), f.Case
 	if err := f.Set(key, text); err != nil {
 		return err
 	}
@@ -173,6 +173,9 @@ func (a *app) enterKey(f *measure.File, key, text string, e entry, at time.Time)
 		text += ", assumed"
 	}
 	fmt.Fprintf(a.out, "%s: %s\n", key, ask.Clean(text))
+	for _, line := range nowAfter(before, f.Case) {
+		a.wrapped(line, "", "  ")
+	}
 	return nil
 }
 
@@ -261,7 +264,7 @@ func (a *app) counts(base *knowledge.Base, c *measure.Case) error {
 	if err != nil {
 		return err
 	}
-	for _, line := range k.afterwards(r) {
+	for _, line := range append(k.served(), k.afterwards(r)...) {
 		indent := line[:len(line)-len(strings.TrimLeft(line, " "))]
 		a.wrapped(line, indent, indent+"  ")
 	}
@@ -334,6 +337,9 @@ func (e entry) ofReading(t *knowledge.Test, o *measure.Observation) error {
 		o.Accuracy = q.Value
 	}
 	if e.reach != "" {
+		if err := ambiguousRatio(t.Unit, strings.TrimSpace(e.reach)); err != nil {
+			return within("--range", err)
+		}
 		q, err := quantity.Parse(withTestUnit(t.Unit, e.reach), t.Unit)
 		if err != nil {
 			return wrongInput("--range: " + err.Error())

@@ -2,11 +2,11 @@ package main
 
 import (
 	"fmt"
+	"math"
 	"regexp"
 	"slices"
 	"strconv"
 	"strings"
-	"time"
 
 	"drivemend/diagnose"
 	"drivemend/knowledge"
@@ -49,11 +49,42 @@ func noResult(t *knowledge.Test, text string) error {
 	if t.Unit != "" {
 		allowed = "give a reading in " + string(t.Unit) + ", or one of: " + strings.Join(resultIDs(t), ", ")
 	}
+	if t.Unit == "" && strings.ContainsAny(text, "0123456789") {
+		hints = append(hints, "it takes no number; keep yours beside the result that it shows: drivemend enter CASE "+t.ID+" "+strings.Join(resultIDs(t), "|")+" --note "+noteText(text))
+	}
 	return wrongInput(fmt.Sprintf("%s has no result %q", t.ID, strings.TrimSpace(text)), append(hints, allowed, "what they mean: drivemend rules show "+t.ID)...)
+}
+
+// noteText is a text as it is typed behind a flag.
+func noteText(text string) string {
+	return "'" + strings.ReplaceAll(strings.TrimSpace(text), "'", "") + "'"
+}
+
+// mostTimes is the highest bare number that is taken as a ratio: a part that shows more than five times its right value
+// is told in per cent, as meters show it. Judgement.
+const mostTimes = 5
+
+// ambiguousRatio refuses a bare number that may be meant in per cent, and names both readings.
+func ambiguousRatio(unit quantity.Unit, text string) error {
+	m := bareNumber.FindStringSubmatch(text)
+	if unit != quantity.Ratio || m == nil {
+		return nil
+	}
+	number := strings.TrimSpace(strings.TrimPrefix(text, m[1]))
+	v, err := strconv.ParseFloat(number, 64)
+	if err != nil || math.Abs(v) <= mostTimes {
+		return nil
+	}
+	sign := strings.TrimLeft(m[1]+" ", " ")
+	percent := func(v float64) string { return "'" + sign + strconv.FormatFloat(v, 'g', 12, 64) + " %'" }
+	return wrongInput(fmt.Sprintf("%q can be read in two ways", text), "write "+percent(v)+" where the meter shows per cent, or "+percent(100*v)+" for "+number+" times the right value")
 }
 
 // readingOf reads what an instrument showed in the unit of a test, as it can stand in a case file.
 func readingOf(t *knowledge.Test, text string) (quantity.Reading, error) {
+	if err := ambiguousRatio(t.Unit, strings.TrimSpace(text)); err != nil {
+		return quantity.Reading{}, err
+	}
 	text = withTestUnit(t.Unit, strings.TrimSpace(text))
 	r, err := quantity.ParseReading(text, t.Unit)
 	if err != nil {
@@ -271,58 +302,4 @@ func sharesText(shares []diagnose.Share) string {
 		}
 	}
 	return strings.Join(words, ", ")
-}
-
-// afterwards says what stands against an observation that was just kept: that it does not count in the ranking, or
-// that it was taken outside its hold point.
-func (k *chain) afterwards(r *diagnose.Ranking) []string {
-	var lines []string
-	last := len(k.c.Observations) - 1
-	o := k.c.Observations[last]
-	if o.Answer == "" {
-		for _, u := range r.Unbound {
-			if u.Observation == last {
-				lines = append(lines, "kept, but not counted in the ranking: "+u.Why)
-			}
-		}
-	}
-	if missing := k.missedAt(o); len(missing) > 0 {
-		lines = append(lines, "kept, and marked as taken outside its hold point:")
-		for _, m := range missing {
-			lines = append(lines, fmt.Sprintf("  point %d: %s", m.Point, m.Text))
-		}
-	}
-	return lines
-}
-
-// replaces says which answer the one that was entered last takes the place of.
-func replaces(before, c *measure.Case) []string {
-	var lines []string
-	last := c.Observations[len(c.Observations)-1]
-	for i, o := range before.Observations {
-		if !c.Superseded(i) || before.Superseded(i) {
-			continue
-		}
-		text := o.Result + o.Answer
-		if o.Reading != nil {
-			text = o.Reading.Text
-		}
-		if !o.At.IsZero() {
-			text += " of " + shortClock(o.At, last.At)
-		}
-		lines = append(lines, "replaces "+text+", which stays in the file")
-		if o.At.After(last.At) {
-			lines = append(lines, "note: it was taken before what it replaces; the one entered last counts")
-		}
-	}
-	return lines
-}
-
-// shortClock is a moment as it is told at another one: the time of day alone on the same day.
-func shortClock(t, now time.Time) string {
-	t = t.In(now.Location())
-	if t.Format(time.DateOnly) == now.Format(time.DateOnly) {
-		return t.Format("15:04")
-	}
-	return t.Format("2006-01-02 15:04")
 }

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"regexp"
 	"strings"
 
 	"drivemend/cmd/drivemend/internal/ask"
@@ -30,6 +31,21 @@ func (f *failure) Error() string { return f.message }
 // wrongCommand is a command line that cannot be read.
 func wrongCommand(message string, hints ...string) error {
 	return &failure{exitCommand, message, hints}
+}
+
+// parserWords are what the library puts behind a flag that it could not read.
+var parserWords = regexp.MustCompile(`^invalid argument ("(?:[^"\\]|\\.)*") for "(?:-\w, )?(--[\w-]+)" flag: strconv\.(\w+): .*$`)
+
+// wrongFlag is a flag that cannot be read, without the words of the library's parser.
+func wrongFlag(message, hint string) error {
+	m := parserWords.FindStringSubmatch(message)
+	switch {
+	case m == nil:
+		return wrongCommand(message, hint)
+	case m[3] == "ParseBool":
+		return wrongCommand(m[2]+" cannot be "+m[1], "give "+m[2]+" where it holds, and leave it out where it does not; it takes no word", hint)
+	}
+	return wrongCommand(m[2]+" cannot be "+m[1], "give a whole number", hint)
 }
 
 // wrongInput is something read or named that cannot be used.

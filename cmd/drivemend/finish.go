@@ -181,7 +181,7 @@ func (s *session) closing() ask.Question {
 		q.Choices = append(q.Choices, ask.Choice{Word: "safe", Means: "make safe and prove dead, which unlocks the meter steps"})
 	}
 	if n := len(s.wantedValues()); n > 0 {
-		q.Choices = append(q.Choices, ask.Choice{Word: "values", Means: fmt.Sprintf("enter %d board values for the edge and the margin", n)})
+		q.Choices = append(q.Choices, ask.Choice{Word: "values", Means: "enter " + counted(n, "board value") + " for the edge and the margin"})
 	}
 	if n := len(s.putOffTests()); n > 0 {
 		q.Choices = append(q.Choices, ask.Choice{Word: "later", Means: fmt.Sprintf("ask the %d tests that were put off", n)})

@@ -39,14 +39,16 @@ var instructs = map[string]instruction{
 	"next":  everyWork,
 	// The bare form, without a case, has no hold point to check; its first step is the isolation.
 	"discharge": only(safety.NeedDischarge, safety.NeedDeadCheck),
+	// The plan of the discharge, and how the next test is done.
+	"report": everyWork,
 
 	"": nil, "help": nil,
 	"new": nil, "status": nil, "enter": nil, "rank": nil,
 	"record": nil, "record step": nil, "record photo": nil, "record capture": nil, "record fault-code": nil, "record setting": nil,
 	"record repair": nil,
 	"safe":          nil, "safe isolation": nil, "safe dead-check": nil, "safe link": nil, "safe energised": nil, "safe before": nil,
-	"margin": nil, "report": nil,
-	"rules": nil, "rules check": nil, "rules list": nil, "rules show": nil,
+	"margin": nil,
+	"rules":  nil, "rules check": nil, "rules list": nil, "rules show": nil,
 	"keys": nil, "cases": nil, "demo": nil,
 }
 

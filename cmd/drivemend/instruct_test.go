@@ -59,7 +59,7 @@ type state struct {
 const (
 	gridNow     = "2026-12-01T10:00:00+01:00"
 	gridBoard   = "{topology: low-side-chopper, supply: battery, bus: {nominal: 48 V, capacitance: 4700 µF, halves: yes, fuse: 8 A, reservoir: 100 µF}, positions: {low: {parts: [Q1]}}, switch: {kind: mosfet}, load: {kind: dc-motor}, stages: {auxiliary: {fitted: no}}, history: first-failure}"
-	gridStatics = "power-terminals-resistance: blocking, gate-resistance: good, freewheel-diode-drop: normal, freewheel-path-check: closed"
+	gridStatics = "power-terminals-resistance: blocking, gate-resistance: good, gate-pull-down: present, freewheel-diode-drop: normal, freewheel-path-check: closed"
 	goodGear    = "motor: unplugged, fuse: 3 A, bank: in-use, guard: yes, remote_off: yes, glasses: yes, second_person: yes"
 )
 
@@ -198,7 +198,7 @@ type judged struct {
 	path string
 	seen map[string]map[bool]bool // by work: whether it was found allowed, and withheld, in any state
 
-	asked map[string]int // questions of tests that sessions put, by need
+	asked map[string]int // what was given: questions of tests that sessions put, by need, and reports with a discharge
 }
 
 // allowed is what the hold points say of a work.
@@ -219,7 +219,7 @@ func (j judged) run(args ...string) ran {
 }
 
 // proofs prove for every command that instructs that an instruction appears exactly when its work is allowed.
-var proofs = map[string]func(j judged){"next": proveNext, "discharge": proveDischarge, "bench": proveBench}
+var proofs = map[string]func(j judged){"next": proveNext, "discharge": proveDischarge, "bench": proveBench, "report": proveReport}
 
 func TestInstructionsStandBehindTheirHoldPoints(t *testing.T) {
 	base, err := knowledge.Load()
@@ -249,6 +249,9 @@ func TestInstructionsStandBehindTheirHoldPoints(t *testing.T) {
 	}
 	if asked["dead"] == 0 {
 		t.Errorf("no session came to a meter step: %v", asked)
+	}
+	if asked["discharge in a report"] == 0 {
+		t.Error("no report holds the discharge, so that none can withhold it")
 	}
 }
 

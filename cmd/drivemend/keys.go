@@ -55,6 +55,9 @@ func (a *app) keys(args []string) error {
 	found := measure.Keys()
 	if len(args) == 1 {
 		if found = keysNamed(args[0]); len(found) == 0 {
+			if key := expectedKeys[args[0]]; key != "" {
+				return wrongInput(args[0]+" is no key: it is worked out from board."+key, "drivemend keys "+key+"; to state it: drivemend enter CASE board."+key+" 10k")
+			}
 			near := measure.NearestKey(args[0])
 			return noSuch("key", args[0], near, "see drivemend keys")
 		}

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"time"
 
+	"drivemend/cmd/drivemend/internal/ask"
 	"drivemend/measure"
 )
 
@@ -49,6 +50,45 @@ func (a *app) remark(c *measure.Case, at time.Time) {
 		fmt.Fprintf(a.err, "drivemend: note: %s lies in the future: the clock of this computer says %s\n", at.Format(time.RFC3339), a.env.now().Format(time.RFC3339))
 	case beforeOpened(c, at):
 		fmt.Fprintf(a.err, "drivemend: note: %s lies before %s, the day on which this case was opened\n", at.Format(time.RFC3339), c.Opened.Format(time.DateOnly))
+	}
+}
+
+// mostPast is how far --at may lie before the clock and still be now: the time it takes to type it. Judgement.
+const mostPast = time.Minute
+
+// asItStood is the line that stands above everything that is shown for a moment that is over: what was allowed then is
+// no leave to do it now. "" for a moment that is now, or ahead.
+func (a *app) asItStood(at time.Time) string {
+	before := a.env.now().Sub(at)
+	if a.at == "" || before <= mostPast {
+		return ""
+	}
+	return fmt.Sprintf("AS IT STOOD at %s, %s before this computer's clock: no leave to do anything now.", at.Format("2006-01-02 15:04"), lasting(before))
+}
+
+// sayAsItStood prints that line first of all. Where the output is one JSON object it goes to standard error.
+func (a *app) sayAsItStood(at time.Time) {
+	line := a.asItStood(at)
+	switch {
+	case line == "":
+	case a.asJSON:
+		fmt.Fprintln(a.err, "drivemend: "+line)
+	default:
+		for _, part := range ask.Wrapped(line, "", "  ", a.columns()) {
+			fmt.Fprintln(a.out, part)
+		}
+	}
+}
+
+// lasting is a time span in words, rounded down: 8 min, 3 h 20 min, 29 days.
+func lasting(d time.Duration) string {
+	switch m := int(d.Minutes()); {
+	case m < 60:
+		return fmt.Sprintf("%d min", m)
+	case m < 48*60:
+		return fmt.Sprintf("%d h %d min", m/60, m%60)
+	default:
+		return fmt.Sprintf("%d days", m/60/24)
 	}
 }
 

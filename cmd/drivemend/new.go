@@ -85,8 +85,8 @@ func (a *app) startCase(path string) (*measure.File, error) {
 	if _, err := os.Lstat(path); err == nil {
 		return nil, wrongInput(path+": this case is already there; nothing was changed", "go on with it: drivemend bench "+quoted(path))
 	}
-	if _, err := os.Stat(folderOf(path)); err != nil {
-		return nil, wrongInput(path+": there is no folder "+folderOf(path), "make the folder first, or name another place")
+	if err := folderGone(path); err != nil {
+		return nil, err
 	}
 	return measure.New(path, caseID(path), at.Format("2006-01-02"))
 }

@@ -29,6 +29,7 @@ func (a *app) next(path string) error {
 		return err
 	}
 	a.remark(k.c, at)
+	a.sayAsItStood(at)
 	n, err := k.next(at)
 	if err != nil {
 		return err

@@ -59,13 +59,15 @@ func (s *session) pickWork(n *diagnose.Suggestion) func() *step {
 }
 
 // opening lists the first five minutes and the steps before touching: what is still open of them, "" for what is
-// settled. Making safe comes first on a fresh case; later it comes again before the step that needs it.
+// settled. Making safe comes first on a fresh case; later it comes again before the step that needs it. The picture as
+// found comes before the first dead check, which already moves leads and covers.
 func (s *session) opening() []string {
 	var ids []string
 	fresh := len(s.file.Case.Observations) == 0
 	if fresh || s.held() {
 		ids = append(ids, s.openIsolation())
 	}
+	ids = append(ids, s.openBefore(true)...)
 	for _, key := range []string{"supply", "bus.nominal", "bus.capacitance"} {
 		ids = append(ids, s.openValue(key))
 	}
@@ -76,7 +78,7 @@ func (s *session) opening() []string {
 	for _, test := range history {
 		ids = append(ids, s.openTest(test))
 	}
-	return append(append(ids, s.openValue("history")), s.openBefore()...)
+	return append(append(ids, s.openValue("history")), s.openBefore(false)...)
 }
 
 // openTest names the step of a history question while it has no answer.
@@ -266,13 +268,9 @@ func (s *session) rankingAside() ask.Aside {
 // text is an aside of plain words.
 func (s *session) text(word, means, body string) ask.Aside {
 	return ask.Aside{Word: word, Means: means, Show: func() string {
-		width := s.width
-		if width < 40 {
-			width = 80
-		}
 		var out []string
 		for _, line := range strings.Split(body, "\n") {
-			out = append(out, ask.Wrapped(line, "  ", "  ", width)...)
+			out = append(out, ask.Wrapped(line, "  ", "  ", s.columns())...)
 		}
 		return strings.Join(out, "\n")
 	}}

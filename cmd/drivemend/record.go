@@ -60,7 +60,7 @@ func (a *app) recordStepCommand() *cobra.Command {
 		Example: "drivemend record step pump fault-log-read not-possible --note 'control board dead'",
 		Args:    takes(3, 3),
 		RunE: func(_ *cobra.Command, args []string) error {
-			return a.recordStep(args[0], measure.StepEntry{Step: strings.ToLower(args[1]), Result: strings.ToLower(args[2]), By: by, Note: note})
+			return a.recordStep(args[0], args[1], args[2], measure.StepEntry{By: by, Note: note})
 		},
 	}
 	c.Flags().StringVar(&by, "by", "", "`WHO` did it; can be left out of reports")
@@ -68,20 +68,26 @@ func (a *app) recordStepCommand() *cobra.Command {
 	return a.timed(c)
 }
 
-func (a *app) recordStep(path string, s measure.StepEntry) error {
-	if !slices.Contains(measure.StepWords(), s.Step) {
-		return wrongInput(fmt.Sprintf("there is no step %q in the record", s.Step), nearHints(s.Step, measure.StepWords(), "the steps are "+strings.Join(measure.StepWords(), ", "))...)
-	}
-	if !slices.Contains(stepResults, s.Result) {
-		return wrongInput(fmt.Sprintf("a step does not end %q", s.Result), nearHints(s.Result, stepResults, "it ends "+orWords(stepResults))...)
-	}
-	if s.Note == "" && (s.Result == "failed" || s.Result == "not-possible") {
+func (a *app) recordStep(path, step, result string, s measure.StepEntry) error {
+	s.Step, s.Result = strings.ToLower(step), strings.ToLower(result)
+	switch {
+	case !slices.Contains(measure.StepWords(), s.Step):
+		return wrongInput(fmt.Sprintf("there is no step %q in the record", step), nearHints(s.Step, measure.StepWords(), "the steps are "+strings.Join(measure.StepWords(), ", "))...)
+	case !slices.Contains(stepResults, s.Result):
+		return wrongInput(fmt.Sprintf("a step does not end %q", result), nearHints(s.Result, stepResults, "it ends "+orWords(stepResults))...)
+	case s.Result == "not-fitted" && !safety.MayLack(s.Step):
+		return wrongInput(s.Step+" cannot be not-fitted: there is no board without it",
+			"where it cannot be done, say why: drivemend record step CASE "+s.Step+" not-possible --note 'why'; nothing was changed")
+	case s.Note == "" && (s.Result == "failed" || s.Result == "not-possible"):
 		return wrongCommand(s.Step+" "+s.Result+" needs its reason", "add --note 'what was found, or why it cannot be done'")
 	}
 	var missing []safety.Missing
 	f, at, err := a.record(path, true, func(f *measure.File, at time.Time) error {
 		base, err := a.base()
 		if err != nil {
+			return err
+		}
+		if err := tooEarly(base, f.Case, s, at); err != nil {
 			return err
 		}
 		// What the step lacked is judged before it is entered: no step speaks for itself.
@@ -97,6 +103,29 @@ func (a *app) recordStep(path string, s measure.StepEntry) error {
 		a.outside(missing)
 	}
 	a.follows(f.Case, s, at)
+	return nil
+}
+
+// tooEarly refuses a follow-up that counts for nothing yet, in words: when the board was handed over and when the
+// follow-up is due.
+func tooEarly(base *knowledge.Base, c *measure.Case, s measure.StepEntry, at time.Time) error {
+	if s.Step != measure.StepFollowedUp || s.Result != "done" {
+		return nil
+	}
+	then := safety.AsOf(c, at)
+	record := safety.Record(then, at, diagnose.EvidenceOf(base, then))
+	of := func(step string) safety.RecordStatus {
+		return record[slices.IndexFunc(record, func(r safety.RecordStatus) bool { return r.Step.ID == step })]
+	}
+	due, over := of(measure.StepFollowedUp).Due, of(measure.StepHandedOver).Last
+	switch {
+	case due.IsZero() || over == nil:
+		return wrongInput("followed up on "+at.Format(time.DateOnly)+": the board is not on record as handed over by then",
+			"enter the hand-over first, with its time: drivemend record step CASE "+measure.StepHandedOver+" done --at TIME; nothing was changed")
+	case at.Before(due):
+		return wrongInput(fmt.Sprintf("followed up on %s: the board was handed over on %s, and counts as followed up from %s on", at.Format(time.DateOnly), over.At.Format(time.DateOnly), due.Format(time.DateOnly)),
+			"ask again then; if the repair did not hold, the result is failed with --note; nothing was changed")
+	}
 	return nil
 }
 

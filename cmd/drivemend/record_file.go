@@ -29,7 +29,7 @@ func (a *app) recordPhotoCommand() *cobra.Command {
 		Example: "drivemend record photo pump pictures/arrival.jpg --shows 'low bank as found' --part Q2",
 		Args:    takes(2, 2),
 		RunE: func(_ *cobra.Command, args []string) error {
-			return a.recordFile(args[0], args[1], "picture", func(f *measure.File, one recorded) error {
+			return a.recordFile(args[0], args[1], "picture", p.Part, func(f *measure.File, one recorded) error {
 				p.Path, p.Bytes, p.SHA256, p.At = one.name, one.bytes, one.sum, one.at
 				return f.AddPhotograph(p)
 			})
@@ -49,7 +49,7 @@ func (a *app) recordCaptureCommand() *cobra.Command {
 		Example: "drivemend record capture pump low-turn-off.csv --kind scope --position low --edge opening",
 		Args:    takes(2, 2),
 		RunE: func(_ *cobra.Command, args []string) error {
-			return a.recordFile(args[0], args[1], "capture", func(f *measure.File, r recorded) error {
+			return a.recordFile(args[0], args[1], "capture", "", func(f *measure.File, r recorded) error {
 				if err := knownPosition(f.Case.Board, one.Position); err != nil {
 					return err
 				}
@@ -86,7 +86,7 @@ type recorded struct {
 }
 
 // recordFile keeps where a file lies, how long it is and its sum. The time it was taken is known only when it is stated.
-func (a *app) recordFile(path, file, what string, enter func(*measure.File, recorded) error) error {
+func (a *app) recordFile(path, file, what, part string, enter func(*measure.File, recorded) error) error {
 	var one recorded
 	f, _, err := a.record(path, a.at != "", func(f *measure.File, at time.Time) error {
 		var err error
@@ -105,6 +105,9 @@ func (a *app) recordFile(path, file, what string, enter func(*measure.File, reco
 	} else {
 		fmt.Fprintln(a.out, "taken at "+one.at.Format(time.RFC3339))
 	}
+	if part != "" && !hasPart(f.Case, part) {
+		fmt.Fprintf(a.out, "note: %s is no switch of this case; kept as it was typed, for it may be any part\n", ask.Clean(part))
+	}
 	if n := sameSum(f.Case, one.sum); n > 1 {
 		fmt.Fprintf(a.out, "note: these bytes now stand in the case %d times\n", n)
 	}
@@ -112,6 +115,12 @@ func (a *app) recordFile(path, file, what string, enter func(*measure.File, reco
 		a.untilAll(f, measure.StepPhotographed)
 	}
 	return nil
+}
+
+// hasPart tells whether a part is one of the switches of a case, as found or as rebuilt.
+func hasPart(c *measure.Case, part string) bool {
+	_, parts := placesOf(boardsOf(c))
+	return slices.Contains(parts, part)
 }
 
 // summed reads a file's length and sum.

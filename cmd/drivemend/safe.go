@@ -119,18 +119,29 @@ func (a *app) linkCommand() *cobra.Command {
 		Long:  "Says that a shorting link was fitted, or came off. While it is fitted no meter step is given; after it came off every store is checked again.",
 		Args:  takes(2, 2),
 		RunE: func(_ *cobra.Command, args []string) error {
-			args[1] = strings.ToLower(args[1])
-			if args[1] != "fitted" && args[1] != "removed" {
+			word := strings.ToLower(args[1])
+			if word != "fitted" && word != "removed" {
 				return wrongCommand(fmt.Sprintf("a link is fitted or removed, not %q", args[1]))
 			}
 			return a.safe(args[0], func(f *measure.File, at time.Time) error {
-				if args[1] == "fitted" {
-					return f.FitLink(at)
+				if word == "fitted" {
+					return fitLink(f, at)
 				}
 				return f.RemoveLink(at)
 			})
 		},
 	})
+}
+
+// fitLink keeps that a link is on. A second one while the first is on record as fitted would have to come off twice.
+func fitLink(f *measure.File, at time.Time) error {
+	for _, l := range f.Case.Safety.Links {
+		if l.Removed.IsZero() {
+			return wrongInput("a shorting link is on record as fitted since "+l.Fitted.Format(time.RFC3339)+" and not as removed",
+				"did it come off meanwhile? say when: drivemend safe link CASE removed --at TIME; nothing was changed")
+		}
+	}
+	return f.FitLink(at)
 }
 
 func (a *app) energisedCommand() *cobra.Command {

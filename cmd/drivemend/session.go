@@ -33,7 +33,7 @@ type session struct {
 	ranked *diagnose.Ranking
 	margin *stress.Margin       // as last shown
 	wanted []string             // steps asked for at the end: board values
-	left   int                  // tests that are worth their minutes, done or locked, when the end was shown
+	left   int                  // tests that are worth their minutes and steps of the record, open or locked, when the end was shown
 	laters []diagnose.Candidate // tests put off earlier, to be asked now
 }
 
@@ -66,6 +66,7 @@ func (a *app) session(asker ask.Asker, f *measure.File) error {
 	if err := s.refresh(); err != nil {
 		return err
 	}
+	s.sayAsItStood(s.start)
 	s.welcome()
 	err = s.loop()
 	switch {
@@ -285,12 +286,8 @@ func (s *session) refused(err error) {
 
 // say prints a text broken to the width.
 func (s *session) say(text string) {
-	width := s.width
-	if width < 40 {
-		width = 80
-	}
 	indent := text[:len(text)-len(strings.TrimLeft(text, " "))]
-	for _, line := range ask.Wrapped(ask.Clean(text), indent, indent+"  ", width) {
+	for _, line := range ask.Wrapped(ask.Clean(text), indent, indent+"  ", s.columns()) {
 		fmt.Fprintln(s.out, line)
 	}
 }

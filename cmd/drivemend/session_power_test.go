@@ -27,6 +27,7 @@ observations:
   - {test: what-changed, result: nothing}
   - {test: power-terminals-resistance, position: low, result: blocking, at: 2026-12-01T09:47:00+01:00}
   - {test: gate-resistance, position: low, result: good, at: 2026-12-01T09:48:00+01:00}
+  - {test: gate-pull-down, position: low, result: present, at: 2026-12-01T09:48:30+01:00}
 rebuild: {done: 2026-12-01T09:30:00+01:00}
 `
 
@@ -59,7 +60,10 @@ func readied(t *testing.T, text string, most int, answer func(s *session, q ask.
 	return s, a, b
 }
 
-var lowBusWork = safety.Work{Need: safety.NeedLowBus}
+var (
+	lowBusWork  = safety.Work{Need: safety.NeedLowBus}
+	controlWork = safety.Work{Need: safety.NeedControlPower} // its tests with a meter need no other statement
+)
 
 func TestConditionsAreOneStatement(t *testing.T) {
 	s, a, b := readied(t, proved, 30, func(s *session, q ask.Question) ask.Answer {
@@ -216,7 +220,7 @@ func TestConditionsAreNotAskedBeforeTheBoardIsReady(t *testing.T) {
 // looked again.
 func TestStatementOfAnEarlierSessionIsAskedAgain(t *testing.T) {
 	for answer, want := range map[string]int{"yes": 2, "no": 2, "": 1} {
-		s, a, b := readied(t, strings.Replace(proved, "observations:", "  before: [{step: low-bus, motor: unplugged, bank: in-use, guard: yes, remote_off: yes, glasses: yes, second_person: yes, fuse: 2 A, at: 2026-12-01T09:51:00+01:00}]\nobservations:", 1), 30,
+		s, a, b := readied(t, strings.Replace(proved, "observations:", "  before: [{step: control-power, bus_disconnected: yes, motor: unplugged, bank: in-use, guard: yes, remote_off: yes, glasses: yes, second_person: yes, fuse: 2 A, at: 2026-12-01T09:51:00+01:00}]\nobservations:", 1), 30,
 			func(_ *session, q ask.Question) ask.Answer {
 				if strings.HasSuffix(q.Title, "do they still stand?") {
 					if answer == "" {
@@ -226,10 +230,10 @@ func TestStatementOfAnEarlierSessionIsAskedAgain(t *testing.T) {
 				}
 				return sayConditions(q, lowBus)
 			})
-		if d := s.check(lowBusWork); !d.Allowed {
+		if d := s.check(controlWork); !d.Allowed {
 			t.Fatalf("the case is locked: %v", d.Missing)
 		}
-		test := s.base.Test("connector-drop")
+		test := s.base.Test("driver-supply")
 		if _, err := s.testStep(diagnose.Candidate{Test: test}).run(); err != nil {
 			t.Fatal(err)
 		}
@@ -245,7 +249,7 @@ func TestStatementOfAnEarlierSessionIsAskedAgain(t *testing.T) {
 // TestPowerEndsTheDeadChecks: before the instruction of a powered test stands on the screen it is kept that power may be
 // on, and whatever is answered, isolation comes before the next step at a dead board.
 func TestPowerEndsTheDeadChecks(t *testing.T) {
-	for _, answer := range []ask.Answer{{Text: "as-computed"}, {Kind: ask.Later}, {Kind: ask.Skipped}, {Kind: ask.Back}, {Kind: ask.Quit}} {
+	for _, answer := range []ask.Answer{{Text: "steady"}, {Kind: ask.Later}, {Kind: ask.Skipped}, {Kind: ask.Back}, {Kind: ask.Quit}} {
 		var b *bench
 		s, a, b2 := readied(t, proved, 40, func(s *session, q ask.Question) ask.Answer {
 			if strings.HasPrefix(q.Title, "BEFORE") {
@@ -257,14 +261,14 @@ func TestPowerEndsTheDeadChecks(t *testing.T) {
 			return answer
 		})
 		b = b2
-		if _, err := s.beforeStep("low-bus", lowBusWork).run(); err != nil {
+		if _, err := s.beforeStep("control-power", controlWork).run(); err != nil {
 			t.Fatal(err)
 		}
 		b.now = b.now.Add(time.Minute)
-		if _, err := s.testStep(diagnose.Candidate{Test: s.base.Test("connector-drop")}).run(); err != nil {
+		if _, err := s.testStep(diagnose.Candidate{Test: s.base.Test("driver-supply")}).run(); err != nil {
 			t.Fatal(err)
 		}
-		if last := a.asked[len(a.asked)-1].Title; last != "Drop across connectors" {
+		if last := a.asked[len(a.asked)-1].Title; last != "Supply of each driver" {
 			t.Fatalf("the last question is %q\n%s", last, b.out.String())
 		}
 		dead := diagnose.Candidate{Test: s.base.Test("gate-pull-down")}
@@ -275,7 +279,7 @@ func TestPowerEndsTheDeadChecks(t *testing.T) {
 		if id := s.unlocking(); id != "isolation" {
 			t.Errorf("after %v comes %q, want the isolation", answer, id)
 		}
-		if !s.check(lowBusWork).Allowed {
+		if !s.check(controlWork).Allowed {
 			t.Errorf("after %v the next powered step is locked", answer)
 		}
 		s.farewell()
@@ -295,7 +299,7 @@ func TestPoweredTestIsHeldWhenItsConditionsEnd(t *testing.T) {
 			return s.file.Isolate(measure.Isolation{Locked: true, Motor: "unplugged", OtherSources: "none", At: b.now})
 		},
 		"a no": func(s *session, b *bench) error {
-			return s.file.StateBefore(measure.Before{Step: "low-bus", At: b.now})
+			return s.file.StateBefore(measure.Before{Step: "control-power", At: b.now})
 		},
 	} {
 		s, a, b := readied(t, proved, 40, func(_ *session, q ask.Question) ask.Answer {
@@ -304,14 +308,14 @@ func TestPoweredTestIsHeldWhenItsConditionsEnd(t *testing.T) {
 			}
 			return ask.Answer{Kind: ask.Later}
 		})
-		if _, err := s.beforeStep("low-bus", lowBusWork).run(); err != nil {
+		if _, err := s.beforeStep("control-power", controlWork).run(); err != nil {
 			t.Fatal(err)
 		}
 		b.now = b.now.Add(time.Minute)
 		if err := change(s, b); err != nil {
 			t.Fatal(err)
 		}
-		st := s.testStep(diagnose.Candidate{Test: s.base.Test("connector-drop")})
+		st := s.testStep(diagnose.Candidate{Test: s.base.Test("driver-supply")})
 		n := len(a.asked)
 		if _, err := st.run(); err != nil || (len(a.asked) == n) == (name == "nothing") {
 			t.Errorf("%s: asked %q, %v", name, titles(a.asked[n:]), err)
@@ -376,14 +380,14 @@ func TestUnwrittenPowerGivesNoInstruction(t *testing.T) {
 		}
 		return ask.Answer{Kind: ask.Quit}
 	})
-	if _, err := s.beforeStep("low-bus", lowBusWork).run(); err != nil {
+	if _, err := s.beforeStep("control-power", controlWork).run(); err != nil {
 		t.Fatal(err)
 	}
 	if err := os.Remove(b.path); err != nil {
 		t.Fatal(err)
 	}
-	_, err := s.testStep(diagnose.Candidate{Test: s.base.Test("connector-drop")}).run()
-	if err == nil || slices.Contains(titles(a.asked), "Drop across connectors") {
+	_, err := s.testStep(diagnose.Candidate{Test: s.base.Test("driver-supply")}).run()
+	if err == nil || slices.Contains(titles(a.asked), "Supply of each driver") {
 		t.Errorf("%v, asked %q", err, titles(a.asked))
 	}
 }

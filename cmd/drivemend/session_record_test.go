@@ -39,8 +39,8 @@ func placeIn(list []string, prefix string) int {
 
 var chapter = []string{"BEFORE TOUCHING: photographs as found", "BEFORE TOUCHING: fault memory read", "BEFORE TOUCHING: settings saved", "BEFORE TOUCHING: parts and plugs marked"}
 
-// TestChapterBeforeTouching: the steps come once, after the first five minutes and before anything is touched, also
-// where the isolation is put off.
+// TestChapterBeforeTouching: the picture comes once, right after the isolation and before the first dead check; the other
+// steps come once, after the first five minutes and before a meter step; also where the isolation is put off.
 func TestChapterBeforeTouching(t *testing.T) {
 	for _, isolated := range []bool{true, false} {
 		a, _ := walked(t, fresh, 80, func(q ask.Question) *ask.Answer {
@@ -59,9 +59,12 @@ func TestChapterBeforeTouching(t *testing.T) {
 			return nil
 		})
 		asked := titles(a.asked)
-		first := placeIn(asked, chapter[0])
-		if first < 0 || !slices.Equal(asked[first:first+4], chapter) {
+		picture, first := placeIn(asked, chapter[0]), placeIn(asked, chapter[1])
+		if picture < 1 || first < 0 || !slices.Equal(asked[first:first+3], chapter[1:]) {
 			t.Fatalf("isolated %v: asked %q", isolated, asked)
+		}
+		if !strings.HasPrefix(asked[picture-1], "MAKE SAFE") || placeIn(asked[:picture], "DEAD CHECK") >= 0 {
+			t.Errorf("isolated %v: the picture does not come between isolation and dead check: %q", isolated, asked)
 		}
 		for _, title := range chapter {
 			if n := strings.Count(strings.Join(asked, "\n"), title); n != 1 {
@@ -73,13 +76,13 @@ func TestChapterBeforeTouching(t *testing.T) {
 				t.Errorf("isolated %v: %q does not come before the chapter: %q", isolated, before, asked)
 			}
 		}
-		if isolated && placeIn(asked, "DEAD CHECK at auxiliary") > first {
-			t.Errorf("a dead check comes after the chapter: %q", asked)
+		if check := placeIn(asked, "DEAD CHECK"); isolated && (check < picture || check > first) {
+			t.Errorf("the first dead check does not come between picture and chapter: %q", asked)
 		}
 		if at := placeIn(asked, "Power terminals"); isolated && at < first {
 			t.Errorf("a meter step comes before the chapter, or none does: %q", asked)
 		}
-		for _, q := range a.asked[first : first+4] {
+		for _, q := range append([]ask.Question{a.asked[picture]}, a.asked[first:first+3]...) {
 			if q.Danger || q.Enter != "later" || len(q.Lines) == 0 {
 				t.Errorf("%q is not skipped by one key, or says nothing: %+v", q.Title, q)
 			}
@@ -252,5 +255,52 @@ func TestStepsAreTakenUp(t *testing.T) {
 	})
 	if c := b.disk(); len(c.Steps) != 1 || c.Steps[0].Step != measure.StepPositionsMarked {
 		t.Errorf("steps %+v; asked %q", b.disk().Steps, titles(a.asked))
+	}
+}
+
+// TestStatedPowerBringsItsSteps: whatever was put off before, the steps that wait for the power which is stated are asked
+// under it, and the end does not say that nothing is left while one of them stands open.
+func TestStatedPowerBringsItsSteps(t *testing.T) {
+	for word, step := range map[string]string{"low-bus": measure.StepProtectionsProved, "full": measure.StepLoadTested} {
+		asked, ends := 0, 0
+		a, _ := walked(t, proved, 200, func(q ask.Question) *ask.Answer {
+			text := ""
+			id, _ := afterRepair(q)
+			switch {
+			case strings.HasPrefix(q.Title, "BEFORE "+strings.ToUpper(word)):
+				given := sayConditions(q, lowBus)
+				return &given
+			case id == step:
+				asked++
+			case q.Title == "POWER":
+				text = word
+			case q.Ask == "What now?":
+				if q.Title != "WHERE IT STANDS" {
+					t.Errorf("%s: steps stand open, and the end says %q", word, q.Title)
+				}
+				if ends++; ends <= 3 {
+					text = "power"
+				}
+			case strings.HasPrefix(q.Title, "MAKE SAFE: does"):
+				text = "yes"
+			}
+			if text == "" {
+				return nil
+			}
+			return &ask.Answer{Text: text}
+		})
+		if asked < 2 {
+			t.Errorf("%s: the step is asked %d times under power stated three times: %q", word, asked, titles(a.asked))
+		}
+	}
+}
+
+// TestOpenStepsAreLeft: with every test put off or answered, an open step of the record is still something to do.
+func TestOpenStepsAreLeft(t *testing.T) {
+	s, _, _ := readied(t, proved, 1, nil)
+	s.left = 0
+	s.sayRecord()
+	if open := len(s.openRecords("")); open == 0 || s.left == 0 || s.closing().Title == "NOTHING LEFT TO ASK NOW" {
+		t.Errorf("%d steps are open, %d left", open, s.left)
 	}
 }

@@ -45,6 +45,14 @@ func (a *app) cases(folder string, rank bool) error {
 	err = a.show(func(w io.Writer) error { return reports.ShelfJSON(w, shelf) },
 		func(w io.Writer) error { return reports.Shelf(w, shelf, a.style()) })
 	for _, s := range shelf {
+		if s.Case == nil {
+			continue
+		}
+		if other := otherName(s.File, s.Case); other != "" {
+			a.note(other)
+		}
+	}
+	for _, s := range shelf {
 		if err == nil && s.Problem != "" {
 			err = &failure{status: exitInput}
 		}

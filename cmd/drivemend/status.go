@@ -38,6 +38,10 @@ func (a *app) status(path string) error {
 		return err
 	}
 	a.remark(f.Case, at)
+	a.sayAsItStood(at)
+	if other := otherName(f.Path, f.Case); path != "-" && other != "" {
+		a.note(other)
+	}
 	base, err := a.base()
 	if err != nil {
 		return err
@@ -53,11 +57,19 @@ func (a *app) status(path string) error {
 		func(w io.Writer) error { return reports.Status(w, page, a.style()) })
 }
 
+// otherName says that a file is not named as the case in it, "" when it is: a copy, or a case that was renamed.
+func otherName(path string, c *measure.Case) string {
+	if caseID(path) == c.ID {
+		return ""
+	}
+	return path + " holds the case " + c.ID + "; if it is a copy that is to be a case of its own, change the line \"case\" in it"
+}
+
 // safetyPage gathers what needs no figures: the safety record, what may be done, the steps of the record.
 func safetyPage(base *knowledge.Base, c *measure.Case, at time.Time) reports.StatusPage {
 	e := diagnose.EvidenceOf(base, c)
 	k := &chain{base: base, c: c}
-	page := reports.StatusPage{Case: c, At: at, Safety: safety.StatusOf(c, at, e), Record: safety.Record(c, at, e), Outside: k.outside()}
+	page := reports.StatusPage{Case: c, At: at, Safety: safety.StatusOf(c, at, e), Record: safety.Record(c, at, e), Outside: k.outside(), OutsideSteps: k.outsideSteps()}
 	for _, w := range safety.Works() {
 		page.Works = append(page.Works, reports.WorkLine{Title: w.Title, Decision: safety.Check(c, w.Work, at, e)})
 	}

@@ -114,9 +114,9 @@ func checkReadings(text string) (read []quantity.Quantity, err error) {
 		}
 		read = append(read, q)
 	}
-	rest := strings.FieldsFunc(strings.ToLower(oneVoltage.ReplaceAllString(text, " ")), func(r rune) bool { return strings.ContainsRune(" ,;/\t", r) })
+	rest := strings.FieldsFunc(oneVoltage.ReplaceAllString(text, " "), func(r rune) bool { return strings.ContainsRune(" ,;/\t", r) })
 	for _, w := range rest {
-		switch w {
+		switch strings.ToLower(w) {
 		case "dc", "ac", "and":
 		case "yes", "no", "proved":
 			return nil, errors.New("type the voltages only; the proof of the meter is asked by itself after them")

@@ -89,7 +89,7 @@ func (s *session) enterLink() error {
 	}
 	_, err = s.keep(func(f *measure.File) error {
 		if text == "fitted" {
-			return f.FitLink(s.clock())
+			return fitLink(f, s.clock())
 		}
 		return f.RemoveLink(s.clock())
 	})

@@ -37,7 +37,17 @@ func (s *session) gate(w safety.Work, title string) (pass bool, kind ask.Kind, e
 	if d := s.check(w); !d.Allowed {
 		return false, ask.Later, s.withheld(title, d.Missing)
 	}
+	s.remindPast(w)
 	return true, ask.Given, nil
+}
+
+// remindPast stands before every step at the board in a session whose clock --at has set back: it is for writing down
+// what was done then.
+func (s *session) remindPast(w safety.Work) {
+	if line := s.asItStood(s.clock()); line != "" && w.Need != safety.NeedQuestion {
+		s.say("")
+		s.say("! " + line)
+	}
 }
 
 // heldBack tells whether a work rests on what an earlier session stated: until somebody has looked again and said so,
@@ -213,7 +223,22 @@ func (s *session) choosePower() (func() *step, error) {
 		return s.again, err
 	}
 	s.resume("before "+word, "before "+measure.BeforeScope, "before "+measure.BeforeDoublePulse)
+	s.resumePowered()
 	return func() *step { return s.beforeStep(word, safety.Work{Need: safety.Need(word)}) }, nil
+}
+
+// resumePowered takes what waits for power off the list of what was put off: whoever states power wants it asked.
+func (s *session) resumePowered() {
+	for _, r := range safety.RecordSteps() {
+		if r.Work.Need.Powered() {
+			s.resume(recordID(r.ID))
+		}
+	}
+	for i := range s.base.Tests {
+		if t := &s.base.Tests[i]; diagnose.WorkOf(t).Need.Powered() {
+			s.resume("test " + t.ID)
+		}
+	}
 }
 
 // sayPowered says of the powered test worth most what it waits for.

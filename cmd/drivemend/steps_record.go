@@ -37,15 +37,17 @@ func (s *session) recordOf(id string) *safety.RecordStatus {
 
 func recordID(id string) string { return "record " + id }
 
-// openBefore names the steps before touching: a short chapter, asked once a session. A board that is rebuilt is no
-// longer as it was found.
-func (s *session) openBefore() []string {
+// openBefore names the steps before touching, each asked once a session: the picture as found, which is taken from
+// outside the guard, or the short chapter of the others. A board that is rebuilt is no longer as it was found.
+func (s *session) openBefore(picture bool) []string {
 	var ids []string
 	if s.isRebuilt() {
 		return nil
 	}
 	for _, r := range s.openRecords(safety.BeforeTouching) {
-		ids = append(ids, recordID(r.Step.ID))
+		if (r.Step.ID == measure.StepPhotographed) == picture {
+			ids = append(ids, recordID(r.Step.ID))
+		}
 	}
 	return ids
 }
@@ -128,8 +130,8 @@ func (s *session) record(r safety.RecordStep) (ask.Kind, error) {
 // recordReasons are what is asked beside a result.
 var recordReasons = map[string]string{"not-possible": "Why is it not possible?", "failed": "What was found?"}
 
-// mayLack are the steps of what a board need not have.
-var mayLack = map[string]string{
+// lacking says what not-fitted means at a step of what a board may lack.
+var lacking = map[string]string{
 	measure.StepFaultLogRead:        "this board keeps no fault memory",
 	measure.StepSettingsSaved:       "this board has no settings",
 	measure.StepSettingsRestored:    "this board has no settings",
@@ -145,8 +147,8 @@ func recordChoices(r safety.RecordStep) []ask.Choice {
 		out = append(out, ask.Choice{Word: "failed", Means: "done, and not as it should be"})
 	}
 	out = append(out, ask.Choice{Word: "not-possible", Means: "why is asked next"})
-	if means := mayLack[r.ID]; means != "" {
-		out = append(out, ask.Choice{Word: "not-fitted", Means: means})
+	if safety.MayLack(r.ID) {
+		out = append(out, ask.Choice{Word: "not-fitted", Means: lacking[r.ID]})
 	}
 	return out
 }
@@ -271,6 +273,7 @@ func (s *session) sayRecord() {
 	if len(open) == 0 {
 		return
 	}
+	s.left += len(open)
 	r := open[0]
 	s.say(fmt.Sprintf("STEPS   %s of the record open; next: %s", counted(len(open), "step"), r.Step.Title))
 	if len(r.Missing) > 0 {

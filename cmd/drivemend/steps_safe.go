@@ -156,6 +156,7 @@ func (s *session) deadCheck(p safety.PointStatus) (ask.Kind, error) {
 	if d := s.check(safety.Work{Need: safety.NeedDeadCheck}); !d.Allowed {
 		return ask.Later, s.withheld("the dead check at "+p.Store.Point, d.Missing)
 	}
+	s.remindPast(safety.Work{Need: safety.NeedDeadCheck})
 	plan, err := s.chain.discharge(s.clock())
 	if err != nil {
 		s.say("! no discharge plan: " + err.Error())

@@ -52,16 +52,10 @@ func (s *session) isolationOnRecord(i safety.IsolationStatus) string {
 
 // ago says how old something is.
 func ago(d time.Duration) string {
-	switch m := int(d.Minutes()); {
-	case m < 1:
+	if d < time.Minute {
 		return "stated just now"
-	case m < 60:
-		return fmt.Sprintf("stated %d min ago", m)
-	case m < 48*60:
-		return fmt.Sprintf("stated %d h %d min ago", m/60, m%60)
-	default:
-		return fmt.Sprintf("stated %d days ago", m/60/24)
 	}
+	return "stated " + lasting(d) + " ago"
 }
 
 // confirmed keeps the isolation as stated again now.

@@ -34,12 +34,12 @@ func (s *session) testOrKey(c diagnose.Candidate) func() *step {
 }
 
 // uncompared names the board value that the readings of a test are compared with and that is not stated, "" for none.
-func (s *session) uncompared(c diagnose.Candidate) string {
-	for _, r := range c.Test.Results {
+func uncompared(b measure.Board, t *knowledge.Test, lifted bool) string {
+	for _, r := range t.Results {
 		if r.Expected == "" {
 			continue
 		}
-		if _, ok, err := meter.Expected(s.file.Case.Board, r.Expected, meter.Place{Parallel: 1, Lifted: c.Lifted}); !ok || err != nil {
+		if _, ok, err := meter.Expected(b, r.Expected, meter.Place{Parallel: 1, Lifted: lifted}); !ok || err != nil {
 			return expectedKeys[r.Expected]
 		}
 	}
@@ -60,7 +60,7 @@ func (s *session) testStep(c diagnose.Candidate) *step {
 			q.Free += " or OL"
 		}
 		q.Check = func(text string) error { return readable(t, text) }
-		if missing := s.uncompared(c); missing != "" {
+		if missing := uncompared(s.file.Case.Board, t, c.Lifted); missing != "" {
 			q.Lines = append(q.Lines, "A reading is kept all the same; it counts once board."+missing+" is stated.")
 		}
 	}
@@ -209,11 +209,14 @@ func (s *session) test(c diagnose.Candidate, q ask.Question) (ask.Kind, error) {
 // sayRead says how an observation was taken, and what it leaves to be done.
 func (s *session) sayRead(c diagnose.Candidate, o measure.Observation) {
 	s.say("  read as " + echo(c.Test, s.file.Case.Board, o))
+	for _, line := range s.chain.served() {
+		s.say("  " + line)
+	}
 	for _, line := range s.chain.afterwards(s.ranked) {
 		s.say("  ! " + line)
 	}
-	if missing := s.uncompared(c); missing != "" && o.Reading != nil {
-		s.say("  ! to make it count: more, then value, then " + missing + " and the resistor that is fitted; or drivemend enter " + quoted(s.file.Path) + " board." + missing + " 10k")
+	if missing := uncompared(s.file.Case.Board, c.Test, c.Lifted); missing != "" && o.Reading != nil {
+		s.say("  ! to make it count: more, then value, then " + missing + " and the resistor that is fitted")
 	}
 	if diagnose.WorkOf(c.Test).Energises() {
 		s.resume("isolation", "stands", "link", "check ")

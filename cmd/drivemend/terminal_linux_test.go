@@ -159,6 +159,8 @@ func TestSessionOnATerminal(t *testing.T) {
 	term.press("unplugged\r")
 	term.until("Does anything else feed")
 	term.press("none\r")
+	term.until("photographed as it was found")
+	term.press("lat\r")
 	term.until("What feeds the bus?")
 	term.press("\r")
 	term.until("Enter alone answers nothing")

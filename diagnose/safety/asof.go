@@ -71,6 +71,8 @@ func evidenceAsOf(e Evidence, at time.Time) Evidence {
 		}
 		out.Statics = append(out.Statics, s)
 	}
+	out.Failing = upTo(at, e.Failing, func(s Static) time.Time { return s.At })
+	out.Mended = upTo(at, e.Mended, func(m Mended) time.Time { return m.At })
 	return out
 }
 

@@ -55,7 +55,7 @@ var clauses = []clause{
 	yes(poweredSteps, func(b measure.Before) bool { return b.Glasses }, "safety glasses on everybody near", "put them on", "--glasses"),
 	yes(poweredSteps, func(b measure.Before) bool { return b.SecondPerson }, "a second person who knows how to switch off",
 		"ask somebody to stand by, and show the switch", "--second-person"),
-	{steps: poweredSteps, asked: hasBank, holds: func(_ scene, b measure.Before) bool { return b.Bank == "in-use" || b.Bank == "re-formed" },
+	{steps: poweredSteps, asked: hasBank, holds: bankHolds,
 		needs: plainly("bus capacitors that were at voltage within a year, or re-formed since"), fault: bankText, do: reform,
 		flag: func(_ scene, b measure.Before) string {
 			return "--bank " + kept(b.Bank == "stored" || b.Bank == "re-formed", "re-formed", "in-use")
@@ -66,7 +66,7 @@ var clauses = []clause{
 	yes(insulationSteps, func(b measure.Before) bool { return b.ElectronicsDisconnected }, "the electronics disconnected from what is tested: the tester's voltage kills them",
 		"disconnect the electronics from what is tested", "--electronics-disconnected"),
 	yes(injectionSteps, func(b measure.Before) bool { return b.SourcesOff }, "every other source off", "switch every other source off", "--sources-off"),
-	yes(injectionSteps, func(b measure.Before) bool { return b.GatesHeld }, "every gate held to its emitter or source", "bridge every gate to its emitter or source", "--gates-held"),
+	yes(injectionSteps, func(b measure.Before) bool { return b.GatesHeld }, "every gate that is not under test held to its emitter or source", "bridge every gate that is not under test to its emitter or source", "--gates-held"),
 	yes(injectionSteps, func(b measure.Before) bool { return b.LimitSet }, "the limit of current and voltage set before connecting",
 		"set the limit on the open output, before connecting", "--limit-set"),
 	yes(injectionSteps, func(b measure.Before) bool { return b.Attended }, "somebody who stays with it and stops at 40 K rise", "stay with it, and stop at 40 K rise", "--attended"),
@@ -174,6 +174,8 @@ func fuseText(s scene, b measure.Before) string {
 	return "the fuse of " + quantity.Format(max(b.Fuse.Value, b.Fuse.High), quantity.Ampere) + " is too large: at most " + s.fuse()
 }
 
+func bankHolds(_ scene, b measure.Before) bool { return b.Bank == "in-use" || b.Bank == "re-formed" }
+
 func bankText(_ scene, b measure.Before) string {
 	if b.Bank == "stored" {
 		return "the bus capacitors have stood without voltage for more than a year: at full voltage at once they can burst"
@@ -183,18 +185,26 @@ func bankText(_ scene, b measure.Before) string {
 
 // reform says how a bank that was stored is brought back. A capacitor maker's note (rated voltage through about 100 Ω up
 // to 100 V, 1 kΩ above, 1 h, then 12 to 48 h of rest) and a drive guide's steps (four of 25 %, 120 min each, after three
-// years), both read second-hand; the drive maker's own instruction goes before them.
+// years), both read second-hand; the drive maker's own instruction goes before them. It puts power on, so that it is told
+// only when nothing else is missing.
 func reform(s scene, b measure.Before) string {
-	ohm := "100 Ω"
-	if s.highestBus() > 100 {
-		ohm = "1 kΩ"
-	}
-	how := "re-form the bus capacitors first: rated voltage through about " + ohm + " (100 Ω for capacitors of up to 100 V, 1 kΩ above) for 1 h, then let them rest 12 to 48 h; " +
-		"after more than three years in steps of 25 % of the rated voltage, 120 min each; never by a bare mains connection, capacitors have burst that way (--bank re-formed)"
+	how := s.reformHow() + " (--bank re-formed)"
 	if b.Bank == "stored" {
 		return how
 	}
 	return "ask when the board last ran: within a year, state --bank in-use; longer ago, or not known, " + how
+}
+
+func (s scene) reformHow() string {
+	if !s.reform {
+		return "the bank is re-formed first, under conditions of its own: they are told when nothing else is missing"
+	}
+	ohm := "100 Ω"
+	if s.highestBus() > 100 {
+		ohm = "1 kΩ"
+	}
+	return "re-form the bus capacitors first: rated voltage through about " + ohm + " (100 Ω for capacitors of up to 100 V, 1 kΩ above) for 1 h, then let them rest 12 to 48 h; " +
+		"after more than three years in steps of 25 % of the rated voltage, 120 min each; never by a bare mains connection, capacitors have burst that way"
 }
 
 // highestBus is the highest voltage of the bus in volts, on whichever board it is higher.

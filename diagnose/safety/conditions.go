@@ -17,6 +17,7 @@ type scene struct {
 	evidence Evidence
 	steps    []measure.StepEntry
 	done     time.Time // of the rebuild; zero while it is not stated
+	reform   bool      // nothing else is missing: how the bank is re-formed may be told
 }
 
 func sceneOf(c *measure.Case, w Work, now time.Time, e Evidence) scene {
@@ -38,6 +39,7 @@ var (
 	noLink       condition = openLink                                                      // 2
 	rebuilt      condition = openRebuild                                                   // 3
 	everyStatic  condition = openStatics                                                   // 3
+	noneFails    condition = openFailing                                                   // 3
 	conditioned  condition = func(s scene) []Missing { return s.openBefore(string(s.work.Need)) }
 	reconnected  condition = openReconnection // 3
 	shielded               = before(measure.BeforeDoublePulse)
@@ -51,7 +53,7 @@ func before(step string) condition {
 	return func(s scene) []Missing { return s.openBefore(step) }
 }
 
-var poweredConditions = []condition{noLink, rebuilt, everyStatic, conditioned, reconnected}
+var poweredConditions = []condition{noLink, rebuilt, everyStatic, noneFails, conditioned, reconnected}
 
 // needConditions are the conditions of a state of the board. A need that is not in the table is never given.
 var needConditions = map[Need][]condition{
@@ -76,7 +78,7 @@ var toolRules = map[Tool]toolRule{
 	NoTool: {needs: Needs()},
 	ToolScope: {[]Need{NeedDead, NeedControlPower, NeedLowBus, NeedFull}, []condition{probed},
 		[]string{"The earth clip of a passive probe is bonded to protective earth: on a live node it is a short to earth through the scope."}},
-	ToolInjection: {[]Need{NeedDead}, []condition{injected},
+	ToolInjection: {[]Need{NeedDead, NeedControlPower, NeedLowBus}, []condition{injected},
 		[]string{"Set the limit of current and voltage before connecting, stay with it, stop at 40 K rise."}},
 	ToolInsulation: {[]Need{NeedDead}, []condition{disconnected},
 		[]string{"The tester charges what it tests: discharge it afterwards, prove it dead, and keep hands off while it runs."}},
@@ -84,8 +86,8 @@ var toolRules = map[Tool]toolRule{
 		[]string{"Stay behind the shield until the bus is proved dead: a switch that fails takes the energy of the bank."}},
 }
 
-// carries gives what the instruction for a work always says.
-func carries(w Work) []string {
+// Carries gives what the instruction for a work always says, allowed or not.
+func Carries(w Work) []string {
 	out := slices.Clone(toolRules[w.Tool].carries)
 	if w.Need.Powered() && needConditions[w.Need] != nil {
 		out = append(out, "Power ends every dead check: afterwards isolate again, and prove every store dead before any ohm, diode or capacitance reading.")
@@ -106,11 +108,30 @@ func (s scene) missing() []Missing {
 	if !slices.Contains(rule.needs, s.work.Need) {
 		return []Missing{{0, fmt.Sprintf("the tool %s has no place in a step that needs %s", s.work.Tool, s.work.Need), "it is used in " + joined(rule.needs)}}
 	}
+	all := slices.Concat(conditions, rule.conditions)
+	m := s.open(all)
+	if len(m) == 1 && s.bankAlone() {
+		s.reform = true
+		m = s.open(all)
+	}
+	return m
+}
+
+func (s scene) open(conditions []condition) []Missing {
 	var m []Missing
-	for _, c := range slices.Concat(conditions, rule.conditions) {
+	for _, c := range conditions {
 		m = append(m, c(s)...)
 	}
 	return m
+}
+
+// bankAlone tells whether the statement before a powered step lacks the bank and nothing else.
+func (s scene) bankAlone() bool {
+	if !s.work.Need.Powered() {
+		return false
+	}
+	b, lacks := s.statementOf(string(s.work.Need))
+	return lacks && len(s.faults(*b)) == 1 && hasBank(s) && !bankHolds(s, *b)
 }
 
 func joined[T ~string](list []T) string {

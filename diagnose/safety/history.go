@@ -26,7 +26,7 @@ func historyOf(c *measure.Case, now time.Time, powered []time.Time) history {
 }
 
 // recordedPower gives the times at which the record says that power was on without naming a test: a stage of the
-// bring-up, and a step of the record that is done under power.
+// bring-up, a dated capture of a scope, and a step of the record that is done under power.
 func recordedPower(c *measure.Case) []time.Time {
 	var times []time.Time
 	for _, s := range c.BringUp {
@@ -37,11 +37,25 @@ func recordedPower(c *measure.Case) []time.Time {
 			times = append(times, e.At)
 		}
 	}
+	for _, k := range c.Captures {
+		if k.Kind == "scope" && !k.At.IsZero() {
+			times = append(times, k.At)
+		}
+	}
 	return times
 }
 
 // come tells whether a moment is stated and not in the future.
 func (h history) come(at time.Time) bool { return !at.IsZero() && !at.After(h.now) }
+
+// dated says of a time that has not come to be what is wrong with it.
+func (h history) dated(at time.Time) string {
+	if at.IsZero() {
+		return "carries no time"
+	}
+	moment, _ := clocks(at, h.now)
+	return "is dated " + moment + ", in the future"
+}
 
 // energised gives the last moment that has come to be at which energy was put in, zero without one. undated tells of a
 // moment without a time or in the future: nothing recorded so far can be known to be newer than that.

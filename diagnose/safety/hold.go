@@ -30,7 +30,7 @@ type Decision struct {
 // what the rule base reads out of its observations. It never errs towards allowing: an unknown need or tool, a time that
 // is missing, or one in the future is taken against the step.
 func Check(c *measure.Case, w Work, now time.Time, e Evidence) Decision {
-	d := Decision{Need: w.Need, Tool: w.Tool, At: now, Carries: carries(w)}
+	d := Decision{Need: w.Need, Tool: w.Tool, At: now, Carries: Carries(w)}
 	if c == nil {
 		d.Missing = []Missing{{0, "there is no case", "start one"}}
 		return d
@@ -69,6 +69,25 @@ func OutsideHoldPoint(c *measure.Case, o measure.Observation, w Work, e Evidence
 	}
 	d := Check(AsOf(c, o.At), w, o.At, then)
 	return !d.Allowed, d.Missing
+}
+
+// OutsideStep tells what was missing when an entry of the steps was made, number i of the case's list, judged from the
+// record as it stood at that moment; e is the evidence as of then. No step's work rests on that step, so that the entry
+// itself says nothing. Nil when it was made within its hold points, when its work is a question, and when nothing was
+// done at the board.
+func OutsideStep(c *measure.Case, i int, e Evidence) []Missing {
+	if c == nil || i < 0 || i >= len(c.Steps) {
+		return nil
+	}
+	entry := c.Steps[i]
+	step, known := recordStep(entry.Step)
+	if !known || step.Work == look || (entry.Result != resultDone && entry.Result != resultFailed) {
+		return nil
+	}
+	if entry.At.IsZero() {
+		return []Missing{undatedReading(step.Work)}
+	}
+	return Check(AsOf(c, entry.At), step.Work, entry.At, evidenceAsOf(e, entry.At)).Missing
 }
 
 func undatedReading(w Work) Missing {

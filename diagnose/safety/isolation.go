@@ -1,6 +1,7 @@
 package safety
 
 import (
+	"regexp"
 	"slices"
 	"strings"
 	"unicode"
@@ -86,9 +87,6 @@ var (
 		"v", "volt", "voltage", "wind")
 )
 
-// mostLabel is the longest label or figure that counts as a name: 230vac, k12, ps2.
-const mostLabel = 6
-
 func words(list ...string) map[string]bool {
 	set := map[string]bool{}
 	for _, w := range list {
@@ -161,8 +159,14 @@ func isName(name []string) bool {
 	return named || (labelled && strings.ContainsFunc(strings.Join(name, ""), unicode.IsLetter))
 }
 
-// isLabel takes a figure, or letters and figures as they stand on a part.
+// labels are a figure with or without its unit (24, 230vac), or what stands on a part: one or two letters and a number
+// (k3, ps12). Letters that are a word of their own make no label: "no1 off" says nothing.
+var (
+	labels    = regexp.MustCompile(`^([0-9]{1,4}(v|vac|vdc|a|hz|kv)?|([a-z]{1,2})[0-9]{1,3})$`)
+	noLetters = words("no", "on", "if", "or", "as", "at", "is", "in", "to", "up", "ok")
+)
+
 func isLabel(piece string) bool {
-	plain := !strings.ContainsFunc(piece, func(r rune) bool { return !unicode.IsLetter(r) && !unicode.IsDigit(r) })
-	return plain && len(piece) <= mostLabel && strings.ContainsFunc(piece, unicode.IsDigit)
+	m := labels.FindStringSubmatch(piece)
+	return m != nil && !noLetters[m[3]]
 }

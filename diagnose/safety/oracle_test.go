@@ -62,6 +62,7 @@ type facts struct {
 	before     []beforeFact
 	steps      []stepFact
 	statics    []staticFact
+	failing    []failFact
 	now        int
 }
 
@@ -90,7 +91,7 @@ func places(b boardFacts) []string {
 	add(b.fuse != "" && b.fuse != "none", "fused-bank")
 	stated := b.reservoir == "10 µF" || b.recovery == "10 µF"
 	add(b.snubber == "recovery" || stated || (b.reservoir != "none" && (b.reservoir == "unknown" || b.recovery == "unknown")), "reservoir")
-	add(b.snubber == "clamp", "clamp")
+	add(b.snubber == "clamp" || b.snubber == "unknown", "clamp")
 	micro := map[string]float64{"10 µF": 10, "1 nF": 0.001, "": 0.1}[b.capacitor]
 	add((b.snubber == "rc" || b.snubber == "rcd" || b.snubber == "capacitor") && micro*float64(b.highest) >= 50, "snubber")
 	add(hasBrakeFact(b), "brake")
@@ -248,7 +249,7 @@ func (f facts) speaksAgainst(t *teller, m int) {
 			t.overtake(withPower...)
 		}
 	}
-	if f.done == m {
+	if f.done == m || f.lastFailure() == m {
 		t.overtake(withPower...)
 	}
 	for k := range f.before {
@@ -359,7 +360,7 @@ func (f facts) powerOn(t teller, step string) bool {
 	}
 	proved := map[string]bool{}
 	for _, s := range f.statics {
-		if !s.passed || s.at == never || s.at <= f.done || s.at > f.now {
+		if !s.passed || s.at == never || s.at <= f.done || s.at <= f.lastFailure() || s.at > f.now {
 			return false
 		}
 		proved[s.position] = true
@@ -369,10 +370,24 @@ func (f facts) powerOn(t teller, step string) bool {
 			return false
 		}
 	}
+	if slices.ContainsFunc(f.failing, func(x failFact) bool { return (x.at == never || x.at > f.done) && (x.good == never || x.good > f.now) }) {
+		return false
+	}
 	b := t.said[step]
 	tested := b.motor == "unplugged" || (f.wasDone("motor-tested") && f.wasDone("cable-tested"))
 	brake := !slices.ContainsFunc(f.boards(), hasBrakeFact) || b.resistor != "connected" || f.wasDone("brake-resistor-tested")
 	return tested && brake
+}
+
+// lastFailure is when the board last failed under power; what is written for later has failed already.
+func (f facts) lastFailure() int {
+	last := never
+	for _, s := range f.steps {
+		if s.result == "failed" && (s.step == "load-tested" || s.step == "protections-proved") {
+			last = max(last, min(s.at, f.now))
+		}
+	}
+	return last
 }
 
 // wasDone tells whether the newest word on a step is that it is done; bad news counts from the day it is written.

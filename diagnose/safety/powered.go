@@ -71,8 +71,8 @@ func openRebuild(s scene) []Missing {
 // reason at several positions stand in one line.
 func openStatics(s scene) []Missing {
 	type line struct {
-		test, title, because string
-		positions            []string
+		test, title, because, flags string
+		positions                   []string
 	}
 	var lines []*line
 	seen := map[string]bool{}
@@ -87,16 +87,70 @@ func openStatics(s scene) []Missing {
 			k++
 		}
 		if k == len(lines) {
-			lines = append(lines, &line{t.Test, t.Title, because, nil})
+			lines = append(lines, &line{t.Test, t.Title, because, t.flags(), nil})
 		}
 		lines[k].positions = append(lines[k].positions, t.Position)
 	}
 	var m []Missing
 	for _, l := range lines {
 		m = append(m, Missing{3, "static test \"" + l.title + "\" is open at " + strings.Join(l.positions, ", ") + ": " + l.because,
-			"make it on the dead board and enter it for each: drivemend enter CASE " + l.test + " RESULT --position " + l.positions[0]})
+			s.onceRebuilt() + "make it on the dead board and enter it for each: drivemend enter CASE " + l.test + " RESULT" + l.flags})
 	}
 	return append(m, s.unproved(seen)...)
+}
+
+// onceRebuilt puts the rebuild before the static tests: what is read earlier is of the board as found.
+func (s scene) onceRebuilt() string {
+	if s.come(s.done) {
+		return ""
+	}
+	return "first enter rebuild.done, a reading before it does not count; then "
+}
+
+// openFailing asks that no reading since the rebuild speaks for a fault. Such a reading stands, whatever its time, until
+// a good one of the same place has come to be, or a newer rebuild.
+func openFailing(s scene) []Missing {
+	failing := s.evidence.Failing
+	for _, m := range s.evidence.Mended {
+		if !s.come(m.Good) {
+			f := m.Static
+			f.Because += "; the good reading since " + s.dated(m.Good)
+			failing = append(failing[:len(failing):len(failing)], f)
+		}
+	}
+	var m []Missing
+	for _, f := range failing {
+		if f.At.IsZero() || f.At.After(s.done) {
+			m = append(m, Missing{3, "\"" + f.Title + "\" speaks for a fault" + f.where() + ": " + f.Because + s.entryTime(f.At),
+				"mend it, then enter rebuild.done anew, or read the same again on the dead board: drivemend enter CASE " + f.Test + " RESULT" + f.flags() +
+					"; a reading of what the rebuild took out is entered with its own time (--at)"})
+		}
+	}
+	return m
+}
+
+// where names the place of a reading in words; "" for the board as a whole.
+func (s Static) where() string {
+	switch {
+	case s.Part != "" && s.Position != "":
+		return " at " + s.Part + " (" + s.Position + ")"
+	case s.Part != "" || s.Position != "":
+		return " at " + s.Part + s.Position
+	}
+	return ""
+}
+
+// flags is how the place of a reading is entered.
+func (s Static) flags() string {
+	switch {
+	case s.Part != "" && s.Lifted:
+		return " --part " + s.Part + " --lifted"
+	case s.Part != "":
+		return " --part " + s.Part
+	case s.Position != "":
+		return " --position " + s.Position
+	}
+	return ""
 }
 
 // staticFault says why a static test does not count as passed; "" when it does.
@@ -112,6 +166,8 @@ func (s scene) staticFault(t Static) string {
 		return "its reading " + s.dated(t.At)
 	case !t.At.After(s.done):
 		return "read at " + clock(t.At) + ", not after the rebuild"
+	case !t.At.After(s.failedUnderPower()):
+		return "read at " + clock(t.At) + ", not after the step under power that failed"
 	}
 	return ""
 }

@@ -25,7 +25,7 @@ func (w writer) board() boardFacts {
 		highest:  pick(w, 60, 390, 800), running: pick(w, 0, 3, 20),
 		fuse: pick(w, "", "", "none", "unknown", "5 A", "63 A"), halves: pick(w, "", "", "yes", "no", "unknown"),
 		reservoir: pick(w, "", "", "", "none", "unknown", "10 µF"), recovery: pick(w, "", "", "", "unknown", "10 µF"),
-		snubber: pick(w, "", "none", "capacitor", "rc", "rcd", "clamp", "suppressor", "decoupling", "recovery"), capacitor: pick(w, "", "1 nF", "10 µF"),
+		snubber: pick(w, "", "unknown", "none", "capacitor", "rc", "rcd", "clamp", "suppressor", "decoupling", "recovery"), capacitor: pick(w, "", "1 nF", "10 µF"),
 		brake: pick(w, "", "", "yes", "no", "unknown"), brakeOhm: pick(w, "", "", "", "47 Ω"),
 		aux: pick(w, "", "yes", "no", "unknown"), auxCap: pick(w, "", "none", "unknown", "47 µF"), bank: pick(w, "", "2200 µF", "2200 µF", "none", "unknown"),
 	})
@@ -86,6 +86,7 @@ func (w writer) goodOrder() facts {
 			f.statics = append(f.statics, staticFact{p, true, f.done + 1 + w.IntN(40)})
 		}
 	}
+	f.failing = []failFact{{f.done + 1, f.done + 2}}
 	return f
 }
 
@@ -140,7 +141,7 @@ func (w writer) spoil(f *facts) {
 	at := w.moment(*f)
 	iso, check := &f.isolations[w.IntN(len(f.isolations))], &f.checks[w.IntN(len(f.checks))]
 	said, step := &f.before[w.IntN(len(f.before))], &f.steps[w.IntN(len(f.steps))]
-	switch w.IntN(26) {
+	switch w.IntN(28) {
 	case 0:
 		iso.at = at
 	case 1:
@@ -191,6 +192,8 @@ func (w writer) spoil(f *facts) {
 		*s = pick(w, staticFact{s.position, false, s.at}, staticFact{s.position, true, never}, staticFact{s.position, true, at}, f.statics[0])
 	case 24:
 		f.done = pick(w, never, at)
+	case 26, 27:
+		f.failing = append(f.failing, failFact{pick(w, at, at, f.done, never), pick(w, never, w.moment(*f), w.moment(*f))})
 	case 25:
 		f.now += pick(w, 5, 12, 440, 481, 900, 1440)
 	}

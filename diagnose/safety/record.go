@@ -20,7 +20,8 @@ const (
 type RecordStatus struct {
 	Step    RecordStep
 	Last    *measure.StepEntry // what counts; nil without an entry
-	Settled bool               // done, not possible or not fitted
+	Settled bool               // done, not possible, or not fitted where the board may lack it
+	Because string             // why the entry that counts does not settle a step that was not done; "" else
 	Applies bool               // this board and this stage of the job ask for it
 	Due     time.Time          // of the follow-up; zero for the others
 	Missing []Missing          // what withholds it now; empty when it may be done
@@ -59,13 +60,30 @@ type recordAt struct {
 
 func (r recordAt) status(step RecordStep) RecordStatus {
 	s := RecordStatus{Step: step, Last: entryOf(r.c.Steps, step.ID, r.now), Applies: r.applies(step)}
-	s.Settled = s.Last != nil && settles(s.Last.Result) && !s.Last.At.IsZero() && !s.Last.At.After(r.now)
+	s.Settled = s.Last != nil && settles(*s.Last) && !s.Last.At.IsZero() && !s.Last.At.After(r.now)
+	if s.Last != nil && s.Last.Result == resultNotFitted && !MayLack(step.ID) {
+		s.Because = notLacking
+	}
 	s.Missing = Check(r.c, step.Work, r.now, r.evidence).Missing
 	return s
 }
 
-func settles(result string) bool {
-	return result == resultDone || result == resultNotPossible || result == resultNotFitted
+func settles(e measure.StepEntry) bool {
+	return e.Result == resultDone || e.Result == resultNotPossible || e.Result == resultNotFitted && MayLack(e.Step)
+}
+
+// notLacking is why not-fitted does not settle a step that every board has.
+const notLacking = "no board lacks this: where it cannot be done, enter not-possible with a note"
+
+// MayLack tells whether a board may lack what a step is about: a fault memory, settings, a motor, its cable, a brake
+// resistor. Only such a step is settled by not-fitted.
+func MayLack(step string) bool {
+	switch step {
+	case measure.StepFaultLogRead, measure.StepSettingsSaved, measure.StepSettingsRestored,
+		measure.StepMotorTested, measure.StepCableTested, measure.StepBrakeResistorTested:
+		return true
+	}
+	return false
 }
 
 // weight orders the results of one moment: the one that says least for the board counts.
@@ -132,6 +150,9 @@ func beforeHandOver(done []RecordStatus) []Missing {
 		why := "is not on record"
 		if s.Last != nil {
 			why = "is on record as " + s.Last.Result
+		}
+		if s.Because != "" {
+			why += "; " + s.Because
 		}
 		m = append(m, Missing{3, "before the board is handed over: \"" + s.Step.Title + "\" " + why,
 			"do it and enter it: drivemend record step CASE " + s.Step.ID + " done; where it cannot be done: drivemend record step CASE " + s.Step.ID + " not-possible --note WORDS"})

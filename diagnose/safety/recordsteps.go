@@ -68,9 +68,10 @@ var recordSteps = []RecordStep{
 	{measure.StepBrakeResistorTested, AfterRepair, "brake resistor tested", "Did the brake resistor pass: its resistance, and against its case?",
 		"Electronics disconnected: take both leads off the drive. It can be hot for a long time after work: let it cool. Resistance against the plate, then against the case with the insulation tester; " +
 			"discharge it to its case afterwards. A resistor that is shorted or too small kills the brake switch at its first pulse.", insulated},
-	{measure.StepLoadTested, AfterRepair, "tested under load", "Does the machine turn freely, and does the board hold its full load?",
-		"First the machine by hand, isolated: does it turn? Then rising speed and load, with a second person at the switch, watching current, temperature and noise; stop at anything that is not as predicted. " +
-			"Nobody stands near what turns.", Work{Need: NeedFull}},
+	{measure.StepLoadTested, AfterRepair, "tested under load on the bench", "Did the board carry its running current on the bench, into a dummy load or a motor that turns freely?",
+		"On the bench: a dummy load, or the motor with its shaft free or the wheels up, its shaft turned by hand first while all is isolated. Then rising current, up to the running current and no further, " +
+			"with a second person at the switch, watching current, temperature and noise; stop at anything that is not as predicted. Nobody stands near what turns. " +
+			"Full load in the machine belongs to its commissioning after the hand-over, under local rules.", Work{Need: NeedFull}},
 	{measure.StepHandedOver, AfterRepair, "handed over", "Is the machine handed over to whoever runs it, with the report?",
 		"Say what broke, what let it happen, what was changed and what to watch. Leave the report with them.", look},
 	{measure.StepFollowedUp, AfterRepair, "asked again after 30 days", "Does it still run, 30 days after it was handed over?",

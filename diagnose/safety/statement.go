@@ -89,15 +89,6 @@ func (s scene) lack(step string, b measure.Before) Missing {
 		strings.Join(dos, "; ") + "; then state everything anew: " + s.command(step, b)}
 }
 
-// dated says of a time that has not come to be what is wrong with it.
-func (s scene) dated(at time.Time) string {
-	if at.IsZero() {
-		return "carries no time"
-	}
-	moment, _ := clocks(at, s.now)
-	return "is dated " + moment + ", in the future"
-}
-
 // notYet names a full statement that does not count because of its time; "" without one.
 func (s scene) notYet(step string) string {
 	for _, b := range s.safety.Before {
@@ -145,5 +136,25 @@ func (s scene) barriers(step string) []barrier {
 	for _, l := range s.safety.Links {
 		out = append(out, barrier{l.Fitted, "the fitting of the link"}, barrier{l.Removed, "the taking off of the link"})
 	}
-	return append(out, barrier{s.done, "the rebuild"})
+	return append(out, barrier{s.done, "the rebuild"}, barrier{s.failedUnderPower(), "the step under power that failed, entered with the time"})
+}
+
+// failedUnderPower is the last moment at which a step under power failed, zero without one: what was proved and stated
+// before it may no longer be so. One of the future, or without a time, has failed now.
+func (s scene) failedUnderPower() time.Time {
+	var last time.Time
+	for _, e := range s.steps {
+		step, ok := recordStep(e.Step)
+		if !ok || !step.Work.Need.Powered() || e.Result != resultFailed {
+			continue
+		}
+		at := e.At
+		if !s.come(at) {
+			at = s.now
+		}
+		if at.After(last) {
+			last = at
+		}
+	}
+	return last
 }

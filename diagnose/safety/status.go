@@ -18,6 +18,7 @@ type Status struct {
 	Dead      bool          // isolated, no link, every store fresh and dead: ohms may be offered
 	Unplaced  []string      // points of dead checks that this board does not have
 	Alarms    []string      // readings above the highest voltage that is stated for the bus
+	Spared    []string      // stores that need no check now, and why
 }
 
 // IsolationStatus tells whether the board counts as cut off from every source.
@@ -62,7 +63,11 @@ func (h history) status() Status {
 	stores := h.stores()
 	s.Alarms = alarmsOf(stores)
 	burn := burns(h.boards, stores)
-	for _, store := range standing(stores, s.Isolation) {
+	checked := standing(stores, s.Isolation)
+	if len(checked) < len(stores) {
+		s.Spared = []string{PointPhases + ": needs no check while the motor is unplugged"}
+	}
+	for _, store := range checked {
 		p := h.pointStatus(store, s, burn)
 		s.Dead = s.Dead && p.Dead
 		s.Points = append(s.Points, p)
@@ -93,7 +98,7 @@ func (h history) isolationStatus() IsolationStatus {
 	if s.Last != nil && !s.Last.At.IsZero() && !s.Last.At.After(h.now) {
 		s.Age, s.Reconfirm = h.now.Sub(s.Last.At), lapsed(s.Last.At, h.now)
 	}
-	s.Missing = h.isolationMissing(s)
+	s.Missing = h.withAhead(h.isolationMissing(s), s.Last)
 	if len(s.Missing) == 0 {
 		s.Since = h.isolatedSince()
 		s.Isolated = !s.Since.IsZero()
@@ -115,7 +120,7 @@ func (h history) isolationMissing(s IsolationStatus) []Missing {
 		return []Missing{{0, "a dead check read AC above " + format(DeadVolts, quantity.Volt) + " at a moment that is not stated or lies in the future: a source may still be connected",
 			"correct that time in the case file; then isolate again and find the source"}}
 	case s.Last == nil:
-		return []Missing{{0, "no isolation is stated", "cut the board off from every source, lock it, unplug the motor or lock its shaft, and enter it: " + isolationCommand}}
+		return []Missing{{0, neverIsolated, "cut the board off from every source, lock it, unplug the motor or lock its shaft, and enter it: " + isolationCommand}}
 	case len(isolationFaults(h.boards, s.Last)) > 0:
 		return isolationFaults(h.boards, s.Last)
 	case !s.Last.At.After(s.Energised):
@@ -132,6 +137,35 @@ func (h history) isolationMissing(s IsolationStatus) []Missing {
 	return nil
 }
 
+// withAhead adds to what is missing that a sound statement does not count because of its time.
+func (h history) withAhead(m []Missing, last *measure.Isolation) []Missing {
+	ahead := h.isolationAhead()
+	if len(m) == 0 || ahead == nil {
+		return m
+	}
+	text := "the isolation on record " + h.dated(ahead.At) + ", and does not count before its time"
+	if last == nil && m[0].Text == neverIsolated {
+		m[0].Text = text
+	} else {
+		m[0].Text += "; " + text
+	}
+	m[0].Unlock = "correct that time in the case file if it is wrong; else " + m[0].Unlock
+	return m
+}
+
+// isolationAhead gives the first sound statement of isolation whose time has not come to be; nil without one.
+func (h history) isolationAhead() *measure.Isolation {
+	for k := range h.safety.Isolation {
+		i := &h.safety.Isolation[k]
+		if !h.come(i.At) && len(isolationFaults(h.boards, i)) == 0 {
+			return i
+		}
+	}
+	return nil
+}
+
+const neverIsolated = "no isolation is stated"
+
 // sourceText says what AC at a store means: a bank gives none.
 func sourceText(d *measure.DeadCheck) string {
 	return "AC " + format(highestOf(d.AC), quantity.Volt) + ": a source is still connected; isolate again and find it"
@@ -142,6 +176,7 @@ func (h history) pointStatus(store Store, s Status, burn bool) PointStatus {
 	if p.Last == nil {
 		p.Missing = []Missing{{1, fmt.Sprintf("no dead check at %s: %s%s", store.Point, store.Title, worstText(store)),
 			"measure DC and AC " + store.Where + " and " + checkCommand(store.Point) + ruledOut(store)}}
+		p.Missing = afterIsolation(p, s)
 		return p
 	}
 	p.Age, p.ExpiresAt = h.now.Sub(p.Last.At), p.Last.At.Add(CheckLife)
@@ -151,7 +186,23 @@ func (h history) pointStatus(store Store, s Status, burn bool) PointStatus {
 	}
 	p.Missing = h.checkFaults(store, p.Last, s, p.Touch)
 	p.Dead = len(p.Missing) == 0
+	p.Missing = afterIsolation(p, s)
 	return p
+}
+
+// afterIsolation takes out how a store is checked and emptied while the board is not cut off: nothing is told that would
+// bring somebody near a live store.
+func afterIsolation(p PointStatus, s Status) []Missing {
+	if len(s.Isolation.Missing) == 0 {
+		return p.Missing
+	}
+	for k := range p.Missing {
+		if p.Missing[k].Unlock == alarmUnlock {
+			continue
+		}
+		p.Missing[k].Unlock = "after the isolation: the dead check at " + p.Store.Point
+	}
+	return p.Missing
 }
 
 // worstText puts the figures of a store in words, ", up to 390 V, 167.3 J", with what is doubtful about them.

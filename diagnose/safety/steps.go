@@ -53,7 +53,7 @@ func storeSteps(d StoreDischarge, r Resistor) []Step {
 	if s.ToCheck {
 		name += " (if fitted)"
 	}
-	first := Step{s.Point, fmt.Sprintf("%s: measure DC and AC %s. It can stand at %s%s.", name, s.Where, format(s.Voltage.Value, quantity.Volt), heldText(s))}
+	first := Step{s.Point, fmt.Sprintf("%s: measure DC and AC %s. It can stand at %s%s.", name, s.Where, format(s.Voltage.Value, quantity.Volt), heldText(d))}
 	if s.Capacitance.Basis == None {
 		first.Text += " Above 5 V, DC or AC: find and cut off what feeds it, discharge the bus, measure again."
 		return []Step{first}
@@ -98,13 +98,16 @@ func levelsText(t Times) string {
 }
 
 // heldText says what a store can hold, and what a reading adds to it.
-func heldText(s Store) string {
-	text := ""
+func heldText(d StoreDischarge) string {
+	s, text := d.Store, ""
 	if s.Capacitance.Basis != None {
 		text = ", " + s.energyText()
 		if s.assumed() {
 			text += ", worst case assumed"
 		}
+	}
+	if u := d.Uneven; u != nil {
+		text += "; out of balance at " + format(u.Volt, quantity.Volt) + ", the whole bus, " + format(u.EnergyJ, quantity.Joule)
 	}
 	if s.Expected.Basis != None {
 		text += "; it was " + s.Voltage.Because

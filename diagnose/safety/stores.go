@@ -179,16 +179,22 @@ func reservoir(b measure.Board, bus Store) []Store {
 	return []Store{s.filled()}
 }
 
+// clamp is the capacitor of a clamp, and of a network whose kind nobody could tell: it may be one.
 func clamp(b measure.Board, bus Store) []Store {
-	if kind, _ := b.Word("snubber.kind"); kind != "clamp" {
+	kind, _ := b.Word("snubber.kind")
+	doubt := b.Unknown("snubber.kind")
+	if kind != "clamp" && !doubt {
 		return nil
+	}
+	because := "it stands above the bus; with its resistor open it keeps the charge"
+	if doubt {
+		because += "; snubber.kind is unknown: state it, or none"
 	}
 	v := pumped(b, bus)
 	if q, ok := positive(b, "snubber.clamp_voltage"); ok {
 		v = stated(b, "snubber.clamp_voltage", q)
 	}
-	s := Store{Point: PointClamp, Title: "clamp capacitor", Where: "at the clamp capacitor's own terminals",
-		Because: "it stands above the bus; with its resistor open it keeps the charge",
+	s := Store{Point: PointClamp, Title: "clamp capacitor", Where: "at the clamp capacitor's own terminals", ToCheck: doubt, Because: because,
 		Voltage: v, Capacitance: firstCapacitance(b, worstClamp, "snubber.capacitance")}
 	return []Store{s.filled()}
 }

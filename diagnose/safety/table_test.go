@@ -110,7 +110,7 @@ func powerStates(t testing.TB) []state {
 		{"power at no time", power(time.Time{}), touching},
 		{"power in the future", power(at(t, "10:30")), touching},
 		{"a powered step of the record", func(c *measure.Case, _ *Evidence) {
-			c.Steps = append(c.Steps, measure.StepEntry{Step: measure.StepLoadTested, Result: "failed", At: at(t, "10:09")})
+			c.Steps = append(c.Steps, measure.StepEntry{Step: measure.StepLoadTested, Result: "done", At: at(t, "10:09")})
 		}, touching},
 		{"a stage of the bring-up at no time", func(c *measure.Case, _ *Evidence) { c.BringUp = []measure.Stage{{Stage: "first"}} }, touching},
 	}
@@ -234,6 +234,19 @@ func recordStates(t testing.TB) []state {
 	static := func(change func(s *Static)) func(*measure.Case, *Evidence) {
 		return func(_ *measure.Case, e *Evidence) { change(&e.Statics[3]) }
 	}
+	failing := func(clock, good string) func(*measure.Case, *Evidence) {
+		return func(_ *measure.Case, e *Evidence) {
+			s := Static{Test: "gate-look", Title: "look of the gates", Position: "u-high", Because: "reads burnt"}
+			if clock != "" {
+				s.At = at(t, clock)
+			}
+			if good == "" {
+				e.Failing = append(e.Failing, s)
+			} else {
+				e.Mended = append(e.Mended, Mended{s, at(t, good)})
+			}
+		}
+	}
 	return []state{
 		{"no rebuild", func(c *measure.Case, _ *Evidence) { c.Rebuild = nil }, powered},
 		{"rebuild not done", func(c *measure.Case, _ *Evidence) { c.Rebuild.Done = time.Time{} }, powered},
@@ -250,6 +263,12 @@ func recordStates(t testing.TB) []state {
 		{"a static test at no time", static(func(s *Static) { s.At = time.Time{} }), powered},
 		{"a static test in the future", static(func(s *Static) { s.At = at(t, "10:13") }), powered},
 		{"a static test before the rebuild", static(func(s *Static) { s.At = at(t, "07:59") }), powered},
+		{"a dead test that fails", failing("09:30", ""), powered},
+		{"a dead test that fails in the future", failing("10:30", ""), powered},
+		{"a dead test that fails at no time", failing("", ""), powered},
+		{"a dead test that failed, and passed since", failing("09:30", "09:45"), none},
+		{"a dead test that failed, and passes in the future", failing("09:30", "10:13"), powered},
+		{"a dead test that failed before the rebuild", failing("07:59", ""), none},
 		{"motor not tested", func(c *measure.Case, _ *Evidence) { c.Steps = c.Steps[1:] }, powered},
 		{"motor failed since", entry(measure.StepMotorTested, "failed", "09:30"), powered},
 		{"motor failed in the future", entry(measure.StepMotorTested, "failed", "11:30"), powered},

@@ -9,7 +9,7 @@ type Tool string
 const (
 	NoTool          Tool = ""
 	ToolScope       Tool = "scope"             // hold point 4: the probe's reference
-	ToolInjection   Tool = "injection"         // hold point 4: current through a shorted bank
+	ToolInjection   Tool = "injection"         // hold point 4: current from a limited supply
 	ToolInsulation  Tool = "insulation-tester" // hold point 3: only with the electronics disconnected
 	ToolDoublePulse Tool = "double-pulse"      // hold point 3: behind a shield; 4: read with a scope
 )
@@ -32,14 +32,25 @@ func (w Work) Energises() bool { return w.Need.Powered() || w.Tool == ToolInsula
 type Evidence struct {
 	Powered []time.Time // when a test put energy into the board; a zero time speaks against everything
 	Statics []Static    // for every position of the board, every static test it has to pass
+	Failing []Static    // other dead tests whose newest reading after the rebuild, at its place, speaks for a fault
+	Mended  []Mended    // those that a newer good reading of the same place has answered
 }
 
-// Static is one static test of one position, as it stands after the rebuild.
+// Static is one static test of one position, as it stands after the rebuild; among Failing, one reading of a dead test.
 type Static struct {
-	Test, Title, Position string
+	Test, Title, Position string // Position: "" for the board as a whole
+	Part                  string // the part that was read by itself; "" for a position or the board
+	Lifted                bool   // the part was read with a lead lifted
 	Passed                bool
 	At                    time.Time // of the newest reading it rests on; zero without one
 	Because               string    // why it is not passed, in words; "" when it is
+}
+
+// Mended is a reading that spoke for a fault, and when a good one of the same place followed. The good one counts once
+// its time has come: until then the first one stands.
+type Mended struct {
+	Static
+	Good time.Time
 }
 
 // NamedWork is one kind of work with its name in plain words.
@@ -59,8 +70,10 @@ func Works() []NamedWork {
 		{Work{NeedDead, ToolInsulation}, "insulation tester"},
 		{Work{NeedControlPower, NoTool}, "control power, bus disconnected"},
 		{Work{NeedControlPower, ToolScope}, "scope on control power"},
+		{Work{NeedControlPower, ToolInjection}, "current without bus"},
 		{Work{NeedLowBus, NoTool}, "current-limited bus"},
 		{Work{NeedLowBus, ToolScope}, "scope on a current-limited bus"},
+		{Work{NeedLowBus, ToolInjection}, "current through a power path"},
 		{Work{NeedLowBus, ToolDoublePulse}, "double pulse on a current-limited bus"},
 		{Work{NeedFull, NoTool}, "full bus"},
 		{Work{NeedFull, ToolScope}, "scope on the full bus"},

@@ -44,7 +44,7 @@ func notAChopper(topology string) string {
 	if topology == "" || topology == "other" {
 		return "opening edge: state low-side-chopper or high-side-chopper if one switch feeds the load and a diode carries it on"
 	}
-	return "edges of a " + topology + " are not worked out yet, only those of a chopper; until then keep the captured peak under 80 % of the rating"
+	return "edges of " + article(topology) + " are not worked out yet, only those of a chopper; until then keep the captured peak under 80 % of the rating"
 }
 
 // setScene fixes what does not vary.
@@ -154,4 +154,12 @@ func (p *problem) lifts() []string {
 		out = append(out, "snubber.kind")
 	}
 	return out
+}
+
+// article puts a or an before a topology.
+func article(topology string) string {
+	if topology == "h-bridge" || topology == "other" {
+		return "an " + topology
+	}
+	return "a " + topology
 }

@@ -127,36 +127,40 @@ func (f *Forms) menu(q Question, text *string) huh.Field {
 		wide = max(wide, utf8.RuneCountInString(c.Word))
 	}
 	var options []huh.Option[string]
-	add := func(word, means, value string) {
-		label := strings.TrimRight(fmt.Sprintf("%-*s  %s", wide, word, means), " ")
-		options = append(options, huh.NewOption(fit(Clean(label), f.lines.width-4), value))
+	var words []pick
+	add := func(word, means, value string, typed ...string) {
+		options = append(options, huh.NewOption(f.label(word, means, wide), value))
+		if value != "" {
+			words = append(words, pick{typed, value})
+		}
 	}
 	if q.Enter == "" {
-		add("", "choose with the arrows", "") // Enter alone stands on no answer
+		add("", menuKeys, "") // Enter alone stands on no answer
 	}
 	for _, c := range q.Choices {
-		add(c.Word, c.Means, c.Word)
+		add(c.Word, c.Means, c.Word, c.Word)
 	}
 	for _, a := range q.Asides {
-		add(a.Word, "("+a.Means+")", asideMark+a.Word)
+		add(a.Word, "("+a.Means+")", asideMark+a.Word, a.Word)
 	}
 	for _, c := range q.commands() {
-		add(c.means, "", c.words[len(c.words)-1])
+		add(c.means, "", c.words[len(c.words)-1], append(c.words, c.means)...)
 	}
 	*text = q.Enter
-	return huh.NewSelect[string]().Options(options...).Value(text).Validate(func(value string) error {
+	field := huh.NewSelect[string]().Options(options...).Value(text).Validate(func(value string) error {
 		if value == "" {
-			_, err := q.enter()
-			return err
+			return errors.New("Enter alone answers nothing here; " + menuKeys)
 		}
 		return nil
 	})
+	return &picker{Select: field, value: text, words: words}
 }
 
-// fit cuts a label to a width.
-func fit(label string, width int) string {
-	if utf8.RuneCountInString(label) <= width {
-		return label
-	}
-	return string([]rune(label)[:width-1]) + "…"
+// menuKeys says how a menu is answered.
+const menuKeys = "choose with the arrows, or type how a word begins; then Enter"
+
+// label is one entry of a menu. A long meaning goes on below its first line.
+func (f *Forms) label(word, means string, wide int) string {
+	head := fmt.Sprintf("%-*s  ", wide, Clean(word))
+	return strings.Join(Wrapped(Clean(means), head, strings.Repeat(" ", wide+2), f.lines.width-4), "\n")
 }

@@ -83,6 +83,12 @@ func TestForms(t *testing.T) {
 	}{
 		{"the second of a menu", moment, []string{down, down, enter}, Answer{Given, "stall"}, "> stall"},
 		{"Enter alone chooses nothing", moment, []string{enter, down, enter}, Answer{Given, "start"}, "Enter alone answers nothing"},
+		{"the beginning of a word moves to it", moment, []string{"s", "t", "a", "l", enter}, Answer{Given, "stall"}, "> stall"},
+		{"pasted at once", moment, []string{"stall", enter}, Answer{Given, "stall"}, "> stall"},
+		{"letters of no word begin anew", moment, []string{"x", "z", "s", enter}, Answer{Given, "start"}, "> start"},
+		{"letters that move the cursor elsewhere do not", moment, []string{"j", "k", "g", "G", "/", enter, "q", "u", enter}, Answer{Kind: Quit}, "Enter alone answers nothing"},
+		{"a command by its sign", moment, []string{"?", enter}, Answer{Kind: Skipped}, "> don't know"},
+		{"an arrow ends a word", moment, []string{"s", "t", down, "a", enter}, Answer{Given, "stall"}, "> stall"},
 		{"a typed reading", reading, []string{"0", ".", "4", enter}, Answer{Given, "0.4"}, "> 0.4"},
 		{"a wrong unit, mended", reading, []string{"3V", enter, "3", enter}, Answer{Given, "3"}, "that is in V"},
 		{"danger needs the word", danger, []string{enter, "y", enter, "yes", enter}, Answer{Given, "yes"}, "Enter alone confirms nothing"},
@@ -98,5 +104,28 @@ func TestForms(t *testing.T) {
 				t.Errorf("%q is not on the screen:\n%q", c.says, screen)
 			}
 		})
+	}
+}
+
+// TestMenuSaysHowItIsAnswered: words cannot be typed out in a menu, and nothing on the screen asks for it.
+func TestMenuSaysHowItIsAnswered(t *testing.T) {
+	_, screen := form(t, moment, enter, down, enter)
+	if strings.Contains(screen, "one of:") || strings.Count(screen, menuKeys) < 2 {
+		t.Errorf("the screen says\n%q", screen)
+	}
+}
+
+// TestLongMeaningIsNotCut: what a choice means stands there in full, below its first line.
+func TestLongMeaningIsNotCut(t *testing.T) {
+	q := Question{Title: "Steps", Ask: "Which?", Choices: []Choice{{"one", strings.Repeat("locked by what stands before it, ", 5) + "and the end"}, {"two", ""}}}
+	_, screen := form(t, q, down, enter)
+	if strings.Contains(screen, "…") || !strings.Contains(screen, "and the end") {
+		t.Errorf("the screen says\n%q", screen)
+	}
+	f := NewForms(nil, nil, 80)
+	for i, line := range strings.Split(f.label(q.Choices[0].Word, q.Choices[0].Means, 6), "\n") {
+		if n := len([]rune(line)); n > 76 || i > 0 && !strings.HasPrefix(line, "        ") || i == 0 && !strings.HasPrefix(line, "one     locked") {
+			t.Errorf("line %d is %q", i, line)
+		}
 	}
 }
