@@ -149,7 +149,7 @@ func (f *Forms) menu(q Question, text *string) huh.Field {
 	*text = q.Enter
 	field := huh.NewSelect[string]().Options(options...).Value(text).Validate(func(value string) error {
 		if value == "" {
-			return errors.New("Enter alone answers nothing here; " + menuKeys)
+			return errors.New("nothing is chosen yet, and Enter alone answers nothing here; " + menuKeys)
 		}
 		return nil
 	})
