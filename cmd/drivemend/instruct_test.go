@@ -44,7 +44,7 @@ func TestEveryCommandSaysWhatItInstructs(t *testing.T) {
 	}
 }
 
-// state is one safety record of a board with five stores, rebuilt and tested, as it is written into a case file.
+// state is one safety record of a board with eight stores, rebuilt and tested, as it is written into a case file.
 type state struct {
 	name                       string
 	statement                  string // the statement that alone differs from the sound state, "" for any other difference
@@ -58,19 +58,19 @@ type state struct {
 
 const (
 	gridNow     = "2026-12-01T10:00:00+01:00"
-	gridBoard   = "{topology: low-side-chopper, supply: battery, bus: {nominal: 48 V, capacitance: 4700 µF, halves: yes, fuse: 8 A, reservoir: 100 µF}, positions: {low: {parts: [Q1]}}, switch: {kind: mosfet}, load: {kind: dc-motor}, stages: {auxiliary: {fitted: no}}, history: first-failure}"
+	gridBoard   = "{topology: low-side-chopper, supply: battery, bus: {nominal: 48 V, capacitance: 4700 µF, halves: yes, fuse: 8 A, reservoir: 100 µF}, positions: {low: {parts: [Q1]}}, switch: {kind: mosfet}, snubber: {kind: clamp, capacitance: 1 µF}, load: {kind: dc-motor}, stages: {auxiliary: {primary_capacitance: 47 µF}}, history: first-failure}"
 	gridStatics = "power-terminals-resistance: blocking, gate-resistance: good, gate-pull-down: present, freewheel-diode-drop: normal, freewheel-path-check: closed"
 	goodGear    = "motor: unplugged, fuse: 3 A, bank: in-use, guard: yes, remote_off: yes, glasses: yes, second_person: yes"
 )
 
-// gridStores are the stores of the grid's board, as isolated with the motor unplugged.
-var gridStores = []string{"bus", "upper-half", "lower-half", "fused-bank", "reservoir"}
+// gridStores are the stores of the grid's board, as isolated with the shaft locked.
+var gridStores = []string{"bus", "upper-half", "lower-half", "fused-bank", "reservoir", "clamp", "phases", "auxiliary"}
 
 // sound is the state in which every kind of work may be done.
 func sound() state {
 	at := "at: 2026-12-01T09:59:00+01:00, "
 	s := state{name: "everything stated", now: gridNow, checks: map[string]string{}, done: "2026-12-01T09:55:30+01:00", statics: gridStatics,
-		isolation: "{locked: yes, motor: unplugged, other_sources: none, at: 2026-12-01T09:50:00+01:00}"}
+		isolation: "{locked: yes, motor: shaft-locked, other_sources: none, at: 2026-12-01T09:50:00+01:00}"}
 	for _, step := range []string{"low-bus", "full"} {
 		s.before = append(s.before, "{step: "+step+", "+at+goodGear+"}")
 	}
@@ -122,8 +122,10 @@ func but(name string, change func(*state)) state {
 // grid are the states that the instructions are tried in: each store unproved in turn, every age, the isolation, the
 // link, power, the rebuild, and each condition of a statement left out.
 func grid() []state {
-	out := []state{sound(), {name: "nothing stated", now: gridNow, checks: map[string]string{"bus": "-", "upper-half": "-", "lower-half": "-", "fused-bank": "-", "reservoir": "-"}}}
+	nothing := state{name: "nothing stated", now: gridNow, checks: map[string]string{}}
+	out := []state{sound(), nothing}
 	for _, store := range gridStores {
+		nothing.checks[store] = "-"
 		out = append(out, but("no check at "+store, func(s *state) { s.checks[store] = "-" }))
 	}
 	for name, check := range map[string]string{
@@ -132,11 +134,17 @@ func grid() []state {
 		"check just alive": "dc: 0.2 V, ac: 0.0 V, meter_proved: yes, at: 2026-12-01T09:50:01+01:00", "check run out": "dc: 0.2 V, ac: 0.0 V, meter_proved: yes, at: 2026-12-01T09:50:00+01:00",
 		"check in the future": "dc: 0.2 V, ac: 0.0 V, meter_proved: yes, at: 2026-12-01T10:00:01+01:00",
 	} {
-		out = append(out, but(name, func(s *state) { s.checks["reservoir"] = check }))
+		stores := gridStores
+		if testing.Short() {
+			stores = stores[4:5]
+		}
+		for _, store := range stores {
+			out = append(out, but(name+" at "+store, func(s *state) { s.checks[store] = check }))
+		}
 	}
 	for name, isolation := range map[string]string{
 		"no isolation": "", "not locked": "{locked: no, motor: unplugged, other_sources: none, at: 2026-12-01T09:50:00+01:00}",
-		"motor connected": "{locked: yes, motor: connected, other_sources: none, at: 2026-12-01T09:50:00+01:00}", "shaft locked": "{locked: yes, motor: shaft-locked, other_sources: none, at: 2026-12-01T09:50:00+01:00}",
+		"motor connected": "{locked: yes, motor: connected, other_sources: none, at: 2026-12-01T09:50:00+01:00}", "motor unplugged": "{locked: yes, motor: unplugged, other_sources: none, at: 2026-12-01T09:50:00+01:00}",
 		"a source on": "{locked: yes, motor: unplugged, other_sources: charger, at: 2026-12-01T09:50:00+01:00}", "isolated yesterday": "{locked: yes, motor: unplugged, other_sources: none, at: 2026-11-30T23:59:00+01:00}",
 		"isolated in the future": "{locked: yes, motor: unplugged, other_sources: none, at: 2026-12-01T10:00:01+01:00}",
 	} {
