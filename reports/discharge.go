@@ -200,7 +200,11 @@ func labelWords(b *safety.Bleeder) string {
 	case b.WithinFiveS:
 		return text + ": down to " + volts(safety.TouchVolts) + " within 5 s, so a board with it needs no label; a blown one is measured all the same"
 	}
-	return text + ": a label would name " + waitFor(b.LabelTimeS) + ", which leads to " + volts(safety.TouchVolts) + " and only while the bleeder is whole: a lower bound"
+	text += ": a label would name " + waitFor(b.LabelTimeS) + ", which leads to " + volts(safety.TouchVolts) + " and only while the bleeder is whole: a lower bound"
+	if b.NoLabelOhm > 0 {
+		text += "; without a label it would have to be " + quantity.Format(b.NoLabelOhm, quantity.Ohm) + " and burn " + quantity.Format(b.NoLabelW, quantity.Watt) + " all the time"
+	}
+	return text
 }
 
 // waitOr leaves a level that lies above the start empty.

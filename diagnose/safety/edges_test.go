@@ -120,3 +120,19 @@ func TestAScopeCaptureSaysThatPowerWasOn(t *testing.T) {
 		}
 	}
 }
+
+// The resistor that would do without a label brings the bank, at the top of its interval, to 60 V in just 5 s (closed
+// form).
+func TestTheBleederWithoutALabel(t *testing.T) {
+	in := Input{BusV: 565, CapacitanceF: 2000e-6, HighestF: 2200e-6, BleederOhm: 100e3, Supply: "rectified-mains"}
+	p, err := Discharge(in)
+	if err != nil {
+		t.Fatal(err)
+	}
+	near(t, "time to 60 V", TimeTo(p.Bleeder.NoLabelOhm, 2200e-6, 565, TouchVolts), 5, 1e-12)
+	near(t, "power", p.Bleeder.NoLabelW*p.Bleeder.NoLabelOhm, 565*565, 1e-12)
+	in.BleederOhm = 900
+	if p, err = Discharge(in); err != nil || p.Bleeder.NoLabelOhm != 0 {
+		t.Errorf("a bleeder that does it: %+v, %v", p.Bleeder, err)
+	}
+}

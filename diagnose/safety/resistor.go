@@ -154,6 +154,9 @@ type Bleeder struct {
 	Wait        Times   // with the capacitance at the top of its interval
 	LabelTimeS  float64 // what a label would name: down to 60 V, in whole minutes; a lower bound, while the bleeder is whole
 	WithinFiveS bool    // down to 60 V within 5 s, so no waiting time need be named
+	// NoLabelOhm would bring the bus to 60 V within 5 s, NoLabelW is what it would burn all the time; 0 where the bus
+	// stands no higher, or the bleeder does it.
+	NoLabelOhm, NoLabelW float64
 }
 
 func bleederOf(in Input) *Bleeder {
@@ -161,6 +164,9 @@ func bleederOf(in Input) *Bleeder {
 		Nominal: timesFrom(in.BleederOhm, in.CapacitanceF, in.BusV), Wait: timesFrom(in.BleederOhm, in.HighestF, in.BusV)}
 	b.WithinFiveS = b.Wait.To60V <= residualSeconds
 	b.LabelTimeS = 60 * math.Ceil(b.Wait.To60V/60)
+	if !b.WithinFiveS {
+		b.NoLabelOhm, b.NoLabelW, _ = BleederFor(in.HighestF, in.BusV, TouchVolts, residualSeconds)
+	}
 	return b
 }
 
