@@ -41,13 +41,22 @@ func TestOneQuestionServesAStretch(t *testing.T) {
 	within, all := 0, 0
 	rapid.Check(t, func(t *rapid.T) {
 		c := &measure.Case{ID: "drawn", Board: board, Safety: drawRecord(t)}
+		for range rapid.IntRange(0, 1).Draw(t, "captures") {
+			c.Captures = append(c.Captures, measure.Capture{Kind: "scope", At: minute(t, "captured")})
+		}
 		var powered []time.Time
 		for range rapid.IntRange(0, 1).Draw(t, "powered") {
 			powered = append(powered, minute(t, "power"))
 		}
 		work := safety.Work{Need: safety.NeedDead, Tool: rapid.SampledFrom([]safety.Tool{safety.NoTool, safety.NoTool, safety.ToolInsulation}).Draw(t, "tool")}
 		h := newHeld(c, powered)
-		readings := rapid.SliceOfN(rapid.Custom(func(t *rapid.T) time.Time { return minute(t, "read") }), 1, 12).Draw(t, "readings")
+		// Half of the readings follow a dead check closely, so that some are within.
+		readings := rapid.SliceOfN(rapid.Custom(func(t *rapid.T) time.Time {
+			if rapid.Bool().Draw(t, "anywhere") {
+				return minute(t, "read")
+			}
+			return rapid.SampledFrom(c.Safety.DeadChecks).Draw(t, "check").At.Add(time.Duration(rapid.IntRange(0, 11).Draw(t, "after")) * time.Minute)
+		}), 1, 12).Draw(t, "readings")
 		for _, at := range readings {
 			h.note(work, at)
 		}

@@ -16,6 +16,7 @@ func AsOf(c *measure.Case, at time.Time) *measure.Case {
 	then.Safety = safetyAsOf(c.Safety, at)
 	then.Observations = upTo(at, c.Observations, func(o measure.Observation) time.Time { return o.At })
 	then.Steps = upTo(at, c.Steps, func(s measure.StepEntry) time.Time { return s.At })
+	then.Captures = upTo(at, c.Captures, func(k measure.Capture) time.Time { return k.At })
 	then.BringUp = upTo(at, c.BringUp, func(s measure.Stage) time.Time { return s.At })
 	if c.Rebuild != nil && c.Rebuild.Done.After(at) {
 		rebuild := *c.Rebuild

@@ -121,6 +121,18 @@ func TestAScopeCaptureSaysThatPowerWasOn(t *testing.T) {
 	}
 }
 
+// A capture that was taken later says nothing of a reading before it.
+func TestALaterCaptureDoesNotSpeakAgainstAReading(t *testing.T) {
+	for clock, outside := range map[string]bool{"10:08": true, "10:30": false} {
+		c, e := ready(t)
+		c.Captures = []measure.Capture{{Name: "edge.csv", Kind: "scope", At: at(t, clock)}}
+		o := measure.Observation{Test: "ohms", Result: "open", At: at(t, "10:12")}
+		if got, missing := OutsideHoldPoint(c, o, Work{Need: NeedDead}, e); got != outside {
+			t.Errorf("a capture of %s, a reading of 10:12: outside %v, want %v: %+v", clock, got, outside, missing)
+		}
+	}
+}
+
 // The resistor that would do without a label brings the bank, at the top of its interval, to 60 V in just 5 s (closed
 // form).
 func TestTheBleederWithoutALabel(t *testing.T) {
