@@ -6,9 +6,9 @@ import (
 	"time"
 )
 
-// heldDays is how long a repair must have held to count as confirmed; the word held-30-days and the step followed-up
-// go by it. Common practice of repair shops.
-const heldDays = 30
+// HeldDays is how many days a repair must have held to count as confirmed; the word held-30-days and the step followed-up
+// go by it. Judgement.
+const HeldDays = 30
 
 // checkRecord holds the entries of the record against each other.
 func (r *reader) checkRecord(root *entry) {
@@ -155,9 +155,9 @@ func (r *reader) checkFollowUp(root *entry) {
 		switch {
 		case last == nil && len(handed) > 0:
 			r.conflict(at, handed[0].child("at"), "nothing is followed up before it was handed over", "")
-		case last != nil && e.word("result") == "done" && days(last.when("at"), at.time) < heldDays:
+		case last != nil && e.word("result") == "done" && days(last.when("at"), at.time) < HeldDays:
 			r.conflict(at, last.child("at"), fmt.Sprintf("the board was handed over %s before, and counts as followed up after %d",
-				countOf(days(last.when("at"), at.time), "day"), heldDays), "enter it when the days are over; if it failed before, the result is failed")
+				countOf(days(last.when("at"), at.time), "day"), HeldDays), "enter it when the days are over; if it failed before, the result is failed")
 		}
 	}
 }
@@ -175,9 +175,9 @@ func (r *reader) checkHeld(root *entry) {
 		r.conflict(word, last.child("result"), "the follow-up found that the repair did not hold", "")
 	}
 	for _, from := range []*entry{root.at("rebuild.done"), newest(stepEntries(root, StepHandedOver, "done")).child("at")} {
-		if known(from) && known(closed) && days(from.time, closed.time) < heldDays {
+		if known(from) && known(closed) && days(from.time, closed.time) < HeldDays {
 			r.fault(word.node, word.path, fmt.Sprintf("held-30-days contradicts %s %s with %s %s: there are fewer than %d days between them",
-				from.path, from.shown(), closed.path, closed.shown(), heldDays), "close the case when the days are over, or write reproduced or plausible")
+				from.path, from.shown(), closed.path, closed.shown(), HeldDays), "close the case when the days are over, or write reproduced or plausible")
 		}
 	}
 }

@@ -1,6 +1,10 @@
 package measure
 
-import "drivemend/measure/quantity"
+import (
+	"slices"
+
+	"drivemend/measure/quantity"
+)
 
 // recordKeys are the keys of what was found out and done beside the measuring: earlier repairs, what the board itself
 // remembers, pictures, and the steps before touching and after the repair.
@@ -56,7 +60,7 @@ const (
 	StepMotorTested         = "motor-tested"          // insulation and windings, before it is connected again
 	StepCableTested         = "cable-tested"          // insulation and continuity, before it is connected again
 	StepBrakeResistorTested = "brake-resistor-tested" // resistance and insulation, before it is connected again
-	StepLoadTested          = "load-tested"           // the machine turns freely; full load held
+	StepLoadTested          = "load-tested"           // a dummy load or a free motor, up to the running current
 	StepHandedOver          = "handed-over"           // to whom runs the machine, with the report
 	StepFollowedUp          = "followed-up"           // 30 days later
 )
@@ -125,6 +129,14 @@ var beforeTakes = map[string][]string{
 	"electronics_disconnected": {BeforeInsulation}, "sources_off": {BeforeInjection}, "gates_held": {BeforeInjection},
 	"limit_set": {BeforeInjection}, "attended": {BeforeInjection},
 	"probe": {BeforeScope}, "clip_on": {BeforeScope}, "supply": {BeforeScope}, "earth_clips": {BeforeScope},
+}
+
+// BeforeTakes gives the steps that a condition of safety.before, by its key, is stated before.
+func BeforeTakes(condition string) []string {
+	if steps, ok := beforeTakes[condition]; ok {
+		return slices.Clone(steps)
+	}
+	return BeforeWords()
 }
 
 // BeforeWords lists the steps that conditions are stated before.

@@ -168,11 +168,8 @@ func heldByDates(c *measure.Case, at time.Time) (proved bool, record string) {
 	if days < 0 {
 		return false, "by the record the rebuild was done only after that day"
 	}
-	return days >= heldDays, "the record shows " + count(days, "day", "days") + " from rebuild to closing, and no follow-up"
+	return days >= measure.HeldDays, "the record shows " + count(days, "day", "days") + " from rebuild to closing, and no follow-up"
 }
-
-// heldDays is how many days a repair must have run before it counts as held.
-const heldDays = int(safety.FollowUpAfter / (24 * time.Hour))
 
 func dateOf(t time.Time) time.Time {
 	y, m, d := t.Date()

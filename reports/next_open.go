@@ -63,13 +63,11 @@ func underWhat(tests []diagnose.Candidate, n *diagnose.Suggestion, known Beside)
 	var out []string
 	named := map[string]bool{}
 	for _, c := range tests {
-		for _, step := range statementsOf(diagnose.WorkOf(c.Test)) {
-			b := inForce(known.Case, step, n.At)
-			if b == nil || named[step] {
-				continue
+		for _, b := range safety.StandsOn(known.Case, diagnose.WorkOf(c.Test), n.At) {
+			if !named[b.Step] {
+				named[b.Step] = true
+				out = append(out, clockAt(b.At, n.At)+" for "+beforeName(b.Step))
 			}
-			named[step] = true
-			out = append(out, clockAt(b.At, n.At)+" for "+beforeName(b.Step))
 		}
 	}
 	if len(out) == 0 {

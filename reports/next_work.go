@@ -46,10 +46,8 @@ func workWords(w safety.Work) string { return joined("; ", needWords(w.Need), to
 // writeConditions says on what the permission for a work rests, and the cautions that always stand beside it.
 func writeConditions(s *screen, known Beside, w safety.Work, at time.Time, plan *safety.Plan) {
 	s.item(strong, "needs", workWords(w)+": allowed at this moment")
-	for _, step := range statementsOf(w) {
-		if b := inForce(known.Case, step, at); b != nil {
-			s.item(strong, "stated", clockAt(b.At, at)+" for "+beforeName(b.Step)+": "+joined("; ", append(conditionWords(*b), b.Note)...))
-		}
+	for _, b := range safety.StandsOn(known.Case, w, at) {
+		s.item(strong, "stated", clockAt(b.At, at)+" for "+beforeName(b.Step)+": "+joined("; ", append(conditionWords(b), b.Note)...))
 	}
 	if w.Need != safety.NeedQuestion && plan != nil {
 		s.item(caution, "caution", storedWords(plan, w.Need))

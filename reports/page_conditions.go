@@ -3,9 +3,7 @@ package reports
 import (
 	"strconv"
 	"strings"
-	"time"
 
-	"drivemend/diagnose/safety"
 	"drivemend/measure"
 )
 
@@ -80,47 +78,4 @@ func probeWords(b measure.Before) string {
 		text += ", earth clips on the board: " + strconv.Itoa(b.EarthClips)
 	}
 	return text
-}
-
-// inForce gives the newest statement of a step that has come to be by a moment; nil without one. Of statements of one
-// moment the later in the file counts.
-func inForce(c *measure.Case, step string, at time.Time) *measure.Before {
-	var last *measure.Before
-	if c == nil {
-		return nil
-	}
-	for k := range c.Safety.Before {
-		b := &c.Safety.Before[k]
-		if b.Step != step || b.At.IsZero() || b.At.After(at) {
-			continue
-		}
-		if last == nil || !b.At.Before(last.At) {
-			last = b
-		}
-	}
-	return last
-}
-
-// statementsOf names the statements that a work stands on.
-func statementsOf(w safety.Work) []string {
-	var out []string
-	switch w.Need {
-	case safety.NeedControlPower:
-		out = append(out, measure.BeforeControlPower)
-	case safety.NeedLowBus:
-		out = append(out, measure.BeforeLowBus)
-	case safety.NeedFull:
-		out = append(out, measure.BeforeFull)
-	}
-	switch w.Tool {
-	case safety.ToolScope:
-		out = append(out, measure.BeforeScope)
-	case safety.ToolInjection:
-		out = append(out, measure.BeforeInjection)
-	case safety.ToolInsulation:
-		out = append(out, measure.BeforeInsulation)
-	case safety.ToolDoublePulse:
-		out = append(out, measure.BeforeDoublePulse)
-	}
-	return out
 }

@@ -114,22 +114,6 @@ func TestInjectionCarriesItsLimits(t *testing.T) {
 	}
 }
 
-// TestInForce: the newest statement that has come to be; of one moment the later in the file.
-func TestInForce(t *testing.T) {
-	at := func(m int) time.Time { return testTime.Add(time.Duration(m) * time.Minute) }
-	c := &measure.Case{Safety: measure.Safety{Before: []measure.Before{
-		{Step: "full", At: at(-5), Note: "first"}, {Step: "full", At: at(-9), Note: "older"}, {Step: "full", At: at(-5), Note: "second"}, {Step: "low-bus", At: at(-1)}, {Step: "full", At: at(3)}, {Step: "full"}}}}
-	if b := inForce(c, "full", testTime); b == nil || b.Note != "second" {
-		t.Errorf("got %+v, want the second one", b)
-	}
-	if b := inForce(c, "scope", testTime); b != nil {
-		t.Errorf("got %+v, want none", b)
-	}
-	if b := inForce(nil, "scope", testTime); b != nil {
-		t.Errorf("no case states %+v", b)
-	}
-}
-
 // TestOutsideIsShortOnTheFirstPage: the first page names two of many missing things, a later one all.
 func TestOutsideIsShortOnTheFirstPage(t *testing.T) {
 	r := job(t)

@@ -18,55 +18,49 @@ import (
 	"drivemend/reports"
 )
 
-// condition is one condition that can be stated before a step: its flag, the steps it belongs to, and how it goes into
-// the statement. Its words and what it means stand in the key table, below safety.before.
+// condition is one condition that can be stated before a step: its flag, and how it goes into the statement. Its words,
+// what it means and the steps it belongs to stand in the key table, below safety.before.
 type condition struct {
 	flag  string
-	steps []string
 	word  func(*measure.Before) *string              // where a word goes
 	yes   func(*measure.Before) *bool                // where a yes goes
 	other func(b *measure.Before, text string) error // anything else
 }
 
-// The steps that share their conditions.
-var (
-	poweredSteps   = []string{measure.BeforeControlPower, measure.BeforeLowBus, measure.BeforeFull}
-	controlStep    = []string{measure.BeforeControlPower}
-	pulseStep      = []string{measure.BeforeDoublePulse}
-	insulationStep = []string{measure.BeforeInsulation}
-	injectionStep  = []string{measure.BeforeInjection}
-	scopeStep      = []string{measure.BeforeScope}
-)
-
 // conditions are all that can be stated, in the order in which help lists them.
 var conditions = []condition{
-	{flag: "motor", steps: poweredSteps, word: func(b *measure.Before) *string { return &b.Motor }},
-	{flag: "brake-resistor", steps: poweredSteps, word: func(b *measure.Before) *string { return &b.BrakeResistor }},
-	{flag: "guard", steps: poweredSteps, yes: func(b *measure.Before) *bool { return &b.Guard }},
-	{flag: "fuse", steps: poweredSteps, other: stateFuse},
-	{flag: "remote-off", steps: poweredSteps, yes: func(b *measure.Before) *bool { return &b.RemoteOff }},
-	{flag: "glasses", steps: poweredSteps, yes: func(b *measure.Before) *bool { return &b.Glasses }},
-	{flag: "second-person", steps: poweredSteps, yes: func(b *measure.Before) *bool { return &b.SecondPerson }},
-	{flag: "bank", steps: poweredSteps, word: func(b *measure.Before) *string { return &b.Bank }},
-	{flag: "bus-disconnected", steps: controlStep, yes: func(b *measure.Before) *bool { return &b.BusDisconnected }},
-	{flag: "shield", steps: pulseStep, yes: func(b *measure.Before) *bool { return &b.Shield }},
-	{flag: "electronics-disconnected", steps: insulationStep, yes: func(b *measure.Before) *bool { return &b.ElectronicsDisconnected }},
-	{flag: "sources-off", steps: injectionStep, yes: func(b *measure.Before) *bool { return &b.SourcesOff }},
-	{flag: "gates-held", steps: injectionStep, yes: func(b *measure.Before) *bool { return &b.GatesHeld }},
-	{flag: "limit-set", steps: injectionStep, yes: func(b *measure.Before) *bool { return &b.LimitSet }},
-	{flag: "attended", steps: injectionStep, yes: func(b *measure.Before) *bool { return &b.Attended }},
-	{flag: "probe", steps: scopeStep, word: func(b *measure.Before) *string { return &b.Probe }},
-	{flag: "clip-on", steps: scopeStep, word: func(b *measure.Before) *string { return &b.ClipOn }},
-	{flag: "supply", steps: scopeStep, word: func(b *measure.Before) *string { return &b.Supply }},
-	{flag: "earth-clips", steps: scopeStep, other: stateClips},
-	{flag: "note", steps: measure.BeforeWords(), other: func(b *measure.Before, text string) error { b.Note = text; return nil }},
+	{flag: "motor", word: func(b *measure.Before) *string { return &b.Motor }},
+	{flag: "brake-resistor", word: func(b *measure.Before) *string { return &b.BrakeResistor }},
+	{flag: "guard", yes: func(b *measure.Before) *bool { return &b.Guard }},
+	{flag: "fuse", other: stateFuse},
+	{flag: "remote-off", yes: func(b *measure.Before) *bool { return &b.RemoteOff }},
+	{flag: "glasses", yes: func(b *measure.Before) *bool { return &b.Glasses }},
+	{flag: "second-person", yes: func(b *measure.Before) *bool { return &b.SecondPerson }},
+	{flag: "bank", word: func(b *measure.Before) *string { return &b.Bank }},
+	{flag: "bus-disconnected", yes: func(b *measure.Before) *bool { return &b.BusDisconnected }},
+	{flag: "shield", yes: func(b *measure.Before) *bool { return &b.Shield }},
+	{flag: "electronics-disconnected", yes: func(b *measure.Before) *bool { return &b.ElectronicsDisconnected }},
+	{flag: "sources-off", yes: func(b *measure.Before) *bool { return &b.SourcesOff }},
+	{flag: "gates-held", yes: func(b *measure.Before) *bool { return &b.GatesHeld }},
+	{flag: "limit-set", yes: func(b *measure.Before) *bool { return &b.LimitSet }},
+	{flag: "attended", yes: func(b *measure.Before) *bool { return &b.Attended }},
+	{flag: "probe", word: func(b *measure.Before) *string { return &b.Probe }},
+	{flag: "clip-on", word: func(b *measure.Before) *string { return &b.ClipOn }},
+	{flag: "supply", word: func(b *measure.Before) *string { return &b.Supply }},
+	{flag: "earth-clips", other: stateClips},
+	{flag: "note", other: func(b *measure.Before, text string) error { b.Note = text; return nil }},
 }
 
 // key is the row of the key table that a condition is kept under.
 func (c condition) key() measure.Key {
-	k, _ := measure.LookupKey("safety.before[]." + strings.ReplaceAll(c.flag, "-", "_"))
+	k, _ := measure.LookupKey("safety.before[]." + c.name())
 	return k
 }
+
+func (c condition) name() string { return strings.ReplaceAll(c.flag, "-", "_") }
+
+// steps are those that a condition is stated before.
+func (c condition) steps() []string { return measure.BeforeTakes(c.name()) }
 
 func (a *app) beforeCommand() *cobra.Command {
 	c := &cobra.Command{
@@ -128,8 +122,7 @@ func (a *app) before(path, step string, flags *pflag.FlagSet) error {
 	if err != nil {
 		return err
 	}
-	a.waitsFor(safety.Works(), step, f.Case, at, diagnose.EvidenceOf(base, f.Case))
-	return nil
+	return a.waitsFor(safety.Works(), step, f.Case, at, diagnose.EvidenceOf(base, f.Case))
 }
 
 // stated takes the conditions that were given on the command line into a statement. One that does not belong to the
@@ -140,9 +133,9 @@ func stated(b *measure.Before, flags *pflag.FlagSet) error {
 		if f == nil || !f.Changed {
 			continue
 		}
-		if !slices.Contains(c.steps, b.Step) {
+		if !slices.Contains(c.steps(), b.Step) {
 			return wrongCommand(fmt.Sprintf("--%s is no condition of %s", c.flag, b.Step),
-				"it is stated before "+orWords(c.steps), "before "+b.Step+" one states "+conditionsOf(b.Step))
+				"it is stated before "+orWords(c.steps()), "before "+b.Step+" one states "+conditionsOf(b.Step))
 		}
 		if err := c.put(b, f.Value.String()); err != nil {
 			return err
@@ -200,7 +193,7 @@ func stateClips(b *measure.Before, text string) error {
 func conditionsOf(step string) string {
 	var flags []string
 	for _, c := range conditions {
-		if slices.Contains(c.steps, step) && c.flag != "note" {
+		if slices.Contains(c.steps(), step) && c.flag != "note" {
 			flags = append(flags, "--"+c.flag)
 		}
 	}
@@ -231,12 +224,12 @@ func saidOf(c *measure.Case) string {
 	return strings.Join(said, ", ")
 }
 
-// waitsFor says for every work that stands behind a statement whether it may be done now, and what it waits for. What
-// was said for one work is not said again for the next.
-func (a *app) waitsFor(works []safety.NamedWork, step string, c *measure.Case, at time.Time, e safety.Evidence) {
+// waitsFor says for every work that stands behind a statement whether it may be done now, and what it waits for; behind
+// one for power only that without a tool. What was said for one work is not said again for the next.
+func (a *app) waitsFor(works []safety.NamedWork, step string, c *measure.Case, at time.Time, e safety.Evidence) error {
 	told := map[string]bool{}
 	for _, w := range works {
-		if stepOf(w.Work) != step {
+		if !slices.Contains(safety.Statements(w.Work), step) || w.Work.Tool != safety.NoTool && step == string(w.Work.Need) {
 			continue
 		}
 		d := safety.Check(c, w.Work, at, e)
@@ -252,29 +245,14 @@ func (a *app) waitsFor(works []safety.NamedWork, step string, c *measure.Case, a
 			}
 			told[m.Text] = true
 		}
-		_ = reports.Missing(a.out, fresh, a.style())
+		if err := reports.Missing(a.out, fresh, a.style()); err != nil {
+			return err
+		}
 		if again := len(d.Missing) - len(fresh); again > 0 {
 			fmt.Fprintf(a.out, "  and %d of what stands above\n", again)
 		}
 	}
-}
-
-// stepOf names the statement that a work stands behind: that of its tool, else that of its power; "" for none.
-func stepOf(w safety.Work) string {
-	switch w.Tool {
-	case safety.ToolScope:
-		return measure.BeforeScope
-	case safety.ToolInjection:
-		return measure.BeforeInjection
-	case safety.ToolInsulation:
-		return measure.BeforeInsulation
-	case safety.ToolDoublePulse:
-		return measure.BeforeDoublePulse
-	}
-	if w.Need.Powered() {
-		return string(w.Need)
-	}
-	return ""
+	return nil
 }
 
 // wrapped prints a text broken to the width.

@@ -87,8 +87,8 @@ func TestBeforeTakesExactlyItsConditions(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			if !slices.Contains(c.steps, step) {
-				if r.status != exitCommand || string(raw) != bareCase || !strings.Contains(r.err, orWords(c.steps)) {
+			if !slices.Contains(c.steps(), step) {
+				if r.status != exitCommand || string(raw) != bareCase || !strings.Contains(r.err, orWords(c.steps())) {
 					t.Errorf("%s before %s: status %d, %q", c.flag, step, r.status, r.err)
 				}
 				continue
@@ -135,7 +135,7 @@ func TestBeforeAgreesWithTheLoader(t *testing.T) {
 			}
 			text := bareCase + "safety: {before: [{step: " + step + ", at: 2026-12-01T10:00:00+01:00, " + line + "}]}\n"
 			_, err := measure.Parse("case", []byte(text))
-			if belongs := slices.Contains(c.steps, step); belongs != (err == nil) {
+			if belongs := slices.Contains(c.steps(), step); belongs != (err == nil) {
 				t.Errorf("%s before %s: the loader says %v", c.flag, step, err)
 			}
 		}

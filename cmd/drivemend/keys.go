@@ -171,7 +171,7 @@ func beside(holder, name string) []string {
 func exampleBeside(k measure.Key, other string) string {
 	for _, c := range conditions {
 		if k.Path == "safety.before[].step" && c.key().Path == "safety.before[]."+other {
-			return c.steps[0]
+			return c.steps()[0]
 		}
 	}
 	return exampleValue(k)

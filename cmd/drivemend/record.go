@@ -81,17 +81,14 @@ func (a *app) recordStep(path, step, result string, s measure.StepEntry) error {
 	case s.Note == "" && (s.Result == "failed" || s.Result == "not-possible"):
 		return wrongCommand(s.Step+" "+s.Result+" needs its reason", "add --note 'what was found, or why it cannot be done'")
 	}
-	var missing []safety.Missing
+	base, err := a.base()
+	if err != nil {
+		return err
+	}
 	f, at, err := a.record(path, true, func(f *measure.File, at time.Time) error {
-		base, err := a.base()
-		if err != nil {
-			return err
-		}
 		if err := tooEarly(base, f.Case, s, at); err != nil {
 			return err
 		}
-		// What the step lacked is judged before it is entered: no step speaks for itself.
-		missing = stepMissing(base, f.Case, s.Step, at)
 		s.At = at
 		return f.AddStep(s)
 	})
@@ -99,11 +96,20 @@ func (a *app) recordStep(path, step, result string, s measure.StepEntry) error {
 		return err
 	}
 	fmt.Fprintf(a.out, "recorded: %s %s\nat %s\n", s.Step, s.Result, at.Format(time.RFC3339))
-	if s.Result == "done" || s.Result == "failed" { // what was not done was not done outside anything
-		a.outside(missing)
+	last := len(f.Case.Steps) - 1
+	then := safety.AsOf(f.Case, at)
+	a.lacked("kept, and marked as done outside its hold point:", safety.OutsideStep(f.Case, last, diagnose.EvidenceOf(base, then)))
+	if s.Step == measure.StepHandedOver && s.Result == "done" {
+		a.lacked("kept; what still stood before it:", statusOf(base, then, at, s.Step).Missing)
 	}
-	a.follows(f.Case, s, at)
+	a.follows(s, at)
 	return nil
+}
+
+// statusOf tells how a step of the record stands at a moment.
+func statusOf(base *knowledge.Base, c *measure.Case, at time.Time, step string) safety.RecordStatus {
+	record := safety.Record(c, at, diagnose.EvidenceOf(base, c))
+	return record[slices.IndexFunc(record, func(r safety.RecordStatus) bool { return r.Step.ID == step })]
 }
 
 // tooEarly refuses a follow-up that counts for nothing yet, in words: when the board was handed over and when the
@@ -113,11 +119,7 @@ func tooEarly(base *knowledge.Base, c *measure.Case, s measure.StepEntry, at tim
 		return nil
 	}
 	then := safety.AsOf(c, at)
-	record := safety.Record(then, at, diagnose.EvidenceOf(base, then))
-	of := func(step string) safety.RecordStatus {
-		return record[slices.IndexFunc(record, func(r safety.RecordStatus) bool { return r.Step.ID == step })]
-	}
-	due, over := of(measure.StepFollowedUp).Due, of(measure.StepHandedOver).Last
+	due, over := statusOf(base, then, at, measure.StepFollowedUp).Due, statusOf(base, then, at, measure.StepHandedOver).Last
 	switch {
 	case due.IsZero() || over == nil:
 		return wrongInput("followed up on "+at.Format(time.DateOnly)+": the board is not on record as handed over by then",
@@ -129,37 +131,26 @@ func tooEarly(base *knowledge.Base, c *measure.Case, s measure.StepEntry, at tim
 	return nil
 }
 
-// stepMissing tells what withheld a step at a moment, from the record as it stood then.
-func stepMissing(base *knowledge.Base, c *measure.Case, step string, at time.Time) []safety.Missing {
-	then := safety.AsOf(c, at)
-	for _, r := range safety.Record(then, at, diagnose.EvidenceOf(base, then)) {
-		if r.Step.ID == step {
-			return r.Missing
-		}
-	}
-	return nil
-}
-
-// outside says what an entry lacked; it is kept all the same.
-func (a *app) outside(missing []safety.Missing) {
+// lacked says what an entry lacked; it is kept all the same.
+func (a *app) lacked(what string, missing []safety.Missing) {
 	if len(missing) == 0 {
 		return
 	}
-	fmt.Fprintln(a.out, "kept, and marked as done outside its hold point:")
+	fmt.Fprintln(a.out, what)
 	for _, m := range missing {
 		a.wrapped(fmt.Sprintf("point %d: %s", m.Point, m.Text), "  ", "    ")
 	}
 }
 
 // follows says what an entry leads to: when the follow-up is due, or that a failed step stays open.
-func (a *app) follows(c *measure.Case, s measure.StepEntry, at time.Time) {
+func (a *app) follows(s measure.StepEntry, at time.Time) {
 	switch {
 	case s.Result == "failed" && s.Step == measure.StepFollowedUp:
 		fmt.Fprintln(a.out, "the repair did not hold: take the board up again, and enter what was found")
 	case s.Result == "failed":
 		fmt.Fprintln(a.out, "it stays open: mend what was found, then record it again")
 	case s.Step == measure.StepHandedOver && s.Result == "done":
-		fmt.Fprintf(a.out, "the follow-up is due on %s: drivemend record step CASE %s done\n", at.Add(safety.FollowUpAfter).Format(time.DateOnly), measure.StepFollowedUp)
+		fmt.Fprintf(a.out, "the follow-up is due on %s: drivemend record step CASE %s done\n", safety.FollowUpDue(at).Format(time.DateOnly), measure.StepFollowedUp)
 	}
 }
 

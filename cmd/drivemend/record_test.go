@@ -85,7 +85,7 @@ func TestStepsAreJudgedAsTheRecordStood(t *testing.T) {
 			t.Errorf("%s: %d steps are kept", c.name, n)
 		}
 	}
-	if m := stepMissing(base, loaded(t, written(t, board)), measure.StepPhotographed, mustTime(t, "2026-12-01T09:55:00+01:00")); len(m) != 0 {
+	if m := statusOf(base, loaded(t, written(t, board)), mustTime(t, "2026-12-01T09:55:00+01:00"), measure.StepPhotographed).Missing; len(m) != 0 {
 		t.Errorf("a picture waits for %v", m)
 	}
 }

@@ -131,7 +131,7 @@ func TestNothingIsShownPastAHoldPoint(t *testing.T) {
 			s := &session{app: b.app, asker: a, file: f, base: b.base, start: time.Date(2026, 12, 1, 8, 51, 0, 0, time.UTC),
 				putOff: map[string]bool{}, told: map[string]bool{}, stands: true, ranked: &diagnose.Ranking{},
 				chain: &chain{base: b.base, kept: kept, c: f.Case}}
-			want := s.check(w.work).Allowed && recordAllows(s, w.name) && (len(statementsOf(w.work)) == 0 || state["conditions"] == doors[4].states["now"])
+			want := s.check(w.work).Allowed && recordAllows(s, w.name) && (len(safety.Statements(w.work)) == 0 || state["conditions"] == doors[4].states["now"])
 			if _, err := w.step(s).run(); err != nil {
 				t.Fatalf("%s, %s: %v", name, w.name, err)
 			}

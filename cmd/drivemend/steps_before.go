@@ -290,7 +290,7 @@ var conditionWords = map[string]struct {
 	"shield":                   {ask: "Does a shield stand over the board?", why: "A double pulse drives the switch to its current: when it fails it bursts."},
 	"electronics-disconnected": {ask: "Are the electronics disconnected from what is tested?", why: "The test voltage kills drivers, sensors and meters that are left connected."},
 	"sources-off":              {ask: "Is every other source off?", why: "The current must come from the limited supply only."},
-	"gates-held":               {ask: "Is every gate held to its emitter or source?", why: "An open gate charges itself and turns its switch on."},
+	"gates-held":               {ask: "Is every gate that is not under test held to its emitter or source?", why: "An open gate charges itself and turns its switch on."},
 	"limit-set":                {ask: "Are current and voltage limit set, before anything is connected?", why: "A limit that is set afterwards comes too late for the part."},
 	"attended":                 {ask: "Does somebody stay with it all the time, and stop at 40 K rise?", why: "A shorted bank heats on until something opens."},
 	"probe": {ask: "What is the reference of the probe? Type the whole word.",

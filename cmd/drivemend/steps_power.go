@@ -62,26 +62,13 @@ func (s *session) heldStep(w safety.Work) *step {
 	if !w.Need.Powered() && s.held() {
 		return s.standStep()
 	}
-	for _, word := range statementsOf(w) {
+	for _, word := range safety.Statements(w) {
 		if !s.statedHere(word) && s.check(w).Allowed {
 			return s.beforeStep(word, w)
 		}
 	}
 	return nil
 }
-
-// statementsOf lists the statements that a work rests on: that of its power, then that of its tool.
-func statementsOf(w safety.Work) []string {
-	var words []string
-	if w.Need.Powered() {
-		words = append(words, string(w.Need))
-	}
-	return append(words, toolStatements[w.Tool]...)
-}
-
-// toolStatements are the steps that a tool asks a statement for.
-var toolStatements = map[safety.Tool][]string{safety.ToolScope: {measure.BeforeScope}, safety.ToolInjection: {measure.BeforeInjection},
-	safety.ToolInsulation: {measure.BeforeInsulation}, safety.ToolDoublePulse: {measure.BeforeDoublePulse, measure.BeforeScope}}
 
 // statedHere tells whether the conditions of a step were stated since this session began.
 func (s *session) statedHere(word string) bool {
@@ -105,7 +92,7 @@ const leastFuse = "1 mA"
 // ideals are all statements of a work but one, with every condition held.
 func ideals(w safety.Work, at time.Time, but string) []measure.Before {
 	var out []measure.Before
-	for _, word := range statementsOf(w) {
+	for _, word := range safety.Statements(w) {
 		if word != but {
 			out = append(out, ideal(word, at))
 		}
@@ -119,7 +106,7 @@ func (s *session) waits(w safety.Work) (others []safety.Missing, statements []st
 	if d := s.checkWith(w, now, ideals(w, now, "")...); !d.Allowed {
 		return d.Missing, nil
 	}
-	for _, word := range statementsOf(w) {
+	for _, word := range safety.Statements(w) {
 		if !s.statedHere(word) || !s.checkWith(w, now, ideals(w, now, word)...).Allowed {
 			statements = append(statements, word)
 		}

@@ -34,26 +34,17 @@ type condition func(s scene) []Missing
 
 // The conditions.
 var (
-	isolated     condition = func(s scene) []Missing { return s.status.Isolation.Missing } // hold point 0
-	everyStore   condition = openStores                                                    // 1, and 2 where a check has ended
-	noLink       condition = openLink                                                      // 2
-	rebuilt      condition = openRebuild                                                   // 3
-	everyStatic  condition = openStatics                                                   // 3
-	noneFails    condition = openFailing                                                   // 3
-	conditioned  condition = func(s scene) []Missing { return s.openBefore(string(s.work.Need)) }
-	reconnected  condition = openReconnection // 3
-	shielded               = before(measure.BeforeDoublePulse)
-	disconnected           = before(measure.BeforeInsulation)
-	probed                 = before(measure.BeforeScope)
-	injected               = before(measure.BeforeInjection)
+	isolated    condition = func(s scene) []Missing { return s.status.Isolation.Missing } // hold point 0
+	everyStore  condition = openStores                                                    // 1, and 2 where a check has ended
+	noLink      condition = openLink                                                      // 2
+	rebuilt     condition = openRebuild                                                   // 3
+	everyStatic condition = openStatics                                                   // 3
+	noneFails   condition = openFailing                                                   // 3
+	poweredUp   condition = func(s scene) []Missing { return s.openBefore(string(s.work.Need)) }
+	reconnected condition = openReconnection // 3
 )
 
-// before is the condition that a sound statement of what a step needs stands; statement.go says what each step needs.
-func before(step string) condition {
-	return func(s scene) []Missing { return s.openBefore(step) }
-}
-
-var poweredConditions = []condition{noLink, rebuilt, everyStatic, noneFails, conditioned, reconnected}
+var poweredConditions = []condition{noLink, rebuilt, everyStatic, noneFails, poweredUp, reconnected}
 
 // needConditions are the conditions of a state of the board. A need that is not in the table is never given.
 var needConditions = map[Need][]condition{
@@ -68,22 +59,48 @@ var needConditions = map[Need][]condition{
 
 // toolRule is what a tool asks for beside the state of the board, and the states it may be used in at all.
 type toolRule struct {
-	needs      []Need
-	conditions []condition
-	carries    []string // what its instruction always says
+	needs   []Need
+	stated  []string // before which steps its conditions are stated; clauses.go says what each takes
+	carries []string // what its instruction always says
 }
 
 // toolRules are the tools with conditions of their own. A tool that is not in the table is never given.
 var toolRules = map[Tool]toolRule{
 	NoTool: {needs: Needs()},
-	ToolScope: {[]Need{NeedDead, NeedControlPower, NeedLowBus, NeedFull}, []condition{probed},
+	ToolScope: {[]Need{NeedDead, NeedControlPower, NeedLowBus, NeedFull}, []string{measure.BeforeScope},
 		[]string{"The earth clip of a passive probe is bonded to protective earth: on a live node it is a short to earth through the scope."}},
-	ToolInjection: {[]Need{NeedDead, NeedControlPower, NeedLowBus}, []condition{injected},
+	ToolInjection: {[]Need{NeedDead, NeedControlPower, NeedLowBus}, []string{measure.BeforeInjection},
 		[]string{"Set the limit of current and voltage before connecting, stay with it, stop at 40 K rise."}},
-	ToolInsulation: {[]Need{NeedDead}, []condition{disconnected},
+	ToolInsulation: {[]Need{NeedDead}, []string{measure.BeforeInsulation},
 		[]string{"The tester charges what it tests: discharge it afterwards, prove it dead, and keep hands off while it runs."}},
-	ToolDoublePulse: {[]Need{NeedLowBus, NeedFull}, []condition{shielded, probed},
+	ToolDoublePulse: {[]Need{NeedLowBus, NeedFull}, []string{measure.BeforeDoublePulse, measure.BeforeScope},
 		[]string{"Stay behind the shield until the bus is proved dead: a switch that fails takes the energy of the bank."}},
+}
+
+// Statements names the steps that conditions are stated before for a work (measure.BeforeWords): that of its power, then
+// those of its tool.
+func Statements(w Work) []string {
+	var steps []string
+	if w.Need.Powered() && needConditions[w.Need] != nil {
+		steps = append(steps, string(w.Need))
+	}
+	return append(steps, toolRules[w.Tool].stated...)
+}
+
+// StandsOn gives the statements that a work stands on at a moment, the one that counts of each of its steps; a step
+// without one is left out.
+func StandsOn(c *measure.Case, w Work, now time.Time) []measure.Before {
+	if c == nil {
+		return nil
+	}
+	s := sceneOf(c, w, now, Evidence{})
+	var out []measure.Before
+	for _, step := range Statements(w) {
+		if b, _ := s.statementOf(step); b != nil {
+			out = append(out, *b)
+		}
+	}
+	return out
 }
 
 // Carries gives what the instruction for a work always says, allowed or not.
@@ -108,7 +125,10 @@ func (s scene) missing() []Missing {
 	if !slices.Contains(rule.needs, s.work.Need) {
 		return []Missing{{0, fmt.Sprintf("the tool %s has no place in a step that needs %s", s.work.Tool, s.work.Need), "it is used in " + joined(rule.needs)}}
 	}
-	all := slices.Concat(conditions, rule.conditions)
+	all := slices.Clone(conditions)
+	for _, step := range rule.stated {
+		all = append(all, func(s scene) []Missing { return s.openBefore(step) })
+	}
 	m := s.open(all)
 	if len(m) == 1 && s.bankAlone() {
 		s.reform = true

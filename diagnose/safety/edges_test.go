@@ -148,3 +148,27 @@ func TestTheBleederWithoutALabel(t *testing.T) {
 		t.Errorf("a bleeder that does it: %+v, %v", p.Bleeder, err)
 	}
 }
+
+// A work stands on the newest full statement that has come to be, of one moment on the later in the file; one that lacks
+// something counts against it whatever its time.
+func TestAWorkStandsOnTheStatementThatCounts(t *testing.T) {
+	c, _ := ready(t)
+	noted := func(clock, note string) measure.Before {
+		b := fullStatement(measure.BeforeFull, at(t, clock))
+		b.Note = note
+		return b
+	}
+	c.Safety.Before = []measure.Before{noted("10:05", "first"), noted("10:01", "older"), noted("10:05", "second"), noted("10:30", "to come"), fullStatement(measure.BeforeScope, at(t, "10:02"))}
+	full := Work{Need: NeedFull, Tool: ToolScope}
+	got := StandsOn(c, full, at(t, "10:12"))
+	if len(got) != 2 || got[0].Note != "second" || got[1].Step != measure.BeforeScope {
+		t.Errorf("stands on %+v", got)
+	}
+	c.Safety.Before = append(c.Safety.Before, measure.Before{Step: measure.BeforeFull, At: at(t, "10:40"), Note: "lacking"})
+	if got = StandsOn(c, full, at(t, "10:12")); got[0].Note != "lacking" {
+		t.Errorf("a lacking statement to come: stands on %+v", got)
+	}
+	if got = StandsOn(nil, full, at(t, "10:12")); got != nil {
+		t.Errorf("no case states %+v", got)
+	}
+}

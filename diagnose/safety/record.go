@@ -27,10 +27,6 @@ type RecordStatus struct {
 	Missing []Missing          // what withholds it now; empty when it may be done
 }
 
-// FollowUpAfter is the time from hand-over to the follow-up. A repair that held so long counts as held. Design of this
-// program, a judgement.
-const FollowUpAfter = 30 * 24 * time.Hour
-
 // Record tells how every step of the record stands at a moment, in the order of the job. A nil case gives nil.
 func Record(c *measure.Case, now time.Time, e Evidence) []RecordStatus {
 	if c == nil {
@@ -86,28 +82,17 @@ func MayLack(step string) bool {
 	return false
 }
 
-// weight orders the results of one moment: the one that says least for the board counts.
-var weight = map[string]int{resultDone: 1, resultNotFitted: 2, resultNotPossible: 3, resultFailed: 4}
+// weight orders the results of one moment: the one that says least for the board counts, and only done speaks for it.
+var weight = map[string]int{resultDone: 0, resultNotFitted: 1, resultNotPossible: 2, resultFailed: 3}
 
-// entryOf gives the newest entry of a step. Done counts once its time has come; everything else counts whatever its
-// time says, and of two entries of one moment the one that says less for the board.
+// entryOf gives the entry of a step that counts. Done counts once its time has come, everything else whatever its time.
 func entryOf(steps []measure.StepEntry, step string, now time.Time) *measure.StepEntry {
-	var last *measure.StepEntry
-	var lastAt time.Time
-	for k := range steps {
-		e := &steps[k]
-		at := e.At
-		if at.IsZero() || at.After(now) {
-			at = now
+	return counting(now, steps, func(e *measure.StepEntry) (time.Time, int) {
+		if e.Step != step {
+			return e.At, notOfThis
 		}
-		if e.Step != step || (e.Result == resultDone && !at.Equal(e.At)) {
-			continue
-		}
-		if last == nil || at.After(lastAt) || (at.Equal(lastAt) && weight[e.Result] >= weight[last.Result]) {
-			last, lastAt = e, at
-		}
-	}
-	return last
+		return e.At, weight[e.Result]
+	})
 }
 
 // applies tells whether this board, at this stage of the job, asks for a step.
@@ -160,10 +145,11 @@ func beforeHandOver(done []RecordStatus) []Missing {
 	return m
 }
 
-// followUpDue counts calendar days, as the loader of a case does: the hour of the hand-over does not matter.
-func followUpDue(over time.Time) time.Time {
+// FollowUpDue gives the day on which a board that was handed over is asked about again, measure.HeldDays later. It counts
+// calendar days, as the loader of a case does: the hour of the hand-over does not matter.
+func FollowUpDue(over time.Time) time.Time {
 	y, m, d := over.Date()
-	return time.Date(y, m, d+int(FollowUpAfter/(24*time.Hour)), 0, 0, 0, 0, over.Location())
+	return time.Date(y, m, d+measure.HeldDays, 0, 0, 0, 0, over.Location())
 }
 
 // followUp completes the status of the follow-up: due 30 days after the hand-over, and not to be had earlier.
@@ -180,7 +166,7 @@ func (r recordAt) followUp(s RecordStatus, done []RecordStatus) RecordStatus {
 		s.Missing = append(s.Missing, Missing{3, "the board is not on record as handed over", "enter it once it is: drivemend record step CASE " + measure.StepHandedOver + " done"})
 		return s
 	}
-	s.Due = followUpDue(over.At)
+	s.Due = FollowUpDue(over.At)
 	if s.Last != nil && s.Last.At.Before(s.Due) {
 		s.Settled = false
 	}

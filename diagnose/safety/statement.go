@@ -35,26 +35,42 @@ func underPower(step string) bool {
 // statementOf gives the newest statement before a step, and whether it lacks something. One that lacks something counts
 // whatever its time says, and of two of one moment it is the one that counts; a full one counts once its time has come.
 func (s scene) statementOf(step string) (last *measure.Before, lacks bool) {
-	moment := func(b *measure.Before) time.Time {
-		if s.come(b.At) {
-			return b.At
+	last = counting(s.now, s.safety.Before, func(b *measure.Before) (time.Time, int) {
+		switch {
+		case b.Step != step:
+			return b.At, notOfThis
+		case len(s.faults(*b)) > 0:
+			return b.At, 1
 		}
-		return s.now
-	}
-	for k := range s.safety.Before {
-		b := &s.safety.Before[k]
-		if b.Step != step {
+		return b.At, 0
+	})
+	return last, last != nil && len(s.faults(*last)) > 0
+}
+
+// notOfThis is the weight of an entry about something else.
+const notOfThis = -1
+
+// counting gives the entry of a list that counts at a moment, nil without one. Each has its time, and a weight against
+// the board: 0 speaks for it and counts once its time has come; what is heavier counts whatever its time says, as of now
+// where that has not come. The newest counts, of one moment the heaviest, of equal ones the later in the file.
+func counting[T any](now time.Time, list []T, weigh func(*T) (at time.Time, against int)) *T {
+	var last *T
+	var lastAt time.Time
+	heaviest := 0
+	for k := range list {
+		at, against := weigh(&list[k])
+		come := !at.IsZero() && !at.After(now)
+		if against == notOfThis || against == 0 && !come {
 			continue
 		}
-		faulty := len(s.faults(*b)) > 0
-		if !faulty && !s.come(b.At) {
-			continue
+		if !come {
+			at = now
 		}
-		if last == nil || moment(b).After(moment(last)) || (moment(b).Equal(moment(last)) && (faulty || !lacks)) {
-			last, lacks = b, faulty
+		if last == nil || at.After(lastAt) || at.Equal(lastAt) && against >= heaviest {
+			last, lastAt, heaviest = &list[k], at, against
 		}
 	}
-	return last, lacks
+	return last
 }
 
 // openBefore says what is missing of the statement before a step.
