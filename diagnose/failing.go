@@ -6,7 +6,6 @@ import (
 	"drivemend/diagnose/safety"
 	"drivemend/knowledge"
 	"drivemend/measure"
-	"drivemend/measure/meter"
 	"drivemend/measure/quantity"
 )
 
@@ -125,19 +124,13 @@ func (s *statics) leans(t *knowledge.Test, place staticPlace, ob measure.Observa
 
 // readsAs gives the result that a reading fits best; "" or "misread" where there is none.
 func (s *statics) readsAs(t *knowledge.Test, place staticPlace, ob measure.Observation) string {
-	switch {
-	case ob.Reading == nil:
-		return ob.Result
-	case ob.Reading.Kind == quantity.Word:
-		return ob.Reading.Word
+	parts := 0
+	if place.bank >= 0 {
+		parts = len(s.positions[place.bank].Parts)
 	}
-	at := meter.Place{Parallel: 1, Lifted: ob.State == "lifted"}
-	if place.bank >= 0 && t.Per == "part" && atTerminals(t) && !at.Lifted {
-		at.Parallel = len(s.positions[place.bank].Parts)
-	}
-	shares, err := readAs(t, ob, expectedOn(s.board, at))
-	if err != nil {
-		return ""
+	word, shares, err := s.fits(t, parts, ob)
+	if word != "" || err != nil || len(shares) == 0 {
+		return word
 	}
 	return shares[0].Result
 }

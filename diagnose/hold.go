@@ -9,7 +9,8 @@ import (
 )
 
 // tools are the instruments with hold points of their own.
-var tools = map[string]safety.Tool{"scope": safety.ToolScope, "double-pulse": safety.ToolDoublePulse, "insulation-tester": safety.ToolInsulation, "supply": safety.ToolInjection}
+var tools = map[string]safety.Tool{"scope": safety.ToolScope, "double-pulse": safety.ToolDoublePulse,
+	"insulation-tester": safety.ToolInsulation, "supply": safety.ToolInjection}
 
 // WorkOf gives the work at the board that a test is: the state it needs, and the tool by its instrument.
 func WorkOf(t *knowledge.Test) safety.Work {
@@ -17,8 +18,9 @@ func WorkOf(t *knowledge.Test) safety.Work {
 }
 
 // EvidenceOf reads out of the observations of a case what the hold points need of them: when energy was put into the
-// board, how the static tests of every position stand, and which other readings since the rebuild speak for a fault. It judges the rebuilt board once the rebuild is done, else
-// the board as found, and knows no clock: that a reading has come to be is for the hold points to ask.
+// board, how the static tests of every position stand, and which other readings since the rebuild speak for a fault. It
+// judges the rebuilt board once the rebuild is done, else the board as found, and knows no clock: that a reading has
+// come to be is for the hold points to ask.
 func EvidenceOf(base *knowledge.Base, c *measure.Case) safety.Evidence {
 	if c == nil {
 		return safety.Evidence{}

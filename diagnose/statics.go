@@ -351,20 +351,29 @@ func sure(t *knowledge.Test, shares []Share) float64 {
 	return sum
 }
 
-// result gives what a reading shows, or why it cannot be told: a named result, or the likeliest one of a number.
-func (s *statics) result(t *knowledge.Test, p *measure.Position, ob measure.Observation) (result, why string) {
+// fits gives the named result of an observation, or what its number fits, the likeliest first; parts are those of its
+// bank.
+func (s *statics) fits(t *knowledge.Test, parts int, ob measure.Observation) (word string, shares []Share, err error) {
 	switch {
 	case ob.Reading == nil:
-		return ob.Result, ""
+		return ob.Result, nil, nil
 	case ob.Reading.Kind == quantity.Word:
-		return ob.Reading.Word, ""
+		return ob.Reading.Word, nil, nil
 	}
-	at := meter.Place{Parallel: len(p.Parts), Lifted: ob.State == "lifted"}
-	if t.Per != "part" || at.Lifted || !atTerminals(t) {
-		at.Parallel = 1
+	at := meter.Place{Parallel: 1, Lifted: ob.State == "lifted"}
+	if t.Per == "part" && atTerminals(t) && !at.Lifted {
+		at.Parallel = max(parts, 1)
 	}
-	shares, err := readAs(t, ob, expectedOn(s.board, at))
+	shares, err = readAs(t, ob, expectedOn(s.board, at))
+	return "", shares, err
+}
+
+// result gives what a reading shows, or why it cannot be told: a named result, or the likeliest one of a number.
+func (s *statics) result(t *knowledge.Test, p *measure.Position, ob measure.Observation) (result, why string) {
+	word, shares, err := s.fits(t, len(p.Parts), ob)
 	switch {
+	case word != "":
+		return word, ""
 	case err != nil:
 		return "", "cannot be judged: " + err.Error()
 	case shares[0].Result == "misread":

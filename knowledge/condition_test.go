@@ -67,18 +67,3 @@ func TestNearest(t *testing.T) {
 		}
 	}
 }
-
-func TestDistance(t *testing.T) {
-	tests := []struct {
-		a, b string
-		want int
-	}{
-		{"", "", 0}, {"abc", "abc", 0}, {"abc", "", 3}, {"abc", "acb", 1}, {"abc", "abcd", 1}, {"abc", "xbc", 1},
-		{"kitten", "sitting", 3}, {"µH", "uH", 1},
-	}
-	for _, test := range tests {
-		if got := distance(test.a, test.b); got != test.want || distance(test.b, test.a) != got {
-			t.Errorf("distance(%q, %q) = %d, want %d", test.a, test.b, got, test.want)
-		}
-	}
-}

@@ -1,5 +1,7 @@
 package knowledge
 
+import "drivemend/measure"
+
 // Kind names one of the lists of a base in a question for the nearest id.
 type Kind string
 
@@ -118,7 +120,7 @@ func contains(list []string, word string) bool {
 func closest(word string, words []string) string {
 	best, bestDistance := "", max(1, len([]rune(word))/3)+1
 	for _, w := range words {
-		if d := distance(word, w); d < bestDistance {
+		if d := measure.Distance(word, w); d < bestDistance {
 			best, bestDistance = w, d
 		}
 	}
@@ -131,36 +133,4 @@ func suggest(word string, words []string) string {
 		return "did you mean " + near + "?"
 	}
 	return ""
-}
-
-// maxWord bounds the words that are compared letter by letter.
-const maxWord = 64
-
-// distance counts the insertions, deletions, changes and swaps of neighbours between two words (optimal string
-// alignment). Words that are very long count as far apart.
-func distance(a, b string) int {
-	x, y := []rune(a), []rune(b)
-	if len(x) > maxWord || len(y) > maxWord {
-		return maxWord
-	}
-	before, last := make([]int, len(y)+1), make([]int, len(y)+1)
-	for j := range last {
-		last[j] = j
-	}
-	for i := 1; i <= len(x); i++ {
-		row := make([]int, len(y)+1)
-		row[0] = i
-		for j := 1; j <= len(y); j++ {
-			change := last[j-1]
-			if x[i-1] != y[j-1] {
-				change++
-			}
-			row[j] = min(last[j]+1, row[j-1]+1, change)
-			if i > 1 && j > 1 && x[i-1] == y[j-2] && x[i-2] == y[j-1] {
-				row[j] = min(row[j], before[j-2]+1)
-			}
-		}
-		before, last = last, row
-	}
-	return last[len(y)]
 }

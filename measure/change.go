@@ -104,63 +104,40 @@ func (f *File) Clear(path string) error {
 // Observe appends an observation; the case is parsed anew and every problem is returned with nothing changed.
 // A reading without a text is written out from its numbers. Line is not used.
 func (f *File) Observe(o Observation) error {
-	m := flowMap{}
-	m.add("test", o.Test)
-	m.add("part", o.Part)
-	m.add("position", o.Position)
-	m.time("at", o.At)
-	m.add("result", o.Result)
-	m.add("reading", readingText(o.Reading))
-	m.add("twin", readingText(o.Twin))
-	m.add("answer", o.Answer)
-	m.add("seen", o.Seen)
-	m.add("polarity", o.Polarity)
-	m.add("state", o.State)
-	m.add("motor", o.Motor)
-	m.add("surface", o.Surface)
-	m.add("instrument", o.Instrument)
+	accuracy, reach := "", ""
 	if o.Accuracy != 0 {
-		m.add("accuracy", strconv.FormatFloat(o.Accuracy, 'g', -1, 64))
+		accuracy = strconv.FormatFloat(o.Accuracy, 'g', -1, 64)
 	}
 	if o.Range != 0 {
 		unit := quantity.Ohm
 		if o.Reading != nil && o.Reading.Unit != quantity.Any && o.Reading.Unit != "" {
 			unit = o.Reading.Unit
 		}
-		m.add("range", exact(o.Range, unit))
+		reach = exact(o.Range, unit)
 	}
-	m.add("note", o.Note)
-	return f.appendTo("observations", m)
+	return f.appendTo("observations", fields("test", o.Test, "part", o.Part, "position", o.Position, "at", timeText(o.At),
+		"result", o.Result, "reading", readingText(o.Reading), "twin", readingText(o.Twin), "answer", o.Answer, "seen", o.Seen,
+		"polarity", o.Polarity, "state", o.State, "motor", o.Motor, "surface", o.Surface, "instrument", o.Instrument,
+		"accuracy", accuracy, "range", reach, "note", o.Note))
 }
 
 // Isolate appends a statement that the board is cut off from every source.
 func (f *File) Isolate(i Isolation) error {
-	m := flowMap{}
-	m.yesNo("locked", i.Locked)
-	m.add("motor", i.Motor)
-	m.add("other_sources", i.OtherSources)
-	m.time("at", i.At)
-	return f.appendTo("safety.isolation", m)
+	return f.appendTo("safety.isolation", fields("locked", yesNoText(i.Locked), "motor", i.Motor, "other_sources", i.OtherSources, "at", timeText(i.At)))
 }
 
 // Check appends a dead check; an AC voltage without unit was not read.
 func (f *File) Check(d DeadCheck) error {
-	m := flowMap{}
-	m.add("point", d.Point)
-	m.add("dc", quantityText(d.DC))
+	ac := ""
 	if d.AC.Unit != "" || d.AC.Text != "" {
-		m.add("ac", quantityText(d.AC))
+		ac = quantityText(d.AC)
 	}
-	m.yesNo("meter_proved", d.MeterProved)
-	m.time("at", d.At)
-	return f.appendTo("safety.dead_checks", m)
+	return f.appendTo("safety.dead_checks", fields("point", d.Point, "dc", quantityText(d.DC), "ac", ac, "meter_proved", yesNoText(d.MeterProved), "at", timeText(d.At)))
 }
 
 // FitLink appends a shorting link fitted at a time.
 func (f *File) FitLink(at time.Time) error {
-	m := flowMap{}
-	m.time("fitted", at)
-	return f.appendTo("safety.link", m)
+	return f.appendTo("safety.link", fields("fitted", timeText(at)))
 }
 
 // RemoveLink says when the link that is fitted was taken off. Without a fitted link it is refused.
@@ -184,10 +161,7 @@ func (f *File) RemoveLink(at time.Time) error {
 
 // Energise appends a moment at which energy was put into the board.
 func (f *File) Energise(n Energised) error {
-	m := flowMap{}
-	m.add("what", n.What)
-	m.time("at", n.At)
-	return f.appendTo("safety.energised", m)
+	return f.appendTo("safety.energised", fields("what", n.What, "at", timeText(n.At)))
 }
 
 // appendTo adds an entry to a list.
@@ -271,31 +245,35 @@ func facts(n *yaml.Node, path, outside string) []string {
 // flowMap gathers keys of an entry written as { }.
 type flowMap struct{ keys []string }
 
-// add adds a key unless its text is empty.
-func (m *flowMap) add(key, text string) {
-	if text != "" {
-		m.keys = append(m.keys, key+": "+scalar(text, true))
+// fields makes an entry of keys and their texts by turns; a key without a text is left out.
+func fields(pairs ...string) flowMap {
+	var m flowMap
+	for i := 0; i+1 < len(pairs); i += 2 {
+		if pairs[i+1] != "" {
+			m.keys = append(m.keys, pairs[i]+": "+scalar(pairs[i+1], true))
+		}
 	}
-}
-
-// yesNo adds a yes-no key.
-func (m *flowMap) yesNo(key string, yes bool) {
-	text := "no"
-	if yes {
-		text = "yes"
-	}
-	m.add(key, text)
-}
-
-// time adds a time unless it is zero.
-func (m *flowMap) time(key string, at time.Time) {
-	if !at.IsZero() {
-		m.add(key, stamp(at))
-	}
+	return m
 }
 
 // String gives the map as it is written.
 func (m *flowMap) String() string { return "{" + strings.Join(m.keys, ", ") + "}" }
+
+// yesNoText writes a yes-no value.
+func yesNoText(yes bool) string {
+	if yes {
+		return "yes"
+	}
+	return "no"
+}
+
+// timeText writes a time; none is left out.
+func timeText(at time.Time) string {
+	if at.IsZero() {
+		return ""
+	}
+	return stamp(at)
+}
 
 // stamp writes a time with its offset.
 func stamp(at time.Time) string { return at.Format(time.RFC3339Nano) }
@@ -311,9 +289,14 @@ func quantityText(q quantity.Quantity) string {
 	return q.String()
 }
 
-// exact writes a number in its SI unit without losing a digit.
+// exact writes a number without losing a digit: in its SI unit, or with a prefix where that would need a power of ten.
 func exact(v float64, unit quantity.Unit) string {
-	return strconv.FormatFloat(v, 'g', -1, 64) + " " + string(unit)
+	plain := strconv.FormatFloat(v, 'g', -1, 64)
+	short := quantity.Format(v, unit)
+	if q, err := quantity.Parse(short, unit); strings.Contains(plain, "e") && err == nil && q.Value == v {
+		return short
+	}
+	return plain + " " + string(unit)
 }
 
 // readingText gives a reading as written, or written out.

@@ -166,9 +166,9 @@ func NearestKey(path string) string {
 			if full && form != k.Path {
 				continue
 			}
-			cost := distance(path, form)
+			cost := Distance(path, form)
 			if inList := strings.ReplaceAll(form, "[]", ""); inList != form {
-				if cost = distance(bracket.ReplaceAllString(path, ""), inList); cost > inEntry {
+				if cost = Distance(bracket.ReplaceAllString(path, ""), inList); cost > inEntry {
 					continue
 				}
 			}
@@ -214,7 +214,7 @@ func elsewhere(name string, full bool) string {
 func nearest(word string, among []string) string {
 	best, bestCost := "", 1+max(1, len(word)/3)
 	for _, w := range among {
-		cost := min(distance(word, w), distance(joined(word), joined(w))) // handover for handed-over
+		cost := min(Distance(word, w), Distance(joined(word), joined(w))) // handover for handed-over
 		if stem := strings.TrimSuffix(strings.ToLower(word), "s"); len(stem) > 3 && strings.Contains(w, stem) {
 			cost = min(cost, 1) // mains for rectified-mains, photos for photographs
 		}
@@ -228,9 +228,9 @@ func nearest(word string, among []string) string {
 // joined takes the hyphens out of a word.
 func joined(word string) string { return strings.ReplaceAll(word, "-", "") }
 
-// distance counts the letters to add, drop, change or swap with a neighbour to turn a into b
+// Distance counts the letters to add, drop, change or swap with a neighbour to turn a into b, capitals left aside
 // (optimal string alignment).
-func distance(a, b string) int {
+func Distance(a, b string) int {
 	x, y := []rune(strings.ToLower(a)), []rune(strings.ToLower(b))
 	if len(x) > 80 {
 		x = x[:80] // a longer word is near to nothing

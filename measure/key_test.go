@@ -188,3 +188,18 @@ func sampleOf(k Key) (string, bool) {
 	}
 	return "", false
 }
+
+func TestDistance(t *testing.T) {
+	tests := []struct {
+		a, b string
+		want int
+	}{
+		{"", "", 0}, {"abc", "abc", 0}, {"abc", "", 3}, {"abc", "acb", 1}, {"abc", "abcd", 1}, {"abc", "xbc", 1},
+		{"kitten", "sitting", 3}, {"µH", "uH", 1},
+	}
+	for _, test := range tests {
+		if got := Distance(test.a, test.b); got != test.want || Distance(test.b, test.a) != got {
+			t.Errorf("Distance(%q, %q) = %d, want %d", test.a, test.b, got, test.want)
+		}
+	}
+}

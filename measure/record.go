@@ -112,115 +112,71 @@ func buildBefore(e *entry) Before {
 
 // AddRepair appends one part's share of an earlier repair.
 func (f *File) AddRepair(r Repair) error {
-	m := flowMap{}
-	m.add("part", r.Part)
-	m.add("position", r.Position)
-	m.date("done", r.Done)
-	m.add("by", r.By)
-	m.add("work", r.Work)
-	m.add("was", r.Was)
-	m.add("fitted", r.Fitted)
-	m.add("because", r.Because)
-	m.add("note", r.Note)
-	return f.appendTo("repairs", m)
+	return f.appendTo("repairs", fields("part", r.Part, "position", r.Position, "done", dayText(r.Done), "by", r.By, "work", r.Work,
+		"was", r.Was, "fitted", r.Fitted, "because", r.Because, "note", r.Note))
 }
 
 // AddFaultCode appends one entry of the board's own fault memory.
 func (f *File) AddFaultCode(c FaultCode) error {
-	m := flowMap{}
-	m.add("code", c.Code)
-	m.add("text", c.Text)
-	m.count("count", int64(c.Count))
-	m.add("at", c.At)
-	m.add("note", c.Note)
-	return f.appendTo("fault_log", m)
+	return f.appendTo("fault_log", fields("code", c.Code, "text", c.Text, "count", countText(int64(c.Count)), "at", c.At, "note", c.Note))
 }
 
 // AddSetting appends one setting of the drive as found.
 func (f *File) AddSetting(s Setting) error {
-	m := flowMap{}
-	m.add("name", s.Name)
-	m.add("value", s.Value)
-	m.add("note", s.Note)
-	return f.appendTo("settings", m)
+	return f.appendTo("settings", fields("name", s.Name, "value", s.Value, "note", s.Note))
 }
 
 // AddPhotograph appends one picture.
 func (f *File) AddPhotograph(p Photograph) error {
-	m := flowMap{}
-	m.add("path", p.Path)
-	m.add("shows", p.Shows)
-	m.add("part", p.Part)
-	m.time("at", p.At)
-	m.count("bytes", p.Bytes)
-	m.add("sha256", p.SHA256)
-	return f.appendTo("photographs", m)
+	return f.appendTo("photographs", fields("path", p.Path, "shows", p.Shows, "part", p.Part, "at", timeText(p.At),
+		"bytes", countText(p.Bytes), "sha256", p.SHA256))
 }
 
 // AddCapture appends one instrument file by its name, length and sum; figures are not written.
 func (f *File) AddCapture(c Capture) error {
-	m := flowMap{}
-	m.add("name", c.Name)
-	m.count("bytes", c.Bytes)
-	m.add("sha256", c.SHA256)
-	m.add("kind", c.Kind)
-	m.time("at", c.At)
-	m.add("position", c.Position)
-	m.add("edge", c.Edge)
-	m.add("note", c.Note)
-	return f.appendTo("captures", m)
+	return f.appendTo("captures", fields("name", c.Name, "bytes", countText(c.Bytes), "sha256", c.SHA256, "kind", c.Kind,
+		"at", timeText(c.At), "position", c.Position, "edge", c.Edge, "note", c.Note))
 }
 
 // AddStep appends one step of the record.
 func (f *File) AddStep(s StepEntry) error {
-	m := flowMap{}
-	m.add("step", s.Step)
-	m.add("result", s.Result)
-	m.time("at", s.At)
-	m.add("by", s.By)
-	m.add("note", s.Note)
-	return f.appendTo("steps", m)
+	return f.appendTo("steps", fields("step", s.Step, "result", s.Result, "at", timeText(s.At), "by", s.By, "note", s.Note))
 }
 
 // StateBefore appends one statement of conditions; a condition that does not hold is left out.
 func (f *File) StateBefore(b Before) error {
-	m := flowMap{}
-	m.add("step", b.Step)
-	m.time("at", b.At)
-	m.add("motor", b.Motor)
-	m.add("brake_resistor", b.BrakeResistor)
+	fuse := ""
 	if b.Fuse.Unit != "" || b.Fuse.Text != "" {
-		m.add("fuse", quantityText(b.Fuse))
+		fuse = quantityText(b.Fuse)
 	}
-	m.add("bank", b.Bank)
-	for _, c := range []struct {
-		key   string
-		holds bool
-	}{{"guard", b.Guard}, {"remote_off", b.RemoteOff}, {"glasses", b.Glasses}, {"second_person", b.SecondPerson},
-		{"bus_disconnected", b.BusDisconnected}, {"shield", b.Shield}, {"electronics_disconnected", b.ElectronicsDisconnected},
-		{"sources_off", b.SourcesOff}, {"gates_held", b.GatesHeld}, {"limit_set", b.LimitSet}, {"attended", b.Attended}} {
-		if c.holds {
-			m.add(c.key, "yes")
-		}
-	}
-	m.add("probe", b.Probe)
-	m.add("clip_on", b.ClipOn)
-	m.add("supply", b.Supply)
-	m.count("earth_clips", int64(b.EarthClips))
-	m.add("note", b.Note)
-	return f.appendTo("safety.before", m)
+	return f.appendTo("safety.before", fields("step", b.Step, "at", timeText(b.At), "motor", b.Motor, "brake_resistor", b.BrakeResistor,
+		"fuse", fuse, "bank", b.Bank, "guard", yesText(b.Guard), "remote_off", yesText(b.RemoteOff), "glasses", yesText(b.Glasses),
+		"second_person", yesText(b.SecondPerson), "bus_disconnected", yesText(b.BusDisconnected), "shield", yesText(b.Shield),
+		"electronics_disconnected", yesText(b.ElectronicsDisconnected), "sources_off", yesText(b.SourcesOff),
+		"gates_held", yesText(b.GatesHeld), "limit_set", yesText(b.LimitSet), "attended", yesText(b.Attended),
+		"probe", b.Probe, "clip_on", b.ClipOn, "supply", b.Supply, "earth_clips", countText(int64(b.EarthClips)), "note", b.Note))
 }
 
-// count adds a whole number unless it is zero.
-func (m *flowMap) count(key string, n int64) {
-	if n != 0 {
-		m.add(key, strconv.FormatInt(n, 10))
+// yesText writes what holds; what does not is left out.
+func yesText(holds bool) string {
+	if holds {
+		return "yes"
 	}
+	return ""
 }
 
-// date adds a day unless it is zero.
-func (m *flowMap) date(key string, at time.Time) {
-	if !at.IsZero() {
-		m.add(key, at.Format("2006-01-02"))
+// countText writes a whole number; zero is left out.
+func countText(n int64) string {
+	if n == 0 {
+		return ""
 	}
+	return strconv.FormatInt(n, 10)
+}
+
+// dayText writes a day; none is left out.
+func dayText(at time.Time) string {
+	if at.IsZero() {
+		return ""
+	}
+	return at.Format(time.DateOnly)
 }

@@ -114,7 +114,7 @@ const (
 	BeforeLowBus       = "low-bus"       // current-limited bus
 	BeforeFull         = "full"          // full bus
 	BeforeDoublePulse  = "double-pulse"  // beside those of the bus it is done at
-	BeforeInjection    = "injection"     // current through a shorted bank
+	BeforeInjection    = "injection"     // current from a limited supply
 	BeforeInsulation   = "insulation"    // insulation tester
 	BeforeScope        = "scope"         // any scope step, beside those of its power
 )

@@ -226,7 +226,7 @@ func nearestOf(name string, names []string) string {
 	name = bareName(name)
 	best, least := "", len([]rune(name))/3+1
 	for _, n := range names {
-		if d := letters(name, bareName(n)); d < least {
+		if d := measure.Distance(name, bareName(n)); d < least {
 			best, least = n, d
 		}
 	}
@@ -241,31 +241,6 @@ func bareName(s string) string {
 		}
 		return r
 	}, strings.ToLower(s))
-}
-
-// letters counts the letters to add, drop or change to turn a into b (Levenshtein distance).
-func letters(a, b string) int {
-	x, y := []rune(a), []rune(b)
-	if len(x) > 80 {
-		x = x[:80] // a longer word is near to nothing
-	}
-	row := make([]int, len(y)+1)
-	for j := range row {
-		row[j] = j
-	}
-	for i, r := range x {
-		corner := row[0]
-		row[0] = i + 1
-		for j, q := range y {
-			changed := corner
-			if r != q {
-				changed++
-			}
-			corner = row[j+1]
-			row[j+1] = min(row[j+1]+1, row[j]+1, changed)
-		}
-	}
-	return row[len(y)]
 }
 
 // echo says how an observation was taken: "0.4 Ω at Q2: shorted 98 %, leaky 2 %".

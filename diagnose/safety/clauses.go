@@ -183,10 +183,11 @@ func bankText(_ scene, b measure.Before) string {
 	return "it is not stated whether the bus capacitors were at voltage within a year"
 }
 
-// reform says how a bank that was stored is brought back. A capacitor maker's note (rated voltage through about 100 Ω up
-// to 100 V, 1 kΩ above, 1 h, then 12 to 48 h of rest) and a drive guide's steps (four of 25 %, 120 min each, after three
-// years), both read second-hand; the drive maker's own instruction goes before them. It puts power on, so that it is told
-// only when nothing else is missing.
+// reform says how a bank that was stored is brought back. Rated voltage through about 100 Ω up to 100 V, 1 kΩ above, for
+// 1 h, then 12 to 48 h of rest: EPCOS, text on aluminium electrolytics, in a mirror. Four steps of 25 %, 120 min each,
+// after three years: PowerFlex 70 reforming, industrialmonitordirect.com. The year itself: MHI/ECMA white paper on
+// capacitor storage, shelf life from the last power-up. All second-hand; the drive maker's own instruction goes before
+// them. It puts power on, so that it is told only when nothing else is missing.
 func reform(s scene, b measure.Before) string {
 	how := s.reformHow() + " (--bank re-formed)"
 	if b.Bank == "stored" {
@@ -204,7 +205,7 @@ func (s scene) reformHow() string {
 		ohm = "1 kΩ"
 	}
 	return "re-form the bus capacitors first: rated voltage through about " + ohm + " (100 Ω for capacitors of up to 100 V, 1 kΩ above) for 1 h, then let them rest 12 to 48 h; " +
-		"after more than three years in steps of 25 % of the rated voltage, 120 min each; never by a bare mains connection, capacitors have burst that way"
+		"after more than three years in steps of 25 % of the rated voltage, 120 min each; never by a bare mains connection, capacitors have burst that way (a capacitor maker's and a drive guide's figures, both second hand; the maker's own instruction comes first)"
 }
 
 // highestBus is the highest voltage of the bus in volts, on whichever board it is higher.

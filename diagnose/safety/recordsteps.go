@@ -40,8 +40,7 @@ var (
 	insulated = Work{Need: NeedDead, Tool: ToolInsulation}
 )
 
-// The steps are common practice; the insulation tester's rule, that no electronics hang on what it tests, stands in
-// every drive maker's manual that was read.
+// The steps, and how they are done, are common practice.
 var recordSteps = []RecordStep{
 	{measure.StepPhotographed, BeforeTouching, "photographs as found", "Is the board photographed as it was found?",
 		"From above and from the sides, every burn mark, plug and label, before anything is moved. Covers stay on while the board may be live.", look},
