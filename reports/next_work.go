@@ -47,7 +47,7 @@ func workWords(w safety.Work) string { return joined("; ", needWords(w.Need), to
 func writeConditions(s *screen, known Beside, w safety.Work, at time.Time, plan *safety.Plan) {
 	s.item(strong, "needs", workWords(w)+": allowed at this moment")
 	for _, b := range safety.StandsOn(known.Case, w, at) {
-		s.item(strong, "stated", clockAt(b.At, at)+" for "+beforeName(b.Step)+": "+joined("; ", append(conditionWords(b), b.Note)...))
+		s.item(strong, "stated", clockAt(b.At, at)+" for "+beforeName(b.Step)+": "+joined("; ", append(Conditions(b), b.Note)...))
 	}
 	if w.Need != safety.NeedQuestion && plan != nil {
 		s.item(caution, "caution", storedWords(plan, w.Need))

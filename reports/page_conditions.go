@@ -12,7 +12,7 @@ func (r Report) conditions() section {
 	s := section{ID: "conditions", Title: "Conditions stated before powered steps"}
 	t := table{Caption: "What was stated before power, scope, injection and insulation tester, and when; what is not listed was not stated, or stated as no", Heads: []string{"Before", "Stated", "Conditions", "Note"}, Numeric: make([]bool, 4)}
 	for _, b := range r.Case.Safety.Before {
-		text := strings.Join(conditionWords(b), "; ")
+		text := strings.Join(Conditions(b), "; ")
 		if text == "" {
 			text = "none"
 		}
@@ -35,8 +35,8 @@ func beforeName(step string) string {
 	return step
 }
 
-// conditionWords are the conditions that a statement says are kept.
-func conditionWords(b measure.Before) []string {
+// Conditions names the conditions that a statement says are kept.
+func Conditions(b measure.Before) []string {
 	var out []string
 	say := func(holds bool, text string) {
 		if holds {

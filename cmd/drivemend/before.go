@@ -117,7 +117,7 @@ func (a *app) before(path, step string, flags *pflag.FlagSet) error {
 		return err
 	}
 	a.sayAsItStood(at)
-	fmt.Fprintf(a.out, "stated before %s at %s: %s\n", step, at.Format(time.RFC3339), saidOf(f.Case))
+	fmt.Fprintf(a.out, "stated before %s at %s: %s\n", step, at.Format(time.RFC3339), saidOf(f.Case.Safety.Before[len(f.Case.Safety.Before)-1]))
 	base, err := a.base()
 	if err != nil {
 		return err
@@ -200,24 +200,9 @@ func conditionsOf(step string) string {
 	return strings.Join(flags, " ")
 }
 
-// saidOf reads the last statement of a case back.
-func saidOf(c *measure.Case) string {
-	b := c.Safety.Before[len(c.Safety.Before)-1]
-	var said []string
-	for _, one := range conditions {
-		switch name := strings.ReplaceAll(one.flag, "-", " "); {
-		case one.yes != nil && *one.yes(&b):
-			said = append(said, name)
-		case one.word != nil && *one.word(&b) != "":
-			said = append(said, name+" "+*one.word(&b))
-		}
-	}
-	if b.Fuse.Unit != "" {
-		said = append(said, "fuse "+b.Fuse.String())
-	}
-	if b.EarthClips > 0 {
-		said = append(said, "earth clips "+strconv.Itoa(b.EarthClips))
-	}
+// saidOf reads a statement back.
+func saidOf(b measure.Before) string {
+	said := reports.Conditions(b)
 	if len(said) == 0 {
 		return "nothing holds"
 	}

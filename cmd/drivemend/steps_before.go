@@ -53,7 +53,7 @@ func (st *statement) begin() (ask.Kind, error) {
 		return st.askAll()
 	}
 	answer, err := st.put(ask.Question{Title: st.title("do they still stand?"), Danger: true, Choices: yesNo,
-		Lines: []string{"Stated at " + last.At.Format("15:04") + ": " + saidOf(&measure.Case{Safety: measure.Safety{Before: []measure.Before{*last}}}) + ".",
+		Lines: []string{"Stated at " + last.At.Format("15:04") + ": " + saidOf(*last) + ".",
 			"Go and look at each of them now."},
 		Ask: "Does all of it still stand? Type yes only if you have looked."})
 	switch {

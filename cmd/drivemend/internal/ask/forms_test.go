@@ -26,7 +26,20 @@ func (s *screenOf) String() string {
 	return s.text.String()
 }
 
-// form asks one question with keys pressed one after the other.
+// settled waits until something new stands on the screen since it held so many bytes, and no more comes; some keys change
+// nothing, so that it does not wait for ever.
+func (s *screenOf) settled(before int) {
+	for start, last := time.Now(), before; time.Since(start) < time.Second; {
+		time.Sleep(40 * time.Millisecond)
+		now := len(s.String())
+		if now > before && now == last {
+			return
+		}
+		last = now
+	}
+}
+
+// form asks one question with keys pressed one after the other, each once the screen has answered the one before.
 func form(t *testing.T, q Question, keys ...string) (Answer, string) {
 	t.Helper()
 	in, typed := io.Pipe()
@@ -34,11 +47,14 @@ func form(t *testing.T, q Question, keys ...string) (Answer, string) {
 	screen := &screenOf{}
 	done := make(chan struct{})
 	go func() {
+		before := 0
 		for _, k := range keys {
+			screen.settled(before)
+			before = len(screen.String())
 			select {
 			case <-done:
 				return
-			case <-time.After(60 * time.Millisecond):
+			default:
 			}
 			if _, err := io.WriteString(typed, k); err != nil {
 				return
