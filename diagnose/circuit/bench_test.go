@@ -1,6 +1,9 @@
 package circuit
 
-import "testing"
+import (
+	"math"
+	"testing"
+)
 
 // snubbedEdge is the opening edge of a chopper with bus, loop, package, lead and an RCD network: eight states.
 func snubbedEdge() *Circuit {
@@ -38,6 +41,30 @@ func benchmarkEdge(b *testing.B, opts ...Option) {
 		steps = r.steps
 	}
 	b.ReportMetric(float64(steps), "steps/op")
+}
+
+// BenchmarkEdgeChanged is an edge whose sources are changed where the chip reaches the bus: the ramp that held it jumps
+// away and the channel's current falls on a curve of 64 pieces.
+func BenchmarkEdgeChanged(b *testing.B) {
+	b.ReportAllocs()
+	for b.Loop() {
+		c, _, chip := leg(0)
+		c.Voltage("ramp", c.Node("ramp"), 0, Waveform{{0, 0}, {1e-6, 12e3}})
+		c.Diode("hold", chip, c.Node("ramp"), 0, 1e-3)
+		r := begin(b, c, WithoutEnergy(), WithoutTrace())
+		if stop, err := r.To(1e-6, r.Probe(chip, 0), 310); err != nil || !stop {
+			b.Fatal(stop, err)
+		}
+		at, amps := r.Time(), r.BranchCurrent("hold")
+		r.Retarget("ramp", Constant(5000))
+		var fall Waveform
+		for k := range 65 {
+			x := float64(k) / 64
+			fall = append(fall, Point{at + 100e-9*x, amps * (1 + math.Cos(math.Pi*x)) / 2})
+		}
+		r.Retarget("channel", fall)
+		to(b, r, 1e-6)
+	}
 }
 
 func BenchmarkEdgePeakOnly(b *testing.B)   { benchmarkEdge(b, WithoutEnergy(), WithoutTrace()) }

@@ -6,6 +6,17 @@
 // decides only how often the solver looks, never how exact the result is. Events are found by halving the step
 // with the same cached matrices and, in the last piece, on the Taylor polynomial of the solution.
 //
+// Use: New, Node and the elements describe a circuit; Start finds the diodes' states at t = 0; Probe, ProbeCurrent and
+// ProbeSlope place probes; To runs to a time or to a level; Retarget gives a source another future; Peak, Lowest, Trace,
+// Energy, Charge, Square, Stored, BranchCurrent, BranchVoltage, Voltage, Slope and Modes answer. Netlist of a circuit, or
+// of a run with its sources as they were run, is an ngspice deck of the same. Faulty circuits, capacitor loops or
+// inductor cut sets that contradict themselves, chatter and time constants too far apart end in errors that name the
+// element.
+//
+// Energy, charge and squared current are integrals of each element's own voltage and current, not differences of what
+// is stored. They are good to about 1e-9 of the largest of their kind; the heat of a resistance R that sees a voltage V
+// only for a moment of a long time t carries an error of 1e-16·V²·t/R.
+//
 // All values are in SI units. Results are the same on every machine: no fused multiply-add, no map order.
 package circuit
 

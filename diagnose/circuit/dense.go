@@ -10,6 +10,29 @@ var errSingular = errors.New("nearly singular equations")
 // leastPivot is the smallest pivot, after scaling to a unit diagonal, that still counts as independent.
 const leastPivot = 1e-14
 
+// room hands out zeroed numbers from larger blocks, which live as long as the run.
+type room struct{ free []float64 }
+
+const roomBlock = 4096
+
+func (r *room) take(n int) []float64 {
+	if n > len(r.free) {
+		r.free = make([]float64, max(n, roomBlock))
+	}
+	own := r.free[:n:n]
+	r.free = r.free[n:]
+	return own
+}
+
+// resize makes a slice n long and zero, in the space it has if that is enough.
+func (r *room) resize(p *[]float64, n int) {
+	if cap(*p) < n {
+		*p = r.take(n)
+	}
+	*p = (*p)[:n]
+	clear(*p)
+}
+
 // row gives row i of a matrix stored by rows of width w.
 func row(m []float64, w, i int) []float64 { return m[i*w : (i+1)*w : (i+1)*w] }
 
@@ -33,6 +56,70 @@ func dot(a, b []float64) float64 {
 		even += float64(a[k] * b[k])
 	}
 	return even + odd
+}
+
+// apply sets dst[i] = m[i]·x for rows of m that begin a stride apart. Four rows run side by side; each sums as dot
+// does, to the last bit.
+func apply(dst, m []float64, stride int, x []float64) {
+	i := 0
+	for ; i+4 <= len(dst); i += 4 {
+		four(dst[i:i+4], m[i*stride:], stride, x)
+	}
+	if i < len(dst) && i > 0 { // the last four once more, which gives the same
+		i = len(dst) - 4
+		four(dst[i:], m[i*stride:], stride, x)
+		return
+	}
+	for ; i < len(dst); i++ {
+		dst[i] = dot(x, m[i*stride:])
+	}
+}
+
+func four(dst, m []float64, stride int, x []float64) {
+	n := len(x)
+	a, b, c, d := m[:n], m[stride:][:n], m[2*stride:][:n], m[3*stride:][:n]
+	var a0, a1, b0, b1, c0, c1, d0, d1 float64
+	k := 0
+	for ; k+1 < n; k += 2 {
+		p, q := x[k], x[k+1]
+		a0 += float64(p * a[k])
+		a1 += float64(q * a[k+1])
+		b0 += float64(p * b[k])
+		b1 += float64(q * b[k+1])
+		c0 += float64(p * c[k])
+		c1 += float64(q * c[k+1])
+		d0 += float64(p * d[k])
+		d1 += float64(q * d[k+1])
+	}
+	if k < n {
+		p := x[k]
+		a0 += float64(p * a[k])
+		b0 += float64(p * b[k])
+		c0 += float64(p * c[k])
+		d0 += float64(p * d[k])
+	}
+	dst[0], dst[1], dst[2], dst[3] = a0+a1, b0+b1, c0+c1, d0+d1
+}
+
+// addRows adds k[0]·row 0 + k[1]·row 1 ... of m to dst, one after the other.
+func addRows(dst, k, m []float64, stride int) {
+	w := len(dst)
+	i := 0
+	for ; i+4 <= len(k); i += 4 {
+		k0, k1, k2, k3 := k[i], k[i+1], k[i+2], k[i+3]
+		own := m[i*stride:]
+		a, b, c, d := own[:w], own[stride:][:w], own[2*stride:][:w], own[3*stride:][:w]
+		for j, v := range dst {
+			v += float64(k0 * a[j])
+			v += float64(k1 * b[j])
+			v += float64(k2 * c[j])
+			v += float64(k3 * d[j])
+			dst[j] = v
+		}
+	}
+	for ; i < len(k); i++ {
+		addTo(dst, m[i*stride:][:w], k[i])
+	}
 }
 
 // solveSPD solves m·x = rhs in place for a symmetric positive definite n×n matrix and w right-hand sides (rhs is n
@@ -113,8 +200,6 @@ func divide(v []float64, d float64) {
 func multiply(dst, a, b []float64, n, w int) {
 	clear(dst)
 	for i := range n {
-		for k := range n {
-			addTo(row(dst, w, i), row(b, w, k), a[i*n+k])
-		}
+		addRows(row(dst, w, i), row(a, n, i), b, w)
 	}
 }

@@ -31,20 +31,31 @@ func (r *Run) scratch(n int) []float64 {
 	return r.y[:n]
 }
 
-// flush turns the moments of the stretch just ended into the energies of the elements.
+// flush turns the moments of the stretch just ended into the integrals of the elements.
 func (r *Run) flush() {
 	if !r.opts.energy || len(r.moment) == 0 {
 		return
 	}
 	s := r.sys
 	m := s.nx + 2
-	v, i := make([]float64, m), make([]float64, m)
-	for k := range r.energy {
+	y := r.scratch(2 * m)
+	v, i := y[:m], y[m:]
+	for k := range r.totals {
 		s.collapse(v, s.v(k), &r.seg)
 		s.collapse(i, s.i(k), &r.seg)
-		r.energy[k] += quadratic(v, i, r.moment)
+		t := &r.totals[k]
+		t.energy += quadratic(v, i, r.moment)
+		t.charge += linear(i, r.moment)
+		t.square += quadratic(i, i, r.moment)
 	}
 	clear(r.moment)
+}
+
+// linear is the integral of a form over [states | 1 | τ]: the row of the moments that belongs to the 1.
+func linear(i, m []float64) float64 {
+	n := len(i)
+	one := n - 2
+	return dot(i[:one+1], m[one*n:]) + float64(i[n-1]*m[(n-1)*n+one])
 }
 
 // quadratic is vᵀ·M·i for a symmetric M of which the lower half is kept.
@@ -62,13 +73,27 @@ func quadratic(v, i, m []float64) float64 {
 // Energy gives the energy in joules absorbed by a named element so far (negative: given), the integral of its own
 // v·i by five-point Gauss-Legendre quadrature on the exact solution of every step. NaN for an unknown element or a
 // run started without energies.
-func (r *Run) Energy(name string) float64 {
+func (r *Run) Energy(name string) float64 { return r.total(name).energy }
+
+// Charge gives the charge in coulombs that has flowed through a named element so far, from its first to its second
+// node: the integral of its current, from the same quadrature as Energy. NaN as there.
+func (r *Run) Charge(name string) float64 { return r.total(name).charge }
+
+// Square gives the integral of the squared current of a named element so far in A²·s, from the same quadrature as
+// Energy. The heat in a resistance R in series is R times this; over a period T the rms current is √(Square/T). NaN as
+// for Energy.
+func (r *Run) Square(name string) float64 { return r.total(name).square }
+
+// total holds the integrals of one element.
+type total struct{ energy, charge, square float64 }
+
+func (r *Run) total(name string) total {
 	k, ok := r.c.byName[name]
 	if !ok || !r.opts.energy {
-		return math.NaN()
+		return total{math.NaN(), math.NaN(), math.NaN()}
 	}
 	r.flush()
-	return r.energy[k]
+	return r.totals[k]
 }
 
 // Stored gives the energy a named capacitor or inductor holds at present (½·C·v² or ½·L·i², joules); NaN otherwise.

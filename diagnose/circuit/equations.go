@@ -6,6 +6,7 @@ import "fmt"
 // y = [states | source values | source slopes | 1].
 type system struct {
 	tree   *tree
+	room   *room
 	nx, nu int
 	width  int
 	states []int     // branch whose voltage (capacitor) or current (inductor) is the state
@@ -20,12 +21,12 @@ type system struct {
 }
 
 // newSystem forms the equations of a pattern of conducting diodes.
-func newSystem(c *Circuit, on uint64, leaky bool) (*system, error) {
+func newSystem(c *Circuit, on uint64, leaky bool, space *room) (*system, error) {
 	t, err := newTree(c, on, leaky)
 	if err != nil {
 		return nil, err
 	}
-	s := &system{tree: t, nu: c.sources, column: make([]int, len(c.branches))}
+	s := &system{tree: t, room: space, nu: c.sources, column: make([]int, len(c.branches))}
 	s.number()
 	s.known()
 	for _, step := range []func() error{s.resistive, s.capacitive, s.inductive} {
@@ -40,6 +41,7 @@ func newSystem(c *Circuit, on uint64, leaky bool) (*system, error) {
 
 // number gives every capacitor of the tree and every inductor outside it a state.
 func (s *system) number() {
+	s.states = make([]int, 0, len(s.tree.class))
 	for i, k := range s.tree.class {
 		s.column[i] = -1
 		if (k == store && s.tree.inTree[i]) || (k == choke && !s.tree.inTree[i]) {
@@ -50,11 +52,11 @@ func (s *system) number() {
 	nb := len(s.tree.class)
 	s.nx = len(s.states)
 	s.width = s.nx + 2*s.nu + 1
-	s.mass = make([]float64, s.nx)
-	s.rate = make([]float64, s.nx*s.width)
-	s.volt = make([]float64, nb*s.width)
-	s.amp = make([]float64, nb*s.width)
-	s.node = make([]float64, len(s.tree.c.nodes)*s.width)
+	s.mass = s.room.take(s.nx)
+	s.rate = s.room.take(s.nx * s.width)
+	s.volt = s.room.take(nb * s.width)
+	s.amp = s.room.take(nb * s.width)
+	s.node = s.room.take(len(s.tree.c.nodes) * s.width)
 }
 
 func (s *system) v(branch int) []float64 { return row(s.volt, s.width, branch) }
@@ -128,13 +130,13 @@ func (s *system) resistive() error {
 		}
 	}
 	n, t := len(links), s.tree
-	m, rhs := make([]float64, n*n), make([]float64, n*s.width)
+	m, rhs := s.room.take(n*n), s.room.take(n*s.width)
 	for a, k := range links {
 		m[a*n+a] += t.ohm[k]
 		s.sum(row(rhs, s.width, a), t.loop[k], s.volt, 1, lossy)
 		row(rhs, s.width, a)[s.width-1] -= s.threshold(k)
 	}
-	twig := make([]float64, s.width)
+	twig := s.room.take(s.width)
 	for _, k := range twigs {
 		clear(twig)
 		s.sum(twig, t.cut[k], s.amp, -t.ohm[k], lossy, store)
@@ -172,7 +174,7 @@ func (s *system) capacitive() error {
 	t := s.tree
 	first := s.firstStates(store)
 	n := len(first)
-	m, rhs := make([]float64, n*n), make([]float64, n*s.width)
+	m, rhs := s.room.take(n*n), s.room.take(n*s.width)
 	for j, x := range first {
 		k := s.states[x]
 		m[j*n+j] += t.c.branches[k].value
@@ -235,7 +237,7 @@ func (s *system) inductive() error {
 	t := s.tree
 	first := s.firstStates(choke)
 	n := len(first)
-	m, rhs := make([]float64, n*n), make([]float64, n*s.width)
+	m, rhs := s.room.take(n*n), s.room.take(n*s.width)
 	for j, x := range first {
 		s.sum(row(rhs, s.width, j), t.loop[s.states[x]], s.volt, 1, choke)
 	}

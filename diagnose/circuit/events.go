@@ -45,7 +45,7 @@ func (r *Run) system(p pattern) (*system, error) {
 	if s, ok := r.cache[p]; ok {
 		return s, nil
 	}
-	s, err := newSystem(r.c, p.on, p.leaky)
+	s, err := newSystem(r.c, p.on, p.leaky, &r.room)
 	if err != nil {
 		return nil, err
 	}
@@ -151,8 +151,10 @@ func (r *Run) adopt(on uint64) (cut string, err error) {
 func (r *Run) use(s *system, on uint64) {
 	r.sys, r.on = s, on
 	if len(r.x) != s.nx {
-		r.x, r.next = make([]float64, s.nx), make([]float64, s.nx)
-		r.rateOld, r.rateNew, r.spare = make([]float64, s.nx), make([]float64, s.nx), make([]float64, 3*s.nx)
+		for _, p := range []*[]float64{&r.x, &r.next, &r.rateOld, &r.rateNew} {
+			r.room.resize(p, s.nx)
+		}
+		r.room.resize(&r.spare, 3*s.nx)
 	}
 	for x, k := range s.states {
 		r.x[x] = r.held[k]
@@ -191,7 +193,8 @@ func (r *Run) clash() int {
 // its switching point too.
 func (r *Run) contradiction(exact bool) int {
 	s := r.sys
-	form, first, second := make([]float64, s.width), make([]float64, s.width), make([]float64, s.width)
+	work := r.scratch(3 * s.width)
+	form, first, second := work[:s.width], work[s.width:2*s.width], work[2*s.width:]
 	for k := range r.watch {
 		w := &r.watch[k]
 		if !w.isDiode {
@@ -242,9 +245,9 @@ func (r *Run) settled() {
 	}
 	n := r.sys.nx + 2
 	if len(r.moment) != n*n {
-		r.moment = make([]float64, n*n)
+		r.room.resize(&r.moment, n*n)
 	}
-	r.restart(restartSteps)
+	r.restart(false)
 	r.sys.solver.segment = -1
 	r.refresh()
 	r.look(r.x, r.tau)

@@ -234,31 +234,11 @@ func TestRandomCircuitsAgainstNgspice(t *testing.T) {
 func compare(t *testing.T, c *Circuit, n int) float64 {
 	const end = 2e-6
 	r := begin(t, c)
-	var measures []Measure
-	var probes []int
-	for node := 1; node < len(c.nodes); node++ {
-		measures = append(measures, Measure{fmt.Sprint("peak", node), node, 0})
-		probes = append(probes, r.Probe(node, 0))
-	}
+	measures, probes := everyNode(r)
 	to(t, r, end)
 	deck, err := c.Netlist(fmt.Sprint("random circuit ", n), end, end/30000, measures...)
 	if err != nil {
 		t.Fatal(err)
 	}
-	file := filepath.Join(t.TempDir(), "deck.cir")
-	if err := os.WriteFile(file, []byte(deck), 0o600); err != nil {
-		t.Fatal(err)
-	}
-	want := ngspice(t, file)
-	off, scale := 0.0, 0.0
-	for k, m := range measures {
-		v, _ := r.Peak(probes[k])
-		w, ok := want[m.Name]
-		if !ok {
-			t.Errorf("circuit %d: ngspice gave no %s", n, m.Name)
-			continue
-		}
-		off, scale = math.Max(off, math.Abs(v-w)), math.Max(scale, math.Abs(w))
-	}
-	return off / scale
+	return farthest(t, r, probes, measures, runDeck(t, deck))
 }

@@ -10,13 +10,13 @@ type watch struct {
 	branch    int // of a diode or a current probe
 	isDiode   bool
 	isCurrent bool
+	isSlope   bool
 	conducts  bool    // a diode's state
 	a, b      int     // of a voltage probe
 	now, then float64 // at the present moment, after the step tried
 	tol       float64 // how far a diode's margin may fall below zero
 	near      float64 // a margin above this needs no closer look
-	best, at  float64 // highest value and its time
-	low       float64
+	top, low  Point   // highest and lowest value with its time
 	trace     []Point
 }
 
@@ -37,18 +37,30 @@ func (r *Run) ProbeCurrent(name string) int {
 	return r.addProbe(watch{branch: k, isCurrent: true})
 }
 
+// ProbeSlope records the rate of v(a) - v(b) in volts per second from now on, exact like the voltage itself, so that
+// Peak and Lowest give the steepest rise and fall; -1 if a node does not exist. Where the voltage itself jumps (with a
+// source, or with a current that is forced through a resistance) the rate has no value; those on both sides count.
+func (r *Run) ProbeSlope(a, b int) int {
+	if !r.hasNodes(a, b) {
+		return -1
+	}
+	return r.addProbe(watch{a: a, b: b, isSlope: true})
+}
+
 func (r *Run) addProbe(w watch) int {
 	r.watch = append(r.watch, w)
 	k := len(r.watch) - 1
+	r.looked = append(r.looked, 0)
 	for _, s := range r.cache {
 		s.solver.forms = nil // made anew with the new probe
 	}
 	r.refresh()
 	p := &r.watch[k]
 	p.now = r.value(k, r.x, r.tau)
-	p.best, p.at, p.low = p.now, r.Time(), p.now
+	p.top = Point{r.Time(), p.now}
+	p.low = p.top
 	if r.opts.trace {
-		p.trace = append(make([]Point, 0, 1024), Point{r.Time(), p.now})
+		p.trace = append(make([]Point, 0, 1024), p.top)
 	}
 	return k - r.c.diodes
 }
@@ -61,8 +73,17 @@ func (r *Run) Peak(probe int) (value, at float64) {
 	if probe < 0 || probe >= r.probes() {
 		return math.NaN(), math.NaN()
 	}
-	w := &r.watch[r.c.diodes+probe]
-	return w.best, w.at
+	p := r.watch[r.c.diodes+probe].top
+	return p.V, p.T
+}
+
+// Lowest gives the lowest value a probe took since it was placed and when, as Peak gives the highest.
+func (r *Run) Lowest(probe int) (value, at float64) {
+	if probe < 0 || probe >= r.probes() {
+		return math.NaN(), math.NaN()
+	}
+	p := r.watch[r.c.diodes+probe].low
+	return p.V, p.T
 }
 
 // Trace gives the sampled waveform of a probe: every step and both sides of a jump; nil for an unknown handle. Steps
@@ -85,6 +106,7 @@ func (r *Run) refresh() {
 	if v.segment == r.seg.id {
 		return
 	}
+	r.knowOld, r.knowNew = false, false
 	for i := range n {
 		s.collapse(row(v.dx, n+2, i), row(s.rate, s.width, i), &r.seg)
 	}
@@ -106,11 +128,11 @@ func (r *Run) refresh() {
 func (r *Run) makeForms() {
 	s := r.sys
 	v, n := &s.solver, s.nx
-	v.forms = make([]float64, len(r.watch)*s.width)
-	v.watch = make([]float64, len(r.watch)*(n+2))
-	v.dx = make([]float64, n*(n+2))
-	v.work = make([]float64, n+2)
-	v.poly = make([]float64, (degree+1)*n)
+	v.forms = r.room.take(len(r.watch) * s.width)
+	v.watch = r.room.take(len(r.watch) * (n + 2))
+	v.dx = r.room.take(n * (n + 2))
+	v.work = r.room.take(n + 2)
+	v.poly = r.room.take((degree + 1) * n)
 	for k := range r.watch {
 		f := row(v.forms, s.width, k)
 		switch w := &r.watch[k]; {
@@ -118,6 +140,10 @@ func (r *Run) makeForms() {
 			r.margin(f, w.branch)
 		case w.isCurrent:
 			copy(f, s.i(w.branch))
+		case w.isSlope:
+			plain := make([]float64, s.width)
+			s.difference(plain, w.a, w.b)
+			s.derive(f, plain, 1)
 		default:
 			s.difference(f, w.a, w.b)
 		}
@@ -134,17 +160,22 @@ func (r *Run) value(k int, x []float64, tau float64) float64 {
 
 // look evaluates all watches for the states given.
 func (r *Run) look(x []float64, tau float64) {
+	n := r.sys.nx
+	v := r.looked[:len(r.watch)]
+	apply(v, r.sys.solver.watch, n+2, x)
 	for k := range r.watch {
-		r.watch[k].then = r.value(k, x, tau)
+		f := r.sys.line(k)
+		r.watch[k].then = v[k] + (f[n] + float64(f[n+1]*tau))
 	}
 }
 
 // rates computes the derivative of the states.
 func (s *system) rates(dst, x []float64, tau float64) {
 	n := s.nx
-	for i := range n {
+	apply(dst, s.solver.dx, n+2, x)
+	for i, d := range dst {
 		f := row(s.solver.dx, n+2, i)
-		dst[i] = dot(x, f) + (f[n] + float64(f[n+1]*tau))
+		dst[i] = d + (f[n] + float64(f[n+1]*tau))
 	}
 }
 
@@ -156,7 +187,6 @@ func (s *system) rateOf(k int, rates []float64) float64 {
 
 // record enters the step tried into scales, traces and peaks.
 func (r *Run) record(dt float64, l int, at float64) {
-	ready := false
 	t := r.seg.from + at
 	for k := range r.watch {
 		w := &r.watch[k]
@@ -168,16 +198,19 @@ func (r *Run) record(dt float64, l int, at float64) {
 		if k == r.stop.watch && w.then < r.stop.level {
 			r.stop.armed = true
 		}
-		if near := w.best - float64(0.02*(w.best-w.low)); w.now < near && w.then < near {
+		margin := float64(peakBy * (w.top.V - w.low.V))
+		high := w.now >= w.top.V-margin || w.then >= w.top.V-margin
+		deep := w.now <= w.low.V+margin || w.then <= w.low.V+margin
+		if !high && !deep {
 			continue
 		}
-		if !ready {
-			r.bothRates(dt)
-			ready = true
-		}
+		r.bothRates(dt)
 		da, db := r.sys.rateOf(k, r.rateOld), r.sys.rateOf(k, r.rateNew)
-		if da > 0 && db < 0 && -tangents(-w.now, -da, -w.then, -db, dt) > w.best {
-			r.summit(k, dt, l)
+		if high && da > 0 && db < 0 && -dip(-w.now, -da, -w.then, -db, dt) > w.top.V {
+			r.extreme(k, dt, l, 1)
+		}
+		if deep && da < 0 && db > 0 && dip(w.now, da, w.then, db, dt) < w.low.V {
+			r.extreme(k, dt, l, -1)
 		}
 	}
 }
@@ -194,19 +227,25 @@ func (r *Run) widen(w *watch) {
 
 // note enters one sample of a probe.
 func (r *Run) note(w *watch, t, v float64) {
-	if v > w.best {
-		w.best, w.at = v, t
-	}
-	if v < w.low {
-		w.low = v
-	}
+	w.reach(t, v)
 	if r.opts.trace {
 		w.trace = append(w.trace, Point{t, v})
 	}
 }
 
-// summit finds the top of a probe inside the step tried: halving by level, then on the polynomial.
-func (r *Run) summit(k int, dt float64, l int) {
+// reach widens the range a probe has covered.
+func (w *watch) reach(t, v float64) {
+	if v > w.top.V {
+		w.top = Point{t, v}
+	}
+	if v < w.low.V {
+		w.low = Point{t, v}
+	}
+}
+
+// extreme finds the top (sign 1) or bottom (-1) of a probe inside the step tried: halving by level, then on the
+// polynomial.
+func (r *Run) extreme(k int, dt float64, l int, sign float64) {
 	s := r.sys
 	levels := s.solver.levels
 	x, half, rates := r.spare[:s.nx], r.spare[s.nx:2*s.nx], r.spare[2*s.nx:]
@@ -216,7 +255,7 @@ func (r *Run) summit(k int, dt float64, l int) {
 		l++
 		s.step(half, x, &levels[l], &r.seg, tau)
 		s.rates(rates, half, tau+levels[l].h)
-		if s.rateOf(k, rates) > 0 {
+		if sign*s.rateOf(k, rates) > 0 {
 			copy(x, half)
 			tau += levels[l].h
 		}
@@ -225,10 +264,8 @@ func (r *Run) summit(k int, dt float64, l int) {
 	s.expand(x, tau)
 	p := s.polynomial(k, tau)
 	unit := s.solver.unit()
-	top := bisect(dt/unit, func(t float64) bool { return slopeAt(p, t) > 0 })
-	if v := horner(p, top); v > r.watch[k].best {
-		r.watch[k].best, r.watch[k].at = v, r.seg.from+tau+float64(top*unit)
-	}
+	turn := bisect(dt/unit, func(t float64) bool { return sign*slopeAt(p, t) > 0 })
+	r.watch[k].reach(r.seg.from+tau+float64(turn*unit), horner(p, turn))
 }
 
 // sample enters the values just after a jump or an event, and stops To if a jump crossed its level.

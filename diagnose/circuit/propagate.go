@@ -7,18 +7,39 @@ import (
 )
 
 const (
-	pointsPerRing = 40  // steps per period of the fastest ring that is not damped away at once
+	pointsPerRing = 40  // steps per period of the fastest ring that is not damped away at once, for a trace
+	pointsToFind  = 16  // the same when only peaks and events are wanted
 	ringDamping   = 0.5 // modes damped more than this do not shorten the step; restarts resolve them
+	dampingToFind = 0.8 // the same when only peaks and events are wanted, with steps that grow faster
 	dieAway       = 14  // time constants until a ring counts for nothing (1e-6 of its size)
 	dieAwayEnergy = 23  // the same when energies are kept (1e-10)
 	smallNorm     = 0.5 // rate × step below which the Taylor polynomial is used
 	degree        = 15  // of that polynomial: 0.5^16/16! is below the last digit
 	mostLevels    = 90  // halvings of the step
-	restartSteps  = 4   // steps at each length while the step grows after an event
+	restartSteps  = 4   // steps at each length while the step grows after an event, for a trace
 	kinkSteps     = 2   // the same after a mere corner of a waveform
 	energySteps   = 6   // the same after both when energies are kept
-	gaussPoints   = 5   // per step for energies; the error at 40 points a ring is below the last digit
+	gaussPoints   = 5   // per step for energies; the error at 16 points a ring is 1e-13
 )
+
+// follow gives the steps per period of a ring, and the damping above which it need not be followed.
+func (o *options) follow() (points, damping float64) {
+	if o.trace {
+		return pointsPerRing, ringDamping
+	}
+	return pointsToFind, dampingToFind
+}
+
+// pace gives the steps at each length while the step grows after an event, or after a mere corner of a waveform.
+func (o *options) pace(corner bool) int {
+	switch {
+	case o.energy: // the quadrature needs them shorter than the search for events
+		return energySteps
+	case o.trace && !corner:
+		return restartSteps
+	}
+	return kinkSteps
+}
 
 // gaussNode and gaussWeight are the Gauss-Legendre nodes and weights on [0, 1].
 var (
@@ -61,9 +82,9 @@ type solver struct {
 }
 
 // prepare chooses the step for this pattern and fills the levels; fresh if the levels are new. Span is the time to
-// be covered.
-func (s *system) prepare(span, longest float64, energy bool) (fresh bool, err error) {
-	v := &s.solver
+// be covered, piece the length of the present straight piece of the waveforms.
+func (s *system) prepare(span, piece float64, o *options) (fresh bool, err error) {
+	v, longest := &s.solver, o.longest
 	if v.ready && (span <= 256*v.levels[0].h || v.levels[0].h > longest/4) {
 		return false, nil
 	}
@@ -71,7 +92,11 @@ func (s *system) prepare(span, longest float64, energy bool) (fresh bool, err er
 	if err != nil {
 		return false, err
 	}
-	h := longestStep(span/16, coarse(math.Min(v.survey(rates), longest)), longest)
+	ring := coarse(math.Min(v.survey(rates, o), longest))
+	if !o.trace && piece < span/4 && !math.IsInf(ring, 1) {
+		ring = fitting(ring, piece)
+	}
+	h := longestStep(span/16, ring, longest)
 	if !(h > 0) || math.IsInf(s.norm*h, 0) {
 		return false, fmt.Errorf("circuit: no usable time step (%g s at a rate of %g per second)", h, s.norm)
 	}
@@ -82,12 +107,12 @@ func (s *system) prepare(span, longest float64, energy bool) (fresh bool, err er
 		}
 	}
 	v.levels, v.filled = s.chain(h, count), count
-	if energy {
+	if o.energy {
 		for g, c := range gaussNode {
 			v.gauss[g] = s.chain(c*h, count)
 		}
 	}
-	v.holdBack(energy)
+	v.holdBack(o.energy)
 	for v.grade < count && v.levels[v.grade].h*v.rate > smallNorm/2 {
 		v.grade++
 	}
@@ -97,13 +122,14 @@ func (s *system) prepare(span, longest float64, energy bool) (fresh bool, err er
 
 // survey notes the fastest rate and the rings, and gives the step that follows the fastest ring; a decay needs no
 // bound, since the steps grow with the time after each event.
-func (v *solver) survey(rates []complex128) (step float64) {
+func (v *solver) survey(rates []complex128, o *options) (step float64) {
+	points, damping := o.follow()
 	step, v.rate, v.rings = math.Inf(1), 0, v.rings[:0]
 	for _, l := range rates {
 		size := cmplx.Abs(l)
 		v.rate = math.Max(v.rate, size)
-		if imag(l) > 0 && -real(l) < ringDamping*size {
-			r := ring{step: 2 * math.Pi / imag(l) / pointsPerRing, quiet: 1 / math.Max(-real(l), 0)}
+		if imag(l) > 0 && -real(l) < damping*size {
+			r := ring{step: 2 * math.Pi / imag(l) / points, quiet: 1 / math.Max(-real(l), 0)}
 			v.rings = append(v.rings, r)
 			step = math.Min(step, r.step)
 		}
@@ -140,6 +166,18 @@ func longestStep(want, ring, longest float64) float64 {
 	return ring
 }
 
+// fitting gives the longest step up to the one wanted that halvings of the piece lead to: waveforms tend to have many
+// pieces of one length, and such steps end where they end.
+func fitting(want, piece float64) float64 {
+	for piece > want {
+		piece /= 2
+	}
+	if piece < want/2 {
+		return want
+	}
+	return piece
+}
+
 // coarse rounds a step down to six binary digits, so that the last digit of an eigenvalue cannot move it.
 func coarse(h float64) float64 {
 	if math.IsInf(h, 0) {
@@ -167,14 +205,17 @@ func (s *system) balancedNorm() float64 {
 // chain gives the levels h, h/2 ... h/2^count, the last by Taylor series; fill makes the others.
 func (s *system) chain(h float64, count int) []level {
 	list := make([]level, count+1)
-	room := make([]float64, (count+1)*s.nx*(s.width+2))
 	for k := range list {
-		own := room[k*s.nx*(s.width+2) : (k+1)*s.nx*(s.width+2)]
-		d, rest := own[:s.nx*s.width], own[s.nx*s.width:]
-		list[k] = level{h: math.Ldexp(h, -k), d: d, c0: rest[:s.nx], c1: rest[s.nx:], segment: -1}
+		list[k] = level{h: math.Ldexp(h, -k), segment: -1}
 	}
+	s.furnish(&list[count])
 	s.taylor(&list[count])
 	return list
+}
+
+// furnish gives a level its space.
+func (s *system) furnish(l *level) {
+	l.d, l.c0, l.c1 = s.room.take(s.nx*s.width), s.room.take(s.nx), s.room.take(s.nx)
 }
 
 // fill makes the levels down to l by doubling, those that were not needed before.
@@ -194,8 +235,8 @@ func (s *system) fill(l int) {
 // φ1 = ∫exp(A·t)dt and φ2 = ∫φ1 dt over the step, d = [A·φ1 | φ1·B | φ1·S + φ2·B | φ1·b].
 func (s *system) taylor(l *level) {
 	n := s.nx
-	a, p, q := make([]float64, n*n), make([]float64, n*n), make([]float64, n*n)
-	phi1, phi2 := make([]float64, n*n), make([]float64, n*n)
+	a, p, q := s.room.take(n*n), s.room.take(n*n), s.room.take(n*n)
+	phi1, phi2 := s.room.take(n*n), s.room.take(n*n)
 	for i := range n {
 		copy(row(a, n, i), row(s.rate, s.width, i)[:n])
 		p[i*n+i] = l.h
@@ -220,14 +261,13 @@ func (s *system) taylor(l *level) {
 // double fills a level from the one of half its length: d2 = 2d + d·d, where the sources have moved on by slope·h.
 func (s *system) double(long, short *level) {
 	n := s.nx
+	s.furnish(long)
 	for i := range n {
 		dst, src := row(long.d, s.width, i), row(short.d, s.width, i)
 		for j, v := range src {
 			dst[j] = 2 * v
 		}
-		for k := range n {
-			addTo(dst, row(short.d, s.width, k), src[k])
-		}
+		addRows(dst, src[:n], short.d, s.width)
 		addTo(dst[n+s.nu:n+2*s.nu], src[n:n+s.nu], short.h)
 	}
 }
@@ -263,8 +303,9 @@ func (s *system) step(dst, x []float64, l *level, g *segment, tau float64) {
 	if l.segment != g.id {
 		s.collapseLevel(l, g)
 	}
-	for i := range s.nx {
-		dst[i] = x[i] + (dot(x, row(l.d, s.width, i)) + (l.c0[i] + float64(l.c1[i]*tau)))
+	apply(dst[:s.nx], l.d, s.width, x)
+	for i, d := range dst[:s.nx] {
+		dst[i] = x[i] + (d + (l.c0[i] + float64(l.c1[i]*tau)))
 	}
 }
 
@@ -277,10 +318,10 @@ func (s *system) expand(x []float64, tau float64) {
 	copy(v.poly[:n], x)
 	unit := v.unit()
 	for k := 1; k <= degree; k++ {
-		from, to := row(v.poly, n, k-1), row(v.poly, n, k)
-		for i := range n {
+		to := row(v.poly, n, k)
+		apply(to, v.dx, n+2, row(v.poly, n, k-1))
+		for i, d := range to {
 			f := row(v.dx, n+2, i)
-			d := dot(from, f)
 			if k == 1 {
 				d += f[n] + float64(f[n+1]*tau)
 			} else if k == 2 {

@@ -100,7 +100,7 @@ func checkBalance(t *rapid.T, r *Run) {
 		e := r.Energy(b.name)
 		switch b.kind {
 		case capacitor, inductor:
-			if stored := r.Stored(b.name) - 0.5*b.value*b.start*b.start; math.Abs(e-stored) > 1e-7*scale {
+			if stored := r.Stored(b.name) - 0.5*b.value*b.start*b.start; math.Abs(e-stored) > 1e-9*scale {
 				t.Fatalf("%s took %g J and holds %g J (largest energy %g J)", b.name, e, stored, scale)
 			}
 		case resistor, diode:

@@ -1,7 +1,6 @@
 package circuit
 
 import (
-	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -16,10 +15,12 @@ type options struct {
 	limit         int
 }
 
-// WithoutEnergy leaves the energies out, which makes a run about twice as fast; Energy then gives NaN.
+// WithoutEnergy leaves the integrals out, which makes a run about twice as fast; Energy, Charge and Square then give NaN.
 func WithoutEnergy() Option { return func(o *options) { o.energy = false } }
 
-// WithoutTrace keeps no samples; Peak still works, Trace gives nil.
+// WithoutTrace keeps no samples, and takes longer steps (16 a ring in place of 40); Peak, Lowest and events are located
+// between the steps as ever, Trace gives nil. A ripple of less than a hundred-thousandth of the largest voltage may pass
+// unseen.
 func WithoutTrace() Option { return func(o *options) { o.trace = false } }
 
 // WithStep sets the longest time between two samples (seconds, > 0); the exactness of the result does not depend on it.
@@ -33,25 +34,32 @@ type Run struct {
 	c       *Circuit
 	opts    options
 	waves   []Waveform
+	turns   []turn // what Retarget did so far
 	cache   map[pattern]*system
+	room    room
 	on      uint64 // conducting diodes
 	sys     *system
 	held    []float64 // per branch: capacitor voltage, inductor current at the last event
 	x, next []float64 // states now and after the step tried
-	rateOld []float64 // scratch for derivatives at both ends of a step
+	rateOld []float64 // derivatives at both ends of a step, and whether they are known
 	rateNew []float64
+	knowOld bool
+	knowNew bool
 	spare   []float64
 	seg     segment
 	tau     float64 // time since the start of the segment
 	volts   float64 // largest voltage and current seen, the scale of tolerances
 	amps    float64
-	rung    int // level of the next step, and how many more before it may grow
+	goal    float64 // about when the crossing ahead comes, as tau counts; 0 if none is known
+	sight   float64 // how near to the goal the estimate holds
+	rung    int     // level of the next step, and how many more before it may grow
 	left    int
 	per     int     // steps at each length while growing
 	calm    float64 // time since the last restart
 	watch   []watch
+	looked  []float64 // scratch, a value per watch
 	stop    stop
-	energy  []float64
+	totals  []total   // per branch
 	moment  []float64 // ∫ y·yᵀ over the present segment and pattern, y = [states | 1 | τ]
 	y       []float64 // scratch
 	steps   int
@@ -80,7 +88,7 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 		return nil, fmt.Errorf("circuit: step %g s must be above zero", r.opts.longest)
 	}
 	r.held = make([]float64, len(c.branches))
-	r.energy = make([]float64, len(c.branches))
+	r.totals = make([]total, len(c.branches))
 	r.waves = make([]Waveform, c.sources)
 	for k, b := range r.c.branches {
 		r.held[k] = b.start
@@ -89,6 +97,7 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 		}
 		if b.kind == diode {
 			r.watch = append(r.watch, watch{branch: k, isDiode: true})
+			r.looked = append(r.looked, 0)
 		}
 	}
 	r.seg = segment{value: make([]float64, c.sources), slope: make([]float64, c.sources)}
@@ -134,22 +143,6 @@ func (r *Run) firstScale() {
 // Time is the present moment in seconds.
 func (r *Run) Time() float64 { return r.seg.from + r.tau }
 
-// Retarget replaces the waveform of a source from now on (times stay absolute). A name that is no source, or an
-// unusable waveform, is reported by the next To.
-func (r *Run) Retarget(source string, w Waveform) {
-	k, ok := r.c.byName[source]
-	if !ok || (r.c.branches[k].kind != voltageSource && r.c.branches[k].kind != currentSource) {
-		r.err = errors.Join(r.err, fmt.Errorf("circuit: Retarget: %q is not a source", source))
-		return
-	}
-	if err := w.Check(); err != nil {
-		r.err = errors.Join(r.err, fmt.Errorf("circuit: Retarget of %q: %w", source, err))
-		return
-	}
-	r.waves[r.c.branches[k].index] = w
-	r.fail(r.enterSegment(r.Time()))
-}
-
 // fail keeps the first error; a run that failed stays failed.
 func (r *Run) fail(err error) {
 	if r.err == nil && err != nil {
@@ -187,7 +180,7 @@ func (r *Run) advance(t float64) (stopped bool, err error) {
 		return false, fmt.Errorf("circuit: %d steps taken and only %g s reached; ask for a shorter time or take out the fastest ring", r.opts.limit, r.Time())
 	}
 	end := math.Min(t, r.seg.till)
-	fresh, err := r.sys.prepare(t-r.Time(), r.opts.longest, r.opts.energy)
+	fresh, err := r.sys.prepare(t-r.Time(), r.seg.till-r.seg.from, &r.opts)
 	if err != nil {
 		return false, err
 	}
@@ -204,6 +197,9 @@ func (r *Run) advance(t float64) (stopped bool, err error) {
 	r.try(dt, l)
 	if r.trouble(dt) {
 		if l >= 0 && l < len(r.sys.solver.levels)-1 {
+			if !r.opts.trace { // the samples of a trace are to be even
+				r.aim(dt)
+			}
 			r.rung, r.left = l+1, r.per
 			return false, nil
 		}
@@ -235,6 +231,13 @@ func (r *Run) choose(room float64) (dt float64, l int) {
 		r.rung = r.sys.solver.grade
 	}
 	l = r.rung
+	if left := r.goal - r.tau; left > r.sight {
+		room = math.Min(room, left)
+	} else if r.goal > 0 { // near enough to look again
+		for r.goal = 0; l < len(levels)-1 && levels[l].h > 2*r.sight; l++ {
+		}
+		r.rung, r.left = l, r.per
+	}
 	for l < len(levels) && levels[l].h > room*(1+1e-12) {
 		l++
 	}
@@ -253,6 +256,7 @@ func (r *Run) try(dt float64, l int) {
 		r.sys.expand(r.x, r.tau)
 		r.sys.along(r.next, dt)
 	}
+	r.knowNew = false
 	r.look(r.next, r.tau+dt)
 }
 
@@ -263,6 +267,8 @@ func (r *Run) accept(dt float64, l int, at float64) error {
 	}
 	r.record(dt, l, at)
 	r.x, r.next = r.next, r.x
+	r.rateOld, r.rateNew = r.rateNew, r.rateOld
+	r.knowOld, r.knowNew = r.knowNew && at == r.tau+dt, false
 	r.tau = at
 	for k := range r.watch {
 		r.watch[k].now = r.watch[k].then
@@ -291,54 +297,59 @@ func (r *Run) grow(dt float64) {
 	}
 }
 
-// restart makes the steps short again after something changed, so that fast modes are followed.
-func (r *Run) restart(per int) {
-	if r.opts.energy {
-		per = energySteps // the quadrature needs them shorter than the search for events
-	}
-	r.rung, r.left, r.per, r.calm = mostLevels+1, per, per, 0
+// restart makes the steps short again after an event or a corner of a waveform, so that fast modes are followed.
+func (r *Run) restart(corner bool) {
+	per := r.opts.pace(corner)
+	r.rung, r.left, r.per, r.calm, r.goal = mostLevels+1, per, per, 0, 0
 }
 
-// locateSegment finds the straight stretch of all sources that begins at t and tells whether a source jumps there.
-func (r *Run) locateSegment(t float64) (jump bool) {
+// jumpsAt tells whether a source jumps at t, the end of the present segment or a moment within it.
+func (r *Run) jumpsAt(t float64) bool {
 	g := &r.seg
-	run := t - g.from
+	for k, w := range r.waves {
+		if jumps(w.At(t), g.value[k]+float64(g.slope[k]*(t-g.from))) {
+			return true
+		}
+	}
+	return false
+}
+
+// locateSegment finds the straight stretch of all sources that begins at t.
+func (r *Run) locateSegment(t float64) {
+	g := &r.seg
 	g.id++
 	g.from, g.till = t, math.Inf(1)
 	for k, w := range r.waves {
-		before := g.value[k] + float64(g.slope[k]*run)
 		value, slope, until := w.piece(t)
-		if math.Abs(value-before) > 1e-9*(math.Abs(value)+math.Abs(before)) {
-			jump = true
-		}
 		g.value[k], g.slope[k] = value, slope
 		g.till = math.Min(g.till, until)
 	}
 	r.tau = 0
-	return jump
 }
 
 // enterSegment goes over a corner: diodes may switch if a source jumps or if a capacitor current follows its slope.
 func (r *Run) enterSegment(t float64) error {
 	r.flush()
-	r.keep()
-	if r.locateSegment(t) {
-		return r.settle(-1)
+	jump := r.jumpsAt(t)
+	if jump {
+		r.keep()
 	}
-	if !r.sys.solver.ready {
-		return nil
+	r.locateSegment(t)
+	if jump {
+		return r.settle(-1)
 	}
 	r.refresh()
 	r.look(r.x, 0)
 	for k := range r.watch {
 		w := &r.watch[k]
 		if w.isDiode && w.then < -w.tol {
+			r.keep()
 			return r.settle(-1)
 		}
 		w.now = w.then
 	}
 	r.sample()
-	r.restart(kinkSteps)
+	r.restart(true)
 	return nil
 }
 
@@ -350,48 +361,4 @@ func (r *Run) form(f []float64) float64 {
 		v += float64(f[s.value(u)]*(r.seg.value[u]+float64(r.seg.slope[u]*r.tau))) + float64(f[s.slope(u)]*r.seg.slope[u])
 	}
 	return v
-}
-
-// BranchCurrent gives the present current of a named element, from its first to its second node; NaN if there is none.
-func (r *Run) BranchCurrent(name string) float64 { return r.branchForm(name, r.sys.i) }
-
-// BranchVoltage gives the present voltage of a named element, first node minus second; NaN if there is none.
-func (r *Run) BranchVoltage(name string) float64 { return r.branchForm(name, r.sys.v) }
-
-func (r *Run) branchForm(name string, form func(int) []float64) float64 {
-	k, ok := r.c.byName[name]
-	if !ok {
-		return math.NaN()
-	}
-	return r.form(form(k))
-}
-
-// Voltage gives the present v(a) - v(b); NaN if a node does not exist.
-func (r *Run) Voltage(a, b int) float64 {
-	if !r.hasNodes(a, b) {
-		return math.NaN()
-	}
-	return r.form(row(r.sys.node, r.sys.width, a)) - r.form(row(r.sys.node, r.sys.width, b))
-}
-
-// Slope gives the present rate of v(a) - v(b) in volts per second, exact; NaN if a node does not exist.
-func (r *Run) Slope(a, b int) float64 {
-	if !r.hasNodes(a, b) {
-		return math.NaN()
-	}
-	s := r.sys
-	f, d := make([]float64, s.width), make([]float64, s.width)
-	s.difference(f, a, b)
-	s.derive(d, f, 1)
-	return r.form(d)
-}
-
-func (r *Run) hasNodes(a, b int) bool {
-	return a >= 0 && b >= 0 && a < len(r.c.nodes) && b < len(r.c.nodes)
-}
-
-// Conducts tells whether a named diode conducts at present.
-func (r *Run) Conducts(name string) bool {
-	k, ok := r.c.byName[name]
-	return ok && r.c.branches[k].kind == diode && r.on>>uint(r.c.branches[k].index)&1 == 1
 }

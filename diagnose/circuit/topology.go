@@ -2,7 +2,6 @@ package circuit
 
 import (
 	"fmt"
-	"sort"
 	"strings"
 )
 
@@ -43,6 +42,9 @@ type tree struct {
 	cut    [][]term // of a tree branch: i(tree branch) = -Σ sign·i(link)
 	up     []int    // per node: tree branch towards node 0, -1 at the root
 	order  []int    // nodes from the root outwards
+	list   []int    // scratch
+	rise   []term
+	fall   []term
 }
 
 // newTree classes the branches for a pattern of conducting diodes. With leaky, every blocking diode leaks.
@@ -160,15 +162,19 @@ func (t *tree) growFixed(part parts) error {
 
 // members lists the branches of a class, resistors from low to high.
 func (t *tree) members(want class) []int {
-	var list []int
+	list := t.list[:0]
 	for i, k := range t.class {
-		if k == want {
-			list = append(list, i)
+		if k != want {
+			continue
 		}
+		at := len(list)
+		list = append(list, i)
+		for ; want == lossy && at > 0 && t.ohm[list[at-1]] > t.ohm[i]; at-- {
+			list[at] = list[at-1]
+		}
+		list[at] = i
 	}
-	if want == lossy {
-		sort.SliceStable(list, func(a, b int) bool { return t.ohm[list[a]] < t.ohm[list[b]] })
-	}
+	t.list = list
 	return list
 }
 
@@ -225,32 +231,43 @@ func (t *tree) root() {
 
 // links finds the loop every link closes in the tree, and from the loops the cuts.
 func (t *tree) links() {
-	t.loop = make([][]term, len(t.class))
-	t.cut = make([][]term, len(t.class))
+	t.loop, t.cut = make([][]term, len(t.class)), make([][]term, len(t.class))
+	all := make([]term, 0, 4*len(t.class))
+	size := make([]int, len(t.class)) // of the cuts
 	for i := range t.c.branches {
 		if t.inTree[i] || t.class[i] == open {
 			continue
 		}
-		t.loop[i] = t.path(t.c.branches[i].a, t.c.branches[i].b)
+		from := len(all)
+		all = t.path(all, t.c.branches[i].a, t.c.branches[i].b)
+		t.loop[i] = all[from:len(all):len(all)]
+		for _, m := range t.loop[i] {
+			size[m.branch]++
+		}
+	}
+	space := make([]term, len(all))
+	for k, n := range size {
+		t.cut[k], space = space[:0:n], space[n:]
+	}
+	for i := range t.c.branches {
 		for _, m := range t.loop[i] {
 			t.cut[m.branch] = append(t.cut[m.branch], term{i, m.sign})
 		}
 	}
 }
 
-// path lists the tree branches whose voltages add up to v(a)-v(b).
-func (t *tree) path(a, b int) []term {
-	var rise, fall []term
-	rise, fall = t.climb(a, 1), t.climb(b, -1)
+// path appends the tree branches whose voltages add up to v(a)-v(b).
+func (t *tree) path(list []term, a, b int) []term {
+	t.rise, t.fall = t.climb(t.rise[:0], a, 1), t.climb(t.fall[:0], b, -1)
+	rise, fall := t.rise, t.fall
 	for len(rise) > 0 && len(fall) > 0 && rise[len(rise)-1].branch == fall[len(fall)-1].branch {
 		rise, fall = rise[:len(rise)-1], fall[:len(fall)-1]
 	}
-	return append(rise, fall...)
+	return append(append(list, rise...), fall...)
 }
 
-// climb lists the branches from node n to the root, signed so that they add up to sign·v(n).
-func (t *tree) climb(n int, sign float64) []term {
-	var list []term
+// climb appends the branches from node n to the root, signed so that they add up to sign·v(n).
+func (t *tree) climb(list []term, n int, sign float64) []term {
 	for t.up[n] >= 0 {
 		b := &t.c.branches[t.up[n]]
 		s := sign

@@ -62,3 +62,45 @@ func (w Waveform) piece(t float64) (value, slope, until float64) {
 	slope = (q.V - p.V) / (q.T - p.T)
 	return p.V + float64(slope*(t-p.T)), slope, q.T
 }
+
+// cut gives the part of a waveform from one time to another, with the values at both ends: after a jump at the first,
+// before a jump at the last. An infinite end is left as it is.
+func (w Waveform) cut(from, till float64) Waveform {
+	var part Waveform
+	if !math.IsInf(from, 0) {
+		part = append(part, Point{from, w.At(from)})
+	}
+	for _, p := range w {
+		if p.T > from && p.T < till {
+			part = append(part, p)
+		}
+	}
+	if !math.IsInf(till, 0) {
+		part = append(part, Point{till, w.before(till)})
+	}
+	return part
+}
+
+// join puts a part behind another one that ends where it begins; without a jump between them that point is kept once.
+func (w Waveform) join(next Waveform) Waveform {
+	if n := len(w); n > 0 && w[n-1].T == next[0].T && !jumps(w[n-1].V, next[0].V) {
+		w = w[:n-1]
+	}
+	return append(w, next...)
+}
+
+// jumps tells whether two values are more than rounding apart.
+func jumps(a, b float64) bool { return math.Abs(a-b) > 1e-9*(math.Abs(a)+math.Abs(b)) }
+
+// before gives the value just before t.
+func (w Waveform) before(t float64) float64 {
+	i := sort.Search(len(w), func(i int) bool { return w[i].T >= t })
+	switch {
+	case i == 0:
+		return w[0].V
+	case i == len(w):
+		return w[i-1].V
+	}
+	p, q := w[i-1], w[i]
+	return p.V + float64((q.V-p.V)/(q.T-p.T)*(t-p.T))
+}
