@@ -110,6 +110,7 @@ func switchKeys(at string) []Key {
 		measuredAt(q("turn_on_slope", quantity.AmperePerSecond, 1e3, 1e12, "current slope at closing").used("edge"),
 			"current", "gate_resistance"),
 		[]Key{
+			q("closing_slope", quantity.VoltPerSecond, 1e6, 1e12, "voltage slope at closing").used("edge"),
 			plain(at+".avalanche", KindMap, "rated avalanche"),
 			q("avalanche.energy", quantity.Joule, 1e-9, 1e3, "rated avalanche energy, one pulse").used("edge"),
 			q("avalanche.current", quantity.Ampere, 1e-3, 10e3, "rated avalanche current").used("edge"),

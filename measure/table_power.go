@@ -49,6 +49,8 @@ func loopKeys() []Key {
 		amount("board.loop.link", quantity.Henry, 0, 1e-3, "the share common to all legs; silent: all of it").used("edge"),
 		amount("board.loop.leg", quantity.Henry, 0, 1e-3, "the share of one leg").used("edge"),
 		amount("board.loop.resistance", quantity.Ohm, 0, 100, "its resistance").used("edge"),
+		ratio("board.loop.damping_ratio", 0, 2, "damping ratio of its ring beyond that resistance").used("edge").
+			typical("", "0.05 (0.02 to 0.1)", judged),
 	}
 }
 
