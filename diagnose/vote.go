@@ -202,7 +202,31 @@ func (v *view) computedVote(t *knowledge.Test, computed map[string]stress.Span) 
 	}
 	f := Finding{Test: t, Shown: computedText(c, t.Unit), Source: "computed", Assumed: c.Assumed, Observation: -1}
 	vt, why := v.voteFor(f, t, measure.Observation{}, likely, 0)
+	if c.Guessed {
+		vt.soften(guessLimit)
+	}
 	return vt, why == ""
+}
+
+// guessLimit is the most that a computed figure may count for when it rests on assumed values alone: as a ratio of
+// likelihoods, 2.9 dB (judgement).
+const guessLimit = 1.95
+
+// soften lifts the likelihoods of a vote so that no two differ by more than a ratio.
+func (vt *vote) soften(limit float64) {
+	all := []*float64{&vt.present, &vt.absent}
+	for _, list := range [][]float64{vt.byRow, vt.named} {
+		for k := range list {
+			all = append(all, &list[k])
+		}
+	}
+	top := 0.0
+	for _, x := range all {
+		top = max(top, *x)
+	}
+	for _, x := range all {
+		*x = max(*x, top/limit)
+	}
 }
 
 func computedText(c stress.Span, u quantity.Unit) string {

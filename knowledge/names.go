@@ -17,6 +17,10 @@ type Figure struct {
 func Computed() []Figure {
 	return []Figure{
 		{"turn_off.peak_over_rated", quantity.Ratio, "highest voltage at the opening edge as a share of the switch's rating"},
+		{"turn_on.peak_over_rated", quantity.Ratio, "highest voltage while the opposite switch of the leg closes, as a share of the rating"},
+		{"turn_off.energy_over_rated", quantity.Ratio, "avalanche energy of an opening on the lowest device as a share of its rated energy"},
+		{"edge.slope", quantity.VoltPerSecond, "steepest voltage slope of the opening and closing edge"},
+		{"clamp.voltage_over_rated", quantity.Ratio, "voltage of a clamp's capacitor after an opening as a share of the switch's rating"},
 	}
 }
 

@@ -29,7 +29,7 @@ func FigureSVG(w io.Writer, m *stress.Margin) error {
 	if m == nil {
 		return errNoEdge
 	}
-	svg, err := edgeSVG(m)
+	svg, err := decidingFigure(m).svg(m)
 	if err != nil {
 		return err
 	}
@@ -52,52 +52,96 @@ var (
 	grey   = color.NRGBA{0xdd, 0xdd, 0xdd, 0xff}
 )
 
-// drawnEdges are the edges of a margin that can be drawn.
-func drawnEdges(m *stress.Margin) []drawnEdge {
-	var out []drawnEdge
-	if m.AsFound != nil && m.AsFound.Highest != nil && finite(m.AsFound.Highest.Waveform) {
-		out = append(out, drawnEdge{"as found", m.AsFound.Highest, orange, []vg.Length{6, 3}})
+// edgeFigure is one drawing: an edge before and after.
+type edgeFigure struct {
+	id    string // of its words in a page
+	title string
+	when  string // the conditions
+	edges []drawnEdge
+}
+
+// decidingFigure draws the edge that is highest at the highest bus and worst current, of each board.
+func decidingFigure(m *stress.Margin) edgeFigure {
+	return edgeFigure{"edge", "Predicted edge with the highest peak", "at the highest bus and worst current",
+		drawable(m, func(f *stress.Figures) *stress.Edge { return f.Highest })}
+}
+
+// drawnFigures are all figures of a margin: the edge that decides and, where the two switches of a leg see each other's
+// edges, the opening and the closing.
+func drawnFigures(m *stress.Margin) []edgeFigure {
+	out := []edgeFigure{decidingFigure(m)}
+	boards := boardsOf(nil, m)
+	if place := placeOfEdge(turnOn, boards); place == "" || place == atDiode {
+		return out
 	}
-	if m.Rebuild != nil && m.Rebuild.Highest != nil && finite(m.Rebuild.Highest.Waveform) {
-		out = append(out, drawnEdge{"rebuild", m.Rebuild.Highest, blue, nil})
+	for _, name := range edgeNames(boards) {
+		out = append(out, edgeFigure{"edge-" + name, "Predicted edge: " + edgeWords(name, ""), "at nominal bus and running current",
+			drawable(m, func(f *stress.Figures) *stress.Edge { return edgeOfBoard(f, name) })})
 	}
 	return out
 }
 
-// edgeDescription says in words what the figure shows.
-func edgeDescription(m *stress.Margin) string {
+// drawable are the edges of the boards that can be drawn.
+func drawable(m *stress.Margin, pick func(f *stress.Figures) *stress.Edge) []drawnEdge {
+	var out []drawnEdge
+	for _, x := range []struct {
+		f     *stress.Figures
+		drawn drawnEdge
+	}{{m.AsFound, drawnEdge{"as found", nil, orange, []vg.Length{6, 3}}}, {m.Rebuild, drawnEdge{"rebuild", nil, blue, nil}}} {
+		if x.f == nil {
+			continue
+		}
+		if e := pick(x.f); e != nil && finite(e.Waveform) {
+			x.drawn.edge = e
+			out = append(out, x.drawn)
+		}
+	}
+	return out
+}
+
+// words says what a figure shows.
+func (g edgeFigure) words(m *stress.Margin) string {
 	var parts []string
-	for _, x := range drawnEdges(m) {
+	for _, x := range g.edges {
 		style := "solid line"
 		if x.dashes != nil {
 			style = "dashed line"
 		}
-		parts = append(parts, fmt.Sprintf("%s (%s), peak %s", x.name, style, volts(x.edge.Peak)))
+		parts = append(parts, fmt.Sprintf("%s (%s), %s, peak %s", x.name, style, edgeAndShape(x.edge), volts(x.edge.Peak)))
 	}
-	return "Voltage at the chip over time while the switch opens at the highest bus and worst current, gate-limited edge: " + strings.Join(parts, "; ") +
+	return g.title + before(g.edges) + ". Voltage at the chip over time, " + g.when + ": " + strings.Join(parts, "; ") +
 		". Level lines: the rating " + volts(m.Rated) + " (solid) and 80 % of it, " + volts(m.Allowed) + " (dotted)."
+}
+
+// edgeAndShape is an edge in full with its shape, where that says more than the edge does.
+func edgeAndShape(e *stress.Edge) string {
+	text := edgeWords(e.Name, e.Position)
+	if e.Shape == cutShape || e.Shape == gateShape {
+		text += ", " + e.Shape
+	}
+	return text
 }
 
 const (
 	figureWidth  = 17 * vg.Centimeter
-	figureHeight = 9 * vg.Centimeter
-	mostPoints   = 1200 // of a drawn edge
+	figureHeight = 10 * vg.Centimeter
+	legendHeight = 1.9 * vg.Centimeter // above the axes, where no edge crosses it
+	mostPoints   = 1200                // of a drawn edge
 )
 
-// edgeSVG draws the gate-limited edges at highest bus and worst current against the rating.
-func edgeSVG(m *stress.Margin) (string, error) {
-	edges := drawnEdges(m)
-	if len(edges) == 0 || !(m.Rated > 0) || math.IsInf(m.Rated, 0) {
+// svg draws the edges against the rating.
+func (g edgeFigure) svg(m *stress.Margin) (string, error) {
+	if len(g.edges) == 0 || !(m.Rated > 0) || math.IsInf(m.Rated, 0) {
 		return "", errNoEdge
 	}
 	p := plot.New()
 	p.X.Label.Text, p.Y.Label.Text = "time, ns", "voltage at the chip, V"
-	p.X.Min, p.X.Max, p.Y.Min, p.Y.Max = 0, 1e9*shownSpan(edges), 0, 1.08*m.Rated
+	p.X.Min, p.X.Max, p.Y.Min, p.Y.Max = 0, 1e9*shownSpan(g.edges), 0, 1.08*m.Rated
 	setFonts(p)
 	grid := plotter.NewGrid()
 	grid.Vertical.Color, grid.Horizontal.Color = grey, grey
 	p.Add(grid)
-	for _, x := range edges {
+	for _, x := range g.edges {
 		line, err := plotter.NewLine(curve(x.edge.Waveform, p.X.Max))
 		if err != nil {
 			return "", fmt.Errorf("the edge %s cannot be drawn: %w", x.name, err)
@@ -105,20 +149,40 @@ func edgeSVG(m *stress.Margin) (string, error) {
 		line.Color, line.Dashes, line.Width = x.color, x.dashes, 1.5
 		p.Y.Max = max(p.Y.Max, 1.05*x.edge.Peak)
 		p.Add(line)
-		p.Legend.Add(fmt.Sprintf("%s, peak %s", x.name, volts(x.edge.Peak)), line)
+		p.Legend.Add(fmt.Sprintf("%s: %s, peak %s", x.name, edgeShort(x.edge.Name), volts(x.edge.Peak)), line)
 	}
 	addLevels(p, m)
-	return render(p, edgeDescription(m)), nil
+	return render(p, g.id, g.title+before(g.edges), g.words(m)), nil
 }
 
-// shownSpan is how long the edges are drawn, in seconds: as far as all of them go, but past every peak.
+// before says which boards are drawn.
+func before(edges []drawnEdge) string {
+	switch len(edges) {
+	case 0:
+		return ""
+	case 1:
+		return ", " + edges[0].name
+	}
+	return ", before and after the rebuild"
+}
+
+// ringsDrawn are the turns of an edge's ring that are drawn after its peak.
+const ringsDrawn = 8
+
+// shownSpan is how long the edges are drawn, in seconds: past every peak and its ring, but no further than all of them
+// go unless a peak lies there.
 func shownSpan(edges []drawnEdge) float64 {
-	span, peak := math.Inf(1), 0.0
+	span, peak, rung := math.Inf(1), 0.0, 0.0
 	for _, x := range edges {
 		span = math.Min(span, x.edge.Waveform[len(x.edge.Waveform)-1].T)
 		peak = math.Max(peak, x.edge.PeakTime)
+		after := 3 * x.edge.PeakTime
+		if x.edge.Ring > 0 {
+			after = ringsDrawn / x.edge.Ring
+		}
+		rung = math.Max(rung, x.edge.PeakTime+after)
 	}
-	return math.Max(span, 1.5*peak)
+	return math.Max(math.Min(span, rung), 1.5*peak)
 }
 
 func setFonts(p *plot.Plot) {
@@ -126,8 +190,7 @@ func setFonts(p *plot.Plot) {
 		f.Variant, f.Size = "Sans", 10
 	}
 	p.X.Tick.Marker, p.Y.Tick.Marker = plot.TickerFunc(roundTicks), plot.TickerFunc(roundTicks)
-	p.Legend.Top, p.Legend.Left = false, false
-	p.Legend.YOffs, p.Legend.XOffs = 8, -4
+	p.Legend.Top, p.Legend.Left = true, true
 	p.Legend.ThumbnailWidth, p.Legend.Padding = 28, 2
 }
 
@@ -213,17 +276,20 @@ var fontFamily = regexp.MustCompile(`font-family:[^;]*;font-variant:[^;]*;font-w
 
 // render turns a plot into an SVG for a page: no fonts named that a reader may not have, sized by the page, with
 // title and description for readers who cannot see it.
-func render(p *plot.Plot, description string) string {
+func render(p *plot.Plot, id, title, description string) string {
 	canvas := vgsvg.NewWith(vgsvg.UseWH(figureWidth, figureHeight))
-	p.Draw(draw.New(canvas))
+	whole, legend := draw.New(canvas), p.Legend
+	p.Legend = plot.NewLegend()
+	p.Draw(draw.Crop(whole, 0, 0, 0, -legendHeight))
+	legend.Draw(draw.Crop(whole, 46, 0, figureHeight-legendHeight, 0))
 	var b bytes.Buffer
 	if _, err := canvas.WriteTo(&b); err != nil {
 		return "" // a buffer does not fail
 	}
 	_, body, _ := strings.Cut(b.String(), ">\n<g ")
-	head := fmt.Sprintf(`<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %s %s" width="100%%" role="img" aria-labelledby="edge-title edge-text" style="font-family:sans-serif">`,
-		points(figureWidth), points(figureHeight))
-	words := "<title id=\"edge-title\">Predicted turn-off edge before and after the rebuild</title>\n<desc id=\"edge-text\">" + xmlText(description) + "</desc>\n"
+	head := fmt.Sprintf(`<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %s %s" width="100%%" role="img" aria-labelledby="%s-title %s-text" style="font-family:sans-serif">`,
+		points(figureWidth), points(figureHeight), id, id)
+	words := fmt.Sprintf("<title id=\"%s-title\">%s</title>\n<desc id=\"%s-text\">%s</desc>\n", id, xmlText(title), id, xmlText(description))
 	body = strings.ReplaceAll(fontFamily.ReplaceAllString(body, "font-family:sans-serif"), "\n\t", " ")
 	return head + "\n" + words + "<g " + body
 }

@@ -25,6 +25,10 @@ func frozen(t *testing.T) Report {
 	}
 	file.Case.Steps = append(file.Case.Steps, measure.StepEntry{Step: measure.StepHandedOver, Result: "done", At: reportTime.AddDate(0, 0, -33)},
 		measure.StepEntry{Step: measure.StepFollowedUp, Result: "done", At: reportTime.AddDate(0, 0, -1)})
+	file.Case.Board = file.Case.Board.With("pwm.frequency", quantity.Of(8e3, quantity.Hertz))
+	if file.Case.Rebuild != nil {
+		file.Case.Rebuild.Board = file.Case.Rebuild.Board.With("pwm.frequency", quantity.Of(8e3, quantity.Hertz))
+	}
 	base := frozenBase()
 	return Report{Case: file.Case, Base: base, At: reportTime, Ranking: frozenRanking(base), Next: frozenNext(base), Margin: frozenMargin(),
 		Discharge: frozenPlan(), Safety: frozenStatus(), Outside: []Outside{{1, []safety.Missing{{Point: 2, Text: "the check of 10:00 is 12 min old: it lives 10 min", Unlock: "check again"}}}}}
@@ -89,8 +93,9 @@ func frozenNext(b *knowledge.Base) *diagnose.Suggestion {
 	return n
 }
 
-func frozenEdge(shape string, bus, amps, peak float64) *stress.Edge {
-	e := &stress.Edge{Name: "turn-off", Shape: shape, Position: "low", Bus: bus, Current: amps, Peak: peak, PeakTime: 60e-9, Slope: 15e9, Ring: 13.9e6, Damping: 0.1, Energies: []stress.Energy{{Element: "switch", Joule: 0.0034}, {Element: "freewheel", Joule: 0.00015}}}
+func frozenEdge(name, shape string, bus, amps, peak float64) *stress.Edge {
+	e := &stress.Edge{Name: name, Shape: shape, Position: "low", Bus: bus, Current: amps, Peak: peak, PeakTime: 60e-9, Slope: 15e9, Ring: 13.9e6, Damping: 0.1,
+		Energies: []stress.Energy{{Element: "switch", Joule: 0.0034}, {Element: "output-capacitance", Joule: 0.00004}, {Element: "freewheel", Joule: 0.00015}, {Element: "bus-esr", Joule: 1e-9}}}
 	for k := range 200 {
 		v := min(float64(k)*bus/40, peak)
 		if k > 60 {
@@ -101,12 +106,21 @@ func frozenEdge(shape string, bus, amps, peak float64) *stress.Edge {
 	return e
 }
 
+// frozenDiode is the closing edge of the chopper, at its diode.
+func frozenDiode(peak float64) *stress.Edge {
+	e := frozenEdge("turn-on", "ramp", 310, 60, peak)
+	e.Position, e.Surge, e.Slope = "freewheel", 96, 0
+	return e
+}
+
 func frozenMargin() *stress.Margin {
 	v := func(low, mid, high float64, u quantity.Unit) quantity.Quantity {
 		return quantity.Quantity{Low: low, Value: mid, High: high, Unit: u}
 	}
 	figures := func(kind string, verdict stress.Verdict, peak float64) *stress.Figures {
-		return &stress.Figures{Network: stress.Network{Kind: kind}, Position: "low", Rated: 585, Nominal: frozenEdge("gate-limited", 310, 60, peak-150), Cut: frozenEdge("cut", 310, 60, peak-90), Highest: frozenEdge("gate-limited", 390, 120, peak),
+		running := frozenEdge("turn-off", "gate-limited", 310, 60, peak-150)
+		return &stress.Figures{Network: stress.Network{Kind: kind}, Position: "low", Alike: []string{"low"}, Rated: 585, Nominal: running, Cut: frozenEdge("turn-off", "cut", 310, 60, peak-90), Highest: frozenEdge("turn-off", "gate-limited", 390, 120, peak),
+			Edges: []*stress.Edge{running, frozenDiode(peak - 20)},
 			Worst: stress.Worst{Peak: 2 * peak, Edge: "turn-off", Shape: "cut", Corner: []stress.Corner{{Key: "loop.inductance", Value: 200e-9, Unit: quantity.Henry, Assumed: true}, {Key: "bus.highest", Value: 390, Unit: quantity.Volt}}},
 			P999:  stress.Percentile{Peak: peak + 20, Samples: 400}, Verdict: verdict}
 	}
@@ -116,7 +130,52 @@ func frozenMargin() *stress.Margin {
 	m.Rebuild.Network.Parts = []stress.Part{{Key: "snubber.resistance", Value: quantity.Of(27, quantity.Ohm)}, {Key: "snubber.capacitance", Value: quantity.Of(22e-9, quantity.Farad)}}
 	m.Rebuild.Rests = []string{"within only while loop.inductance stays between 60 nH and 110 nH"}
 	m.Rebuild.LiftedBy = []string{"switch.fall_time.gate_resistance"}
+	m.Rebuild.Edges[1].Discharge = 11.5
+	m.Rebuild.Edges[0].Energies = append(m.Rebuild.Edges[0].Energies, stress.Energy{Element: "snubber-resistor", Joule: 0.00106})
+	m.Rebuild.Duty = &stress.Duty{CapacitorRMS: 1.26, CapacitorPeak: 44.4, Slope: 2.02e9, ResistorWatts: 8.5, Discharge: 11.5, Emptied: 0.984}
 	return m
+}
+
+// frozenLeg is the margin of a bridge with everything that can follow from its edges: as found a MOSFET that avalanches
+// in every cycle and a part that opens last, rebuilt with a clamp.
+func frozenLeg() *stress.Margin {
+	m := frozenMargin()
+	m.Case, m.Assumed, m.Needs = "hall-door-7", nil, nil
+	for _, f := range []*stress.Figures{m.AsFound, m.Rebuild} {
+		f.Position, f.Alike = "a-high", []string{"a-high", "b-high"}
+		opens, closes := frozenEdge("turn-off", "gate-limited", 310, 60, f.Highest.Peak-150), frozenEdge("turn-on", "ramp", 310, 60, f.Highest.Peak-60)
+		opens.Position, closes.Position, closes.Surge = "a-high", "a-high", 96
+		f.Edges, f.Nominal, f.Highest.Position = []*stress.Edge{opens, closes}, closes, "a-high"
+		f.ShortCircuit = frozenEdge("turn-off", "gate-limited", 390, 320, f.Highest.Peak+40)
+		f.Worst.Edge, f.Worst.Shape, f.LiftedBy, f.Rests, f.Duty = "turn-on", "ramp", nil, nil, nil
+		f.LastPart = &stress.LastPart{Current: 72, Energy: 0.0021, Share: 0.6}
+	}
+	m.AsFound.Highest.Name, m.AsFound.Highest.Shape = "turn-on", "ramp"
+	m.AsFound.Avalanche = &stress.Avalanched{Prospective: 812, Volt: 600, Energy: 0.0042, Time: 230e-9, Current: 37, Rise: 41, EveryCycle: true, OverEnergy: true, Rated: true}
+	m.AsFound.Measured = &stress.FromCapture{Name: "edge-at-40V.csv", Low: 610, Mid: 642, High: 690, Why: "overshoot in proportion to the current", Loop: 131e-9, LoopLow: 118e-9, LoopHigh: 146e-9}
+	m.Rebuild.Highest.Name, m.Rebuild.Network = "all-off", stress.Network{Kind: "clamp", Parts: []stress.Part{{Key: "snubber.capacitance", Value: quantity.Of(470e-9, quantity.Farad)}}}
+	m.Rebuild.Clamp = &stress.Clamped{Volt: 402.5, Watts: 3.9, Charge: 1.7e-6, Ripple: 3.6}
+	m.Rebuild.Duty = &stress.Duty{CapacitorRMS: 0.31, CapacitorPeak: 19.5, Slope: 41e6, ResistorWatts: 3.9}
+	return m
+}
+
+// frozenReservoir is a chopper whose recovery network has lost its tie, with no PWM frequency stated.
+func frozenReservoir() *stress.Margin {
+	m := frozenMargin()
+	m.Rebuild, m.Needs, m.Case = nil, nil, "barn-winch-2"
+	f := m.AsFound
+	f.Network = stress.Network{Kind: "recovery", Parts: []stress.Part{{Key: "snubber.reservoir", Value: quantity.Of(10e-6, quantity.Farad)}}}
+	f.PumpUp = &stress.PumpedUp{FirstEdge: 2.4, End: 600, EndsBy: "breakdown", Edges: 131}
+	f.Avalanche = &stress.Avalanched{Prospective: 655, Volt: 600, Energy: 0.0007, Time: 40e-9, Current: 12}
+	f.Clamp = &stress.Clamped{Volt: 400, Stated: true, Charge: 1.7e-6, Ripple: 3.6}
+	f.Duty = &stress.Duty{CapacitorPeak: 60, Slope: 6e6}
+	return m
+}
+
+// with is a report on another margin.
+func with(r Report, m *stress.Margin) Report {
+	r.Margin = m
+	return r
 }
 
 func frozenStore() safety.Store {

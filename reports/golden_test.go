@@ -9,6 +9,7 @@ import (
 	"time"
 
 	"drivemend/diagnose/safety"
+	"drivemend/diagnose/stress"
 	"drivemend/knowledge"
 	"drivemend/measure"
 )
@@ -25,7 +26,7 @@ var terminal = []output{
 	{"next", func(w io.Writer, r Report, s Style) error { return Next(w, r.Base, r.Next, r.Discharge, s, r.beside()) }},
 	{"discharge", func(w io.Writer, r Report, s Style) error { return Discharge(w, r.Discharge, s) }},
 	{"status", func(w io.Writer, r Report, s Style) error { return Status(w, statusOfReport(r), s) }},
-	{"margin", func(w io.Writer, r Report, s Style) error { return Margin(w, r.Margin, s) }},
+	{"margin", func(w io.Writer, r Report, s Style) error { return MarginInFull(w, r.Case, r.Margin, s) }},
 	{"withheld", func(w io.Writer, r Report, s Style) error {
 		return Withheld(w, "the meter step", []safety.Missing{{Point: 0, Text: "no isolation is stated", Unlock: "isolate it and state it"}}, r.At, s)
 	}},
@@ -45,13 +46,14 @@ var terminal = []output{
 	{"key", func(w io.Writer, r Report, s Style) error { return Keys(w, frozenKeys()[:1], s) }},
 	{"shelf", func(w io.Writer, r Report, s Style) error { return Shelf(w, frozenShelf(r), s) }},
 	{"demo", func(w io.Writer, r Report, s Style) error { return Demo(w, frozenDemo(r), s) }},
+	{"margin-short", func(w io.Writer, r Report, s Style) error { return Margin(w, r.Margin, s) }},
 }
 
 // pages are all writers for files and for other programs.
 var pages = []output{
 	{"rank.json", func(w io.Writer, r Report, _ Style) error { return RankJSON(w, r.Ranking, r.Margin.Needs, r.beside()) }},
 	{"next.json", func(w io.Writer, r Report, _ Style) error { return NextJSON(w, r.Next, r.beside()) }},
-	{"margin.json", func(w io.Writer, r Report, _ Style) error { return MarginJSON(w, r.Margin) }},
+	{"margin.json", func(w io.Writer, r Report, _ Style) error { return MarginJSON(w, r.Case, r.Margin) }},
 	{"discharge.json", func(w io.Writer, r Report, _ Style) error { return DischargeJSON(w, r.Discharge) }},
 	{"status.json", func(w io.Writer, r Report, _ Style) error { return StatusJSON(w, statusOfReport(r)) }},
 	{"rules.json", func(w io.Writer, r Report, _ Style) error { return RulesJSON(w, r.Base, "") }},
@@ -100,13 +102,22 @@ func TestGolden(t *testing.T) {
 	for _, o := range pages {
 		golden(t, o.name, rendered(t, o, r, Style{}))
 	}
+	for name, m := range map[string]*stress.Margin{"leg": frozenLeg(), "reservoir": frozenReservoir()} {
+		bare := with(r, m)
+		if name == "reservoir" {
+			bare.Case = nil // no PWM frequency
+		}
+		golden(t, "margin-"+name+".txt", rendered(t, output{"margin", func(w io.Writer, r Report, s Style) error { return MarginInFull(w, r.Case, r.Margin, s) }}, bare, Style{}))
+		golden(t, "margin-"+name+".json", rendered(t, output{"margin.json", func(w io.Writer, r Report, _ Style) error { return MarginJSON(w, r.Case, r.Margin) }}, bare, Style{}))
+	}
+	golden(t, "report-leg.md", rendered(t, pages[9], with(r, frozenLeg()), Style{}))
 	golden(t, "ranking-color.txt", rendered(t, terminal[0], r, Style{Color: true}))
 	golden(t, "status-color.txt", rendered(t, terminal[4], r, Style{Color: true}))
 }
 
 // TestScreensFit checks every terminal output of the frozen, the real and the hostile case at three widths.
 func TestScreensFit(t *testing.T) {
-	for name, r := range map[string]Report{"frozen": frozen(t), "real": pump(t), "hostile": hostile(t), "broken": broken(frozen(t))} {
+	for name, r := range map[string]Report{"frozen": frozen(t), "real": pump(t), "hostile": hostile(t), "broken": broken(frozen(t)), "leg": with(frozen(t), frozenLeg()), "reservoir": with(frozen(t), frozenReservoir())} {
 		for _, o := range terminal {
 			if name == "real" && strings.HasPrefix(o.name, "rules-show") {
 				continue // the ids are those of the frozen base

@@ -5,6 +5,7 @@ import (
 	"strings"
 
 	"drivemend/diagnose/stress"
+	"drivemend/measure"
 	"drivemend/measure/quantity"
 )
 
@@ -19,17 +20,20 @@ var suffix = map[quantity.Unit]string{
 type pairs map[string]any
 
 type edgeJSON struct {
-	Edge     string         `json:"edge"`
-	Shape    string         `json:"shape"`
-	Position string         `json:"position"`
-	BusV     num            `json:"bus_v"`
-	CurrentA num            `json:"current_a"`
-	PeakV    num            `json:"peak_v"`
-	PeakS    num            `json:"peak_time_s"`
-	Slope    *num           `json:"dvdt_v_per_s"`
-	RingHz   *num           `json:"ring_hz"`
-	Damping  *num           `json:"damping_ratio"`
-	EnergyJ  map[string]num `json:"energy_j"`
+	Edge       string         `json:"edge"`
+	Shape      string         `json:"shape"`
+	Position   string         `json:"position"`
+	BusV       num            `json:"bus_v"`
+	CurrentA   num            `json:"current_a"`
+	PeakV      num            `json:"peak_v"`
+	PeakS      num            `json:"peak_time_s"`
+	Slope      *num           `json:"dvdt_v_per_s"`
+	RingHz     *num           `json:"ring_hz"`
+	Damping    *num           `json:"damping_ratio"`
+	SurgeA     *num           `json:"surge_a"`     // highest current of the switch that closes; null at an opening
+	DischargeA *num           `json:"discharge_a"` // what the network pushes into it; null without one
+	EnergyJ    map[string]num `json:"energy_j"`
+	LossW      map[string]num `json:"loss_w"` // of what does not give it back, at the PWM frequency; null without one
 }
 
 type worstJSON struct {
@@ -48,18 +52,21 @@ type p999JSON struct {
 }
 
 type figuresJSON struct {
-	Network   pairs      `json:"network"`
-	Position  string     `json:"position"`
-	RatedV    num        `json:"rated_v"`
-	Nominal   *edgeJSON  `json:"nominal"`
-	Highest   *edgeJSON  `json:"highest"`
-	Cut       *edgeJSON  `json:"cut"`
-	Worst     *worstJSON `json:"worst"`
-	P999      *p999JSON  `json:"p999"`
-	Avalanche *pairs     `json:"avalanche"` // not computed yet
-	Verdict   string     `json:"verdict"`
-	LiftedBy  []string   `json:"lifted_by"`
-	Rests     []string   `json:"rests_on_assumed"`
+	Network      pairs      `json:"network"`
+	Position     string     `json:"position"`
+	Alike        []string   `json:"alike"`
+	RatedV       num        `json:"rated_v"`
+	Nominal      *edgeJSON  `json:"nominal"`
+	Highest      *edgeJSON  `json:"highest"`
+	Cut          *edgeJSON  `json:"cut"`
+	Edges        []edgeJSON `json:"edges"`
+	ShortCircuit *edgeJSON  `json:"short_circuit"`
+	Worst        *worstJSON `json:"worst"`
+	P999         *p999JSON  `json:"p999"`
+	followJSON
+	Verdict  string   `json:"verdict"`
+	LiftedBy []string `json:"lifted_by"`
+	Rests    []string `json:"rests_on_assumed"`
 }
 
 type assumedJSON struct {
@@ -85,17 +92,22 @@ type marginJSON struct {
 	NotYet   *string       `json:"not_worked_out"` // why there are no figures although nothing is missing
 }
 
-// MarginJSON writes what the switch saw and what the rebuild will see.
-func MarginJSON(w io.Writer, m *stress.Margin) error { return writeJSON(w, marginOf(m)) }
+// MarginJSON writes what the switch saw and what the rebuild will see. The case gives the PWM frequency for the
+// watts; nil gives none.
+func MarginJSON(w io.Writer, c *measure.Case, m *stress.Margin) error {
+	return writeJSON(w, marginOf(c, m))
+}
 
-func marginOf(m *stress.Margin) *marginJSON {
+func marginOf(c *measure.Case, m *stress.Margin) *marginJSON {
 	if m == nil {
 		return nil
 	}
 	out := &marginJSON{Case: m.Case, RatedV: some(m.Rated), StatedV: some(m.Stated), AllowedV: some(m.Allowed),
-		AsFound: figuresOf(m.AsFound), Rebuild: figuresOf(m.Rebuild), Needs: needsJSON(m.Needs), Assumed: []assumedJSON{}}
-	if otherTopology(m) {
-		out.NotYet = orNull(otherTopologyWords)
+		Needs: needsJSON(m.Needs), Assumed: []assumedJSON{}, NotYet: orNull(topologyWords(m))}
+	boards := boardsOf(c, m)
+	out.AsFound = figuresOf(boards[0])
+	if len(boards) > 1 {
+		out.Rebuild = figuresOf(boards[1])
 	}
 	for _, a := range m.Assumed {
 		out.Assumed = append(out.Assumed, assumedJSON{a.Key, num(a.Value.Value), num(a.Value.Low), num(a.Value.High), string(a.Value.Unit), a.Why, num(a.MovesPeak)})
@@ -103,24 +115,16 @@ func marginOf(m *stress.Margin) *marginJSON {
 	return out
 }
 
-func figuresOf(f *stress.Figures) *figuresJSON {
+func figuresOf(b marginBoard) *figuresJSON {
+	f := b.f
 	if f == nil {
 		return nil
 	}
-	out := &figuresJSON{Network: pairs{"kind": f.Network.Kind}, Position: f.Position, RatedV: num(f.Rated), Verdict: string(f.Verdict),
-		Nominal: edgeOf(f.Nominal), Highest: edgeOf(f.Highest), Cut: edgeOf(f.Cut), LiftedBy: list(f.LiftedBy), Rests: list(f.Rests)}
-	for _, p := range f.Network.Parts {
-		name := p.Key[strings.LastIndexByte(p.Key, '.')+1:]
-		out.Network[name+suffix[p.Value.Unit]] = num(p.Value.Value)
-	}
-	if f.Worst.Peak != 0 {
-		out.Worst = &worstJSON{PeakV: num(f.Worst.Peak), Edge: f.Worst.Edge, Shape: orNull(f.Worst.Shape), Position: f.Position, Corner: map[string]num{}, Assumed: []string{}}
-		for _, c := range f.Worst.Corner {
-			out.Worst.Corner[c.Key] = num(c.Value)
-			if c.Assumed {
-				out.Worst.Assumed = append(out.Worst.Assumed, c.Key)
-			}
-		}
+	out := &figuresJSON{Network: networkJSON(f.Network), Position: f.Position, Alike: list(f.Alike), RatedV: num(f.Rated), Verdict: string(f.Verdict),
+		Nominal: edgeOf(f.Nominal, b.hertz), Highest: edgeOf(f.Highest, b.hertz), Cut: edgeOf(f.Cut, b.hertz), ShortCircuit: edgeOf(f.ShortCircuit, b.hertz),
+		Edges: []edgeJSON{}, Worst: worstOf(f), LiftedBy: list(f.LiftedBy), Rests: list(f.Rests), followJSON: followsOf(f)}
+	for _, e := range f.Edges {
+		out.Edges = append(out.Edges, *edgeOf(e, b.hertz))
 	}
 	if f.P999.Samples > 0 {
 		out.P999 = &p999JSON{num(f.P999.Peak), f.P999.Samples, percentileWords(f)}
@@ -128,14 +132,43 @@ func figuresOf(f *stress.Figures) *figuresJSON {
 	return out
 }
 
-func edgeOf(e *stress.Edge) *edgeJSON {
+func networkJSON(n stress.Network) pairs {
+	out := pairs{"kind": n.Kind}
+	for _, p := range n.Parts {
+		name := p.Key[strings.LastIndexByte(p.Key, '.')+1:]
+		out[name+suffix[p.Value.Unit]] = num(p.Value.Value)
+	}
+	return out
+}
+
+func worstOf(f *stress.Figures) *worstJSON {
+	if f.Worst.Peak == 0 {
+		return nil
+	}
+	out := &worstJSON{PeakV: num(f.Worst.Peak), Edge: f.Worst.Edge, Shape: orNull(f.Worst.Shape), Position: f.Position, Corner: map[string]num{}, Assumed: []string{}}
+	for _, c := range f.Worst.Corner {
+		out.Corner[c.Key] = num(c.Value)
+		if c.Assumed {
+			out.Assumed = append(out.Assumed, c.Key)
+		}
+	}
+	return out
+}
+
+func edgeOf(e *stress.Edge, hertz float64) *edgeJSON {
 	if e == nil {
 		return nil
 	}
 	out := &edgeJSON{Edge: e.Name, Shape: e.Shape, Position: e.Position, BusV: num(e.Bus), CurrentA: num(e.Current), PeakV: num(e.Peak), PeakS: num(e.PeakTime),
-		Slope: some(e.Slope), RingHz: some(e.Ring), Damping: some(e.Damping), EnergyJ: map[string]num{}}
+		Slope: some(e.Slope), RingHz: some(e.Ring), Damping: some(e.Damping), SurgeA: some(e.Surge), DischargeA: some(e.Discharge), EnergyJ: map[string]num{}}
 	for _, x := range e.Energies {
 		out.EnergyJ[x.Element] = num(x.Joule)
+		if hertz > 0 && !keeps(x.Element) {
+			if out.LossW == nil {
+				out.LossW = map[string]num{}
+			}
+			out.LossW[x.Element] = num(x.Joule * hertz)
+		}
 	}
 	return out
 }

@@ -95,7 +95,7 @@ func ReportJSON(w io.Writer, r Report) error {
 	}
 	c, known := r.Case, r.beside()
 	out := reportJSON{Case: c.ID, At: instant(r.At), Private: r.Private, Story: orNull(c.Story), Finding: r.findingState(), Rank: rankOf(r.Ranking, nil, known), Next: nextOf(r.Next, known),
-		Margin: marginOf(r.Margin), Discharge: dischargeOf(r.plan()), Safety: statusOf(c, r.Safety), Outcome: outcomeOf(c.Outcome), Observations: []observationJSON{}, Outside: []outsideJSON{}}
+		Margin: marginOf(c, r.Margin), Discharge: dischargeOf(r.plan()), Safety: statusOf(c, r.Safety), Outcome: outcomeOf(c.Outcome), Observations: []observationJSON{}, Outside: []outsideJSON{}}
 	out.jobJSON = jobOf(r)
 	if !r.Private {
 		out.Owner, out.Technician, out.Serial, out.Firmware = orNull(c.Owner), orNull(c.Technician), orNull(c.Serial), orNull(c.Firmware)

@@ -6,7 +6,6 @@ import (
 
 	"drivemend/diagnose/stress"
 	"drivemend/measure"
-	"drivemend/measure/quantity"
 )
 
 // question is what the people who designed the board are asked, with the figures they need to answer.
@@ -96,65 +95,6 @@ func assumedQuestions(assumed []stress.Assumed, most int) []string {
 	return out
 }
 
-// edges are the predicted edge before and after, as a figure and as its key points.
-func (r Report) edges() section {
-	s := section{ID: "edges", Title: "What the switch saw, and what the rebuild will see"}
-	m := r.Margin
-	if m == nil || m.AsFound == nil && m.Rebuild == nil {
-		return s
-	}
-	if svg, err := edgeSVG(m); err == nil {
-		s.Blocks = append(s.Blocks, block{Figure: &picture{svg, edgeDescription(m)}})
-	}
-	s.tabulate(figuresTable(m))
-	s.tabulate(keyPoints(m))
-	for _, x := range []struct {
-		name string
-		f    *stress.Figures
-	}{{"As found", m.AsFound}, {"Rebuild", m.Rebuild}} {
-		if x.f == nil {
-			continue
-		}
-		s.say(verdictTone(x.f.Verdict), x.name+". "+verdictWords(x.f.Verdict)+".", strings.Join(x.f.Rests, "; ")+restWords(m, x.f))
-		if x.f.Worst.Peak > 0 {
-			s.say(neutral, x.name+", absolute corner.", volts(x.f.Worst.Peak)+" would need: "+cornerWords(x.f.Worst.Corner)+".")
-		}
-	}
-	return s
-}
-
-func figuresTable(m *stress.Margin) table {
-	t := table{Caption: "Peaks at the chip; gate-limited edge unless it says cut", Heads: []string{"Figure", "As found"}}
-	if m.Rebuild != nil {
-		t.Heads = append(t.Heads, "Rebuild")
-	}
-	for _, row := range marginRows {
-		out := []entry{{Text: row.name}, {Text: "not known"}}
-		if m.AsFound != nil {
-			out[1] = row.cell(m.AsFound)
-		}
-		if m.Rebuild != nil {
-			out = append(out, row.cell(m.Rebuild))
-		}
-		t.Rows = append(t.Rows, out)
-	}
-	return t
-}
-
-// keyPoints are the drawn edges in numbers.
-func keyPoints(m *stress.Margin) table {
-	t := table{Caption: "Key points of the drawn edges: gate-limited, highest bus, worst current", Heads: []string{"Board", "Peak", "At", "Mean slope 10 to 90 %", "Ring", "Damping"}, Numeric: []bool{false, true, true, true, true, true}}
-	for _, x := range drawnEdges(m) {
-		e := x.edge
-		ring, damping := "none", "none"
-		if e.Ring > 0 {
-			ring, damping = quantity.Format(e.Ring, quantity.Hertz), fmt.Sprintf("%.2g", e.Damping)
-		}
-		t.Rows = append(t.Rows, cells(x.name, volts(e.Peak), quantity.Format(e.PeakTime, quantity.Second), quantity.Format(e.Slope, quantity.VoltPerSecond), ring, damping))
-	}
-	return t
-}
-
 func (r Report) assumed() section {
 	s := section{ID: "assumed", Title: "Assumed values"}
 	if r.Margin == nil {
@@ -178,7 +118,7 @@ func (r Report) needs() section {
 	if r.Margin != nil {
 		for _, n := range r.Margin.Needs {
 			if n.Key == topologyKey {
-				s.say(caution, "EDGES.", capital(otherTopologyWords)+".")
+				s.say(caution, "TOPOLOGY.", capital(topologyNeed(n))+".")
 				continue
 			}
 			rows = append(rows, cells(n.Key, strings.Join(n.For, "; ")))

@@ -246,16 +246,25 @@ func (r Report) rebuildVerdict() section {
 	case m.Rebuild != nil:
 		s.say(verdictTone(m.Rebuild.Verdict), verdictWords(m.Rebuild.Verdict)+".", peakAgainst(r.rebuildShort(), m.Rebuild)+restWords(m, m.Rebuild))
 		s.enumerate(false, m.Rebuild.Rests...)
+		s.dangers(m.Rebuild)
 	case m.AsFound != nil:
 		s.say(caution, "NO REBUILD IS STATED.", "The board as found: "+string(m.AsFound.Verdict)+". "+peakAgainst("as found, with "+networkWords(m.AsFound.Network)+",", m.AsFound))
+		s.dangers(m.AsFound)
 	default:
-		if otherTopology(m) {
-			s.say(caution, "NOT COMPUTED.", capital(otherTopologyWords)+".")
+		if text := topologyWords(m); text != "" {
+			s.say(caution, "NOT COMPUTED.", capital(text)+".")
 			return s
 		}
 		s.say(caution, "NOT COMPUTABLE.", "What is missing stands under missing values: "+needKeys(m.Needs)+".")
 	}
 	return s
+}
+
+// dangers says what kills a board whatever its verdict on the peak.
+func (s *section) dangers(f *stress.Figures) {
+	for _, d := range dangersOf(f) {
+		s.say(danger, strings.ToUpper(d.Name)+".", capital(d.Text)+".")
+	}
 }
 
 // restWords says, beside a good verdict, how much of it is assumed.

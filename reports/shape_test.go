@@ -17,7 +17,9 @@ var shapes = map[string][]string{
 	"rank.json": {"case", "setting", "causes[].id", "causes[].title", "causes[].role", "causes[].probability", "causes[].low", "causes[].high", "causes[].leads", "stresses[].id", "faults[].id", "faults[].parts", "faults[].parts[].part", "faults[].parts[].probability",
 		"unlisted.probability", "unlisted.low", "unlisted.high", "fit", "unexplained[].test", "unexplained[].result", "unexplained[].db", "alike", "findings[].test", "findings[].result", "findings[].part", "findings[].source", "findings[].db", "findings[].alone_db", "findings[].assumed", "needs[].key", "needs[].for"},
 	"next.json": {"case", "at", "tests[].id", "tests[].title", "tests[].part", "tests[].position", "tests[].value_min", "tests[].bits", "tests[].minutes", "tests[].needs", "tests[].allowed", "tests[].blocked_by", "tests[].unlocked_by", "stop"},
-	"margin.json": {"case", "rated_v", "allowed_v", "as_found.network.kind", "as_found.nominal", "as_found.cut", "as_found.worst.peak_v", "as_found.worst.edge", "as_found.worst.position", "as_found.worst.corner", "as_found.p999.peak_v", "as_found.p999.samples", "as_found.avalanche", "as_found.verdict", "as_found.lifted_by", "as_found.rests_on_assumed",
+	"margin.json": {"case", "rated_v", "allowed_v", "as_found.network.kind", "as_found.nominal", "as_found.cut", "as_found.worst.peak_v", "as_found.worst.edge", "as_found.worst.position", "as_found.worst.corner", "as_found.p999.peak_v", "as_found.p999.samples", "as_found.avalanche", "as_found.clamp", "as_found.pump_up", "as_found.network_duty", "as_found.last_part", "as_found.measured", "as_found.short_circuit", "as_found.alike",
+		"as_found.edges[].edge", "as_found.edges[].surge_a", "as_found.edges[].loss_w.switch", "rebuild.network_duty.capacitor_rms_a", "rebuild.network_duty.capacitor_peak_a", "rebuild.network_duty.capacitor_dvdt_v_per_s", "rebuild.network_duty.resistor_w", "rebuild.network_duty.discharge_a", "rebuild.network_duty.emptied_share",
+		"as_found.verdict", "as_found.lifted_by", "as_found.rests_on_assumed",
 		"rebuild.network.capacitance_f", "rebuild.network.resistance_ohm", "rebuild.nominal.edge", "rebuild.nominal.position", "rebuild.nominal.peak_v", "rebuild.nominal.peak_time_s", "rebuild.nominal.dvdt_v_per_s", "rebuild.nominal.ring_hz", "rebuild.nominal.damping_ratio", "rebuild.nominal.energy_j.switch",
 		"stresses", "assumed[].key", "assumed[].value", "assumed[].unit", "assumed[].why", "needs[].key", "needs[].for"},
 }
@@ -85,7 +87,7 @@ func has(v any, path []string) bool {
 
 var snake = regexp.MustCompile(`^[a-z][a-z0-9]*(_[a-z0-9]+)*$`)
 
-// snakeCase checks every key but those below corner, energy_j and the like, which are keys of the board.
+// snakeCase checks every key but those below corner, energy_j, loss_w and the like, which are keys of the board.
 func snakeCase(t *testing.T, at string, v any) {
 	switch v := v.(type) {
 	case map[string]any:
@@ -93,7 +95,7 @@ func snakeCase(t *testing.T, at string, v any) {
 			if !snake.MatchString(k) {
 				t.Errorf("%s: key %q is not snake case", at, k)
 			}
-			if k != "corner" && k != "energy_j" {
+			if k != "corner" && k != "energy_j" && k != "loss_w" {
 				snakeCase(t, at+"."+k, inner)
 			}
 		}

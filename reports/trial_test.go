@@ -204,18 +204,30 @@ func TestTailIsFitted(t *testing.T) {
 	}
 }
 
-// TestOtherTopologyIsNotMissing: nobody is sent to look for a value that is stated.
+// TestOtherTopologyIsNotMissing: nobody is sent to look for a value that is stated, and everybody is told what to do.
 func TestOtherTopologyIsNotMissing(t *testing.T) {
-	r := frozen(t)
-	r.Margin = &stress.Margin{Case: "bridge", Needs: []stress.Need{{Key: "board.topology", For: []string{"edges of a half-bridge are not worked out yet", "margin"}}}}
-	r.Discharge.Needs = nil
-	for _, name := range []string{"margin", "report.md", "report.html", "margin.json"} {
-		text := said(t, r, name)
-		if !strings.Contains(strings.ToLower(text), "not worked out for this topology yet (choppers only)") {
-			t.Errorf("%s does not say why there is no figure:\n%s", name, text)
+	for _, word := range []string{"other", ""} {
+		r := frozen(t)
+		b := measure.Board{}
+		if word != "" {
+			b = b.WithWord("topology", word)
 		}
-		if name != "margin.json" && (strings.Contains(text, "MISSING") || strings.Contains(text, "board.topology")) {
-			t.Errorf("%s asks for the topology", name)
+		m, err := stress.Compute(&measure.Case{ID: "bridge", Board: b}, 1)
+		if err != nil {
+			t.Fatal(err)
+		}
+		r.Margin, r.Discharge.Needs = m, nil
+		for _, name := range []string{"margin", "report.md", "report.html", "margin.json"} {
+			text := said(t, r, name)
+			if !strings.Contains(text, "keep the captured peak under 80 % of the rating") || !strings.Contains(text, "half-bridge") {
+				t.Errorf("topology %q: %s does not say what to do without a figure:\n%s", word, name, text)
+			}
+			if strings.Contains(strings.ToLower(text), "choppers only") {
+				t.Errorf("topology %q: %s speaks of choppers only", word, name)
+			}
+			if name != "margin.json" && (strings.Contains(text, "MISSING") || strings.Contains(text, "board.topology")) {
+				t.Errorf("topology %q: %s asks for the topology", word, name)
+			}
 		}
 	}
 }

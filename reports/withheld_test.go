@@ -8,6 +8,7 @@ import (
 
 	"drivemend/diagnose"
 	"drivemend/diagnose/safety"
+	"drivemend/diagnose/stress"
 	"drivemend/measure"
 	"drivemend/measure/quantity"
 )
@@ -200,10 +201,17 @@ func TestFiguresOfAnUnsolvedTopology(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	c := *r.Case
+	c.Board = c.Board.WithWord("topology", "other")
+	m, err := stress.Compute(&c, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	r.Case = &c
 	p := pageOf(r, testTime)
-	p.Needs = r.Margin.Needs
+	p.Needs = m.Needs
 	text := boardKnown(p)
-	if strings.Contains(text, "wait for board.topology") || !strings.Contains(text, "; figures: ") || !strings.Contains(text, "h-bridge") {
+	if strings.Contains(text, "wait for board.topology") || !strings.Contains(text, "; figures: ") || !strings.Contains(text, "stated as other") {
 		t.Error(text)
 	}
 	p.Case = &measure.Case{}

@@ -1,6 +1,8 @@
 package stress
 
 import (
+	"drivemend/measure"
+
 	"math"
 	"slices"
 	"testing"
@@ -71,15 +73,6 @@ func solveCut(t *testing.T, s scene) *Edge {
 	return e
 }
 
-func (e *Edge) energy(name string) float64 {
-	for _, x := range e.Energies {
-		if x.Element == name {
-			return x.Joule
-		}
-	}
-	return 0
-}
-
 // volts at a time, in a straight line between samples.
 func (e *Edge) volts(at float64) float64 {
 	for k := 1; k < len(e.Waveform); k++ {
@@ -114,4 +107,13 @@ func TestCutEdgeClosedForm(t *testing.T) {
 		}
 	}
 	t.Logf("largest difference %.2g of the peak", worst)
+}
+
+// prepare gathers the first position of a board.
+func prepare(b measure.Board) (*problem, []Need) {
+	all, needs := prepareAll(b)
+	if len(all) == 0 {
+		return nil, needs
+	}
+	return all[0], needs
 }

@@ -1,8 +1,9 @@
 package stress
 
 import (
+	"strings"
+
 	"drivemend/measure"
-	"drivemend/measure/quantity"
 )
 
 // class is how a board is built; it decides the typical values. All of them are judgements.
@@ -74,13 +75,17 @@ func classOf(b measure.Board) class {
 // judged is the reason of a value taken from the class.
 func (c class) judged() string { return "typical of " + c.name + ", judgement" }
 
-const lowVoltage = 150 // V, rating up to which a switch counts as a low-voltage part
+const (
+	lowVoltage    = 150 // V, rating up to which a switch counts as a low-voltage part
+	schottkyDrop  = 0.6 // V, forward voltage under which a diode counts as a Schottky diode
+	recoveryDoubt = 1.5 // factor either way of a recovery charge carried over to another current and slope
+)
 
 // recovery gives the forward recovery of the class's diodes; TO-247 parts from 1200 V on have more, a Schottky
 // diode (forward voltage under 0.6 V) none.
 func (c class) recovery(rated, drop float64) (volts, time float64) {
 	switch {
-	case drop < 0.6:
+	case drop < schottkyDrop:
 		return 0, c.recoveryT
 	case rated >= 1200 && c.name == discrete.name:
 		return 30, 150 * nano
@@ -103,6 +108,32 @@ func typicalEdge(kind string, rated float64) (fall, slope float64) {
 	return 40 * nano, 15e9
 }
 
+// typicalRise gives the time in which a device at closing takes its rated current: judgement.
+func typicalRise(kind string) float64 {
+	switch kind {
+	case "sic-mosfet":
+		return 12 * nano
+	case "igbt":
+		return 40 * nano
+	case "bipolar":
+		return 200 * nano
+	}
+	return 30 * nano
+}
+
+// typicalRecovery gives the reverse recovery time of the diode beside a switch: judgement.
+func typicalRecovery(kind string, rated float64) float64 {
+	switch {
+	case kind == "sic-mosfet":
+		return 25 * nano
+	case rated <= lowVoltage:
+		return 40 * nano
+	case rated <= 700:
+		return 100 * nano
+	}
+	return 200 * nano
+}
+
 // plainWords are the names of the inputs in a sentence.
 var plainWords = map[string]string{
 	"bus.highest":                            "the highest bus voltage",
@@ -115,6 +146,7 @@ var plainWords = map[string]string{
 	"switch.package_inductance":              "the package inductance",
 	"loop.inductance":                        "the loop inductance",
 	"loop.resistance":                        "the loop resistance",
+	"loop.damping_ratio":                     "the damping of the loop's ring",
 	"freewheel.forward_voltage":              "the freewheel diode's drop",
 	"freewheel.forward_recovery.voltage":     "the freewheel diode's forward recovery",
 	"freewheel.forward_recovery.time":        "the time of its forward recovery",
@@ -125,21 +157,25 @@ var plainWords = map[string]string{
 	"snubber.diode.forward_recovery.voltage": "the network diode's forward recovery",
 	"snubber.diode.forward_recovery.time":    "the time of the network diode's forward recovery",
 	"pwm.shortest_on_time":                   "the shortest on-time",
+	"switch.turn_on_slope":                   "the current slope at closing",
+	"switch.closing_slope":                   "the voltage slope at closing",
+	"freewheel.recovery_charge":              "the diode's recovery charge",
+	"freewheel.recovery_time":                "the diode's recovery time",
+	"freewheel.softness":                     "the softness of its recovery",
+	"snubber.clamp_voltage":                  "the clamp voltage",
+	"snubber.slope_resistance":               "the suppressor's slope",
+	"snubber.reservoir":                      "the reservoir",
+	"snubber.link.inductance":                "the inductance of its tie",
+	"snubber.link.resistance":                "the resistance of its tie",
 }
 
 // inWords names an input for a sentence, with its key.
 func inWords(key string) string {
+	if bare, far := strings.CutPrefix(key, oppositeSwitch); far {
+		return "of the opposite switch " + inWords(bare)
+	}
 	if words, ok := plainWords[key]; ok {
 		return words + " (" + key + ")"
 	}
 	return key
-}
-
-var partUnit = map[string]quantity.Unit{"snubber.capacitance": quantity.Farad, "snubber.resistance": quantity.Ohm}
-
-// networkParts are the parts of each network that is worked out.
-var networkParts = map[string][]string{
-	"capacitor": {"snubber.capacitance"},
-	"rc":        {"snubber.resistance", "snubber.capacitance"},
-	"rcd":       {"snubber.resistance", "snubber.capacitance"},
 }

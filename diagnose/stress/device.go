@@ -19,24 +19,35 @@ func (g gatherer) device() {
 	g.take("switch.fall_time", quantity.Second, around(fall, 2), "typical of the kind of switch, judgement")
 	g.gateScale(kind)
 	g.slope(rise)
+	g.turnOn(kind, rise)
 	g.outputCapacitance()
 	g.take("switch.package_inductance", quantity.Henry, around(g.in.class.pack, 2), g.in.class.judged())
 }
 
-// gateScale scales the data-sheet fall time to the gate resistor in use: in proportion for a MOSFET, by the square
-// root for an IGBT or bipolar (rule drawn from simulated gate-driven boards).
+// gateScale scales the data-sheet fall time to the gate resistor in use, with the resistance inside the part: by the
+// power 0.75 for a MOSFET, whose source inductance limits it too, by the root for an IGBT or bipolar, whose stored charge
+// does (drawn from simulated gate-driven boards).
 func (g gatherer) gateScale(kind string) {
 	reference, fitted := g.value("switch.fall_time.gate_resistance"), g.value("gate.turn_off_resistance")
 	if reference <= 0 || fitted <= 0 {
 		return
 	}
-	scale := fitted / reference
+	inside, power := g.value("switch.internal_gate_resistance"), mosfetFall
 	if kind == "igbt" || kind == "bipolar" {
-		scale = math.Sqrt(scale)
+		power = igbtFall
 	}
-	in := &g.in.values[g.in.at["switch.fall_time"]]
-	in.low, in.mid, in.high = in.low*scale, in.mid*scale, in.high*scale
+	g.scale("switch.fall_time", math.Pow((fitted+inside)/(reference+inside), power))
 }
+
+// The powers of the gate resistance with which fall times go.
+const (
+	mosfetFall = 0.75
+	igbtFall   = 0.5
+)
+
+// igbtClosing is the power of the gate resistance with which an IGBT's closing slope goes (drawn from simulated
+// gate-driven boards; a MOSFET's goes in proportion).
+const igbtClosing = 0.7
 
 // The plateau of the gate where the case gives no transfer curve (judgement).
 const (
@@ -47,19 +58,55 @@ const (
 // slope takes the voltage slope at opening: stated, else from the gate, (plateau − off voltage)/(R·C_gc), else
 // typical of the kind. C_gc has to be the one at the bus.
 func (g gatherer) slope(typical float64) {
-	taken, why := around(typical, 2), "typical of the kind of switch, judgement"
-	threshold, off := plainThreshold, g.value("gate.off_voltage")
+	plateau := g.plateau()
+	drive := plateau - g.value("gate.off_voltage")
+	g.take("switch.rise_slope", quantity.VoltPerSecond, around(typical, 2), "typical of the kind of switch, judgement",
+		g.byGate("gate.turn_off_resistance", drive, "(plateau − off voltage)/(R·C_gc)"))
+}
+
+// plateau is the gate voltage at which the switch carries the load current while its voltage moves.
+func (g gatherer) plateau() float64 {
 	if g.stated("switch.gate_threshold") {
-		threshold = g.value("switch.gate_threshold")
+		return g.value("switch.gate_threshold") + overThreshold
 	}
-	ohm := g.value("gate.turn_off_resistance") + g.value("switch.internal_gate_resistance")
-	charge := ohm * g.value("switch.gate_collector_capacitance")
-	if drive := threshold + overThreshold - off; g.stated("gate.turn_off_resistance") && charge > 0 && drive > 0 {
-		taken = around(drive/charge, 1.5)
-		plateau := quantity.Format(threshold+overThreshold, quantity.Volt)
-		why = "from the gate: (plateau − off voltage)/(R·C_gc), plateau " + plateau + ", judgement"
+	return plainThreshold + overThreshold
+}
+
+// byGate is a voltage slope that the gate circuit makes: what drives it over the resistance times C_gc; nothing when
+// the case does not state enough.
+func (g gatherer) byGate(resistor string, drive float64, formula string) known {
+	charge := (g.value(resistor) + g.value("switch.internal_gate_resistance")) * g.value("switch.gate_collector_capacitance")
+	if !g.stated(resistor) || charge <= 0 || drive <= 0 {
+		return known{}
 	}
-	g.take("switch.rise_slope", quantity.VoltPerSecond, taken, why)
+	return known{around(drive/charge, 1.5), fromGate + formula + ", plateau " + quantity.Format(g.plateau(), quantity.Volt) + ", judgement"}
+}
+
+// turnOn takes the current slope at closing, stated at its own gate resistance or typical, and the slope at which the
+// voltage then falls: by the gate, (on voltage − plateau)/(R·C_gc), or as typical as at opening.
+func (g gatherer) turnOn(kind string, rise float64) {
+	amps := max(g.value("switch.rated_current"), 1)
+	g.take("switch.turn_on_slope", quantity.AmperePerSecond, around(amps/typicalRise(kind), 2.5), "rated current within the typical rise time of the kind, judgement")
+	reference, fitted := g.value("switch.turn_on_slope.gate_resistance"), g.value("gate.turn_on_resistance")
+	if inside := g.value("switch.internal_gate_resistance"); reference > 0 && fitted > 0 {
+		scale := (reference + inside) / (fitted + inside)
+		if kind == "igbt" || kind == "bipolar" {
+			scale = math.Pow(scale, igbtClosing)
+		}
+		g.scale("switch.turn_on_slope", scale)
+	}
+	drive := g.value("gate.on_voltage") - g.plateau()
+	g.take("switch.closing_slope", quantity.VoltPerSecond, around(rise, 2), "typical of the kind of switch, judgement",
+		g.byGate("gate.turn_on_resistance", drive, "(on voltage − plateau)/(R·C_gc)"))
+}
+
+// fromGate begins the reason of a slope that the gate circuit makes.
+const fromGate = "from the gate: "
+
+// scale multiplies an input and its interval.
+func (g gatherer) scale(key string, by float64) {
+	in := &g.in.values[g.in.at[key]]
+	in.low, in.mid, in.high = in.low*by, in.mid*by, in.high*by
 }
 
 // outputCapacitance takes one device's output capacitance. Given at a voltage it falls with the voltage; the circuit
@@ -72,41 +119,25 @@ func (g gatherer) outputCapacitance() {
 	}
 }
 
-// junctionStep is the voltage beside which the depletion capacitance is at half its zero-bias slope: C goes with
-// 1/√(v + 0.8 V).
-const junctionStep = 0.8
-
-// step is one stage of a capacitance that falls with the voltage: its constant up to a level.
-type step struct{ farad, until float64 }
-
-// depletion is an output capacitance that falls with the voltage, C(v) = C_ref·√((v_ref+0.8)/(v+0.8)), in
-// steps: to a quarter of the bus, to the bus, half way to top, and on to 1.3·top and beyond. Each takes the same charge as the curve between its ends, ∫C dv/(to−from) = 2·C_ref·√(v_ref+0.8)·(√(to+0.8) − √(from+0.8))/(to−from).
-// A single constant over all would be twice what a ring above the bus sees, and put the peak of a cut edge 17 % too
-// low. Against ngspice with the curve itself, twenty edges differ by less than 1.5 % where the peak stays near top;
-// by up to 6 % where a cut edge goes to three times the bus, and by 8 % where a ring swings far below the bus and up
-// again (a part that came back on the way down is not charged a second time).
-func depletion(farad, at, bus, top float64) []step {
-	root := func(v float64) float64 { return math.Sqrt(v + junctionStep) }
-	between := func(from, to float64) float64 { return 2 * farad * root(at) * (root(to) - root(from)) / (to - from) }
-	levels, from, out := []float64{bus / 4, bus, (bus + top) / 2}, 0.0, []step(nil)
-	for _, to := range levels {
-		out = append(out, step{between(from, to), to})
-		from = to
-	}
-	return append(out, step{between(from, 1.3*top), math.Inf(1)})
-}
-
 // loop takes the loop from the bus capacitor to the terminals; its two shares, if only they are stated, add up.
 func (g gatherer) loop() {
-	typical := g.in.class.loop
-	if !g.stated("loop.inductance") && g.stated("loop.leg") && g.stated("loop.link") {
-		l := g.value("loop.leg") + g.value("loop.link")
+	leg, link := g.value("loop.leg"), g.value("loop.link")
+	split := g.stated("loop.leg") && g.stated("loop.link")
+	if !g.stated("loop.inductance") && split {
+		l := leg + link
 		assumed := g.b.Assumed("loop.leg") || g.b.Assumed("loop.link")
 		g.in.add(input{key: "loop.inductance", unit: quantity.Henry, low: l, mid: l, high: l, assumed: assumed, why: "link and leg together"})
 	} else {
-		g.take("loop.inductance", quantity.Henry, typical, g.in.class.judged())
+		g.take("loop.inductance", quantity.Henry, g.in.class.loop, g.in.class.judged())
+	}
+	if share := g.in.mid("loop.inductance"); g.stated("loop.leg") && !g.stated("loop.link") {
+		link = max(share-leg, 0)
+	}
+	if g.stated("loop.leg") || g.stated("loop.link") {
+		g.in.add(input{key: "loop.link", unit: quantity.Henry, low: link, mid: link, high: link})
 	}
 	g.take("loop.resistance", quantity.Ohm, interval{5e-3, 20e-3, 40e-3}, g.in.class.judged())
+	g.take("loop.damping_ratio", quantity.Ratio, interval{0.02, 0.05, 0.1}, "rings of such loops as scopes show them, judgement")
 }
 
 // freewheel takes the diode that carries the load when the switch is open.
@@ -127,51 +158,35 @@ func (g gatherer) diode(key string) {
 	g.take(key+".forward_recovery.time", quantity.Second, around(time, 2), g.in.class.judged())
 }
 
-// network takes the parts of the snubber. One whose parts are not stated, or that is not worked out, leaves the
-// margin open: taking it as absent would be a guess.
-func (g gatherer) network() {
-	kind, ok := g.b.Word("snubber.kind")
-	switch _, known := networkParts[kind]; {
-	case !ok:
-		g.in.need("snubber.kind", "opening edge (taken as none)")
-		return
-	case kind == "none":
-		return
-	case !known:
-		g.in.need("snubber.kind", "the edge with a "+kind+" network is not worked out yet: none, capacitor, rc and rcd are", forMargin)
+// softness takes how the reverse current of the diode ends. A stated one is read off a test whose own loop makes the
+// diode look harder than it is: it lies between what is stated and three times that (drawn from simulated tests of
+// charge-controlled diodes: 0.25 to 4 times what was read, 2.5 at the median).
+func (g gatherer) softness() {
+	in := g.take("freewheel.softness", quantity.Ratio, interval{0.1, 0.3, 1}, "0.3 where the case is silent")
+	if in.assumed || in.open() {
 		return
 	}
-	if across, _ := g.b.Word("snubber.across"); across == "freewheel" {
-		g.in.need("snubber.across", "the edge with a network across the freewheel diode is not worked out yet: across the switch is", forMargin)
-		return
-	}
-	for _, key := range networkParts[kind] {
-		if !g.stated(key) {
-			g.in.need(key, "network "+kind, forMargin)
-		}
-	}
-	for _, key := range networkParts[kind] {
-		g.take(key, partUnit[key], around(1, 1.2), "")
-	}
-	g.take("snubber.lead_inductance", quantity.Henry, g.in.class.lead, g.in.class.judged())
-	if kind == "rcd" {
-		g.diode("snubber.diode")
-		if g.stated("snubber.diode.slope_resistance") {
-			g.take("snubber.diode.slope_resistance", quantity.Ohm, around(1, 2), "")
-		}
-	}
-	if kind != "capacitor" {
-		g.onTime()
-	}
+	k := g.in.at[in.key]
+	g.in.values[k].low, g.in.values[k].mid, g.in.values[k].high = in.mid, 1.5*in.mid, 3*in.mid
+	g.in.values[k].why = "stated as its test has it, whose loop makes the diode look harder: up to three times that, judgement"
 }
 
-// onTime takes the shortest time the switch is closed, in which the network empties. Silent: a tenth of the period,
-// 2 to 50 % of it; without a frequency five time constants of the network, one to ten (judgement).
-func (g gatherer) onTime() {
-	rc := g.in.mid("snubber.resistance") * g.in.mid("snubber.capacitance")
-	taken, why := interval{rc, 5 * rc, 10 * rc}, "taken as five time constants of the network, judgement: state it"
-	if f := g.value("pwm.frequency"); f > 0 {
-		taken, why = interval{0.02 / f, 0.1 / f, 0.5 / f}, "taken as a tenth of the period, judgement: state it"
+// recovery takes how the diode blocks: its charge as stated, else from the time it takes; a Schottky diode has none.
+func (g gatherer) recovery() {
+	if g.in.mid("freewheel.forward_voltage") < schottkyDrop && !g.stated("freewheel.recovery_charge") {
+		return
 	}
-	g.take("pwm.shortest_on_time", quantity.Second, taken, why)
+	g.softness()
+	if g.stated("freewheel.recovery_charge") {
+		in := g.take("freewheel.recovery_charge", quantity.Coulomb, around(1, 1.5), "")
+		if !in.open() {
+			k := g.in.at[in.key]
+			g.in.values[k].low, g.in.values[k].high = in.low/recoveryDoubt, in.high*recoveryDoubt
+			g.in.values[k].why = "stated at another current, slope or temperature: carried over by the life of the charge, within 1.5 times, judgement"
+		}
+		return
+	}
+	kind, _ := g.b.Word("switch.kind")
+	g.take("freewheel.recovery_time", quantity.Second, around(typicalRecovery(kind, g.value("switch.rated_voltage")), 2),
+		"typical of the kind of diode, judgement")
 }

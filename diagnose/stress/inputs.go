@@ -1,9 +1,9 @@
-// Package stress works out what a board does to its switch: the opening edge of a chopper with the network it has
-// and the network chosen for the rebuild, how high the voltage may go, and whether that stays within the rating.
-// Nothing is guessed in silence: every value a case does not state comes from a table with its interval and reason.
+// Package stress works out what a board does to its switches: the opening and closing edges of choppers and bridges
+// with the network they have and the network chosen for the rebuild, how high the voltage may go, and whether that
+// stays within the rating. Nothing is guessed in silence: every value a case does not state comes from a table with its
+// interval and reason.
 //
-// A high-side chopper is the mirror image of a low-side one: the same circuit with the rails exchanged, so the same
-// figures hold.
+// A high side is the mirror image of a low side: the same circuit with the rails exchanged, so the same figures hold.
 package stress
 
 import (
@@ -37,6 +37,7 @@ type input struct {
 	mid, low, high float64
 	assumed        bool
 	why            string
+	edge           string // turn-off or turn-on where it moves only that one; the turn-on is graded in legs only
 }
 
 // at gives the point at share x of the interval: on a logarithmic scale, or straight where it may be nothing.
@@ -60,16 +61,22 @@ func (in input) open() bool { return in.low < in.high }
 
 // inputs are the numbers of one board's edge, in a fixed order.
 type inputs struct {
-	class  class
-	bank   int
-	values []input
-	at     map[string]int
-	needs  []Need
+	class   class
+	bank    int
+	farBank int // of the opposite switch of a leg
+	values  []input
+	at      map[string]int
+	needs   []Need
 }
 
 func (in *inputs) add(i input) {
 	in.at[i.key] = len(in.values)
 	in.values = append(in.values, i)
+}
+
+func (in *inputs) has(key string) bool {
+	_, ok := in.at[key]
+	return ok
 }
 
 func (in *inputs) mid(key string) float64 {
@@ -83,19 +90,52 @@ func (in *inputs) need(key string, forWhat ...string) {
 	in.needs = append(in.needs, Need{key, forWhat})
 }
 
-// gather reads the board's numbers for the opening edge; what is missing becomes typical or a need.
-func gather(b measure.Board) *inputs {
-	in := &inputs{class: classOf(b), at: map[string]int{}, bank: 1}
-	g := gatherer{b, in}
-	g.parallel()
+// gather reads the numbers of one place for its edges; what is missing becomes typical or a need.
+func gather(at place) *inputs {
+	in := &inputs{class: classOf(at.own), at: map[string]int{}, bank: 1}
+	g := gatherer{at.own, in}
+	g.parallel(at.position)
 	g.supply()
 	g.current()
 	g.device()
 	g.loop()
 	g.freewheel()
+	g.recovery()
 	g.network()
 	g.cold()
+	if at.leg() {
+		g.far(at.far, at.opposite)
+	}
+	for key, edge := range oneEdge {
+		if k, ok := in.at[key]; ok {
+			in.values[k].edge = edge
+		}
+	}
 	return in
+}
+
+// oneEdge lists the inputs that move only one of the edges.
+var oneEdge = map[string]string{
+	"switch.fall_time": turnOff, "switch.rise_slope": turnOff, "pwm.shortest_on_time": turnOff,
+	"freewheel.forward_recovery.voltage": turnOff, "freewheel.forward_recovery.time": turnOff,
+	"switch.turn_on_slope": turnOn, "switch.closing_slope": turnOn, "freewheel.recovery_charge": turnOn,
+	"freewheel.recovery_time": turnOn, "freewheel.softness": turnOn,
+	oppositeSwitch + "switch.turn_on_slope": turnOn, oppositeSwitch + "switch.closing_slope": turnOn,
+}
+
+// far takes what the opposite switch of a leg has otherwise than this one.
+func (g gatherer) far(b measure.Board, position string) {
+	in := &inputs{class: g.in.class, at: map[string]int{}, bank: 1}
+	gatherer{b, in}.parallel(position)
+	gatherer{b, in}.device()
+	g.in.farBank = in.bank
+	for _, key := range []string{"switch.output_capacitance", "switch.package_inductance", "switch.turn_on_slope", "switch.closing_slope"} {
+		own, other := g.in.values[g.in.at[key]], in.values[in.at[key]]
+		if own.low != other.low || own.mid != other.mid || own.high != other.high {
+			other.key = oppositeSwitch + key
+			g.in.add(other)
+		}
+	}
 }
 
 type gatherer struct {
@@ -113,9 +153,20 @@ func (g gatherer) value(key string) float64 {
 	return q.Value
 }
 
-// take adds a key's stated value, or the typical one over its interval. A value that is stated as assumed gets the
-// relative width of the typical one, unless it states its own.
-func (g gatherer) take(key string, unit quantity.Unit, typical interval, why string) input {
+// known is an interval that other statements of the case give, with the reason; empty when they do not.
+type known struct {
+	interval
+	why string
+}
+
+// take adds a key's stated value, or the typical one over its interval, or what other statements give. A value that is
+// stated as assumed gets the relative width of the typical one, unless it states its own.
+func (g gatherer) take(key string, unit quantity.Unit, typical interval, why string, given ...known) input {
+	for _, k := range given {
+		if k.why != "" {
+			typical, why = k.interval, k.why
+		}
+	}
 	i := input{key: key, unit: unit, low: typical.low, mid: typical.mid, high: typical.high, assumed: true, why: why}
 	if q, ok := g.b.Quantity(key); ok {
 		i.low, i.mid, i.high = q.Low, q.Value, q.High
@@ -131,13 +182,17 @@ func (g gatherer) take(key string, unit quantity.Unit, typical interval, why str
 	return i
 }
 
-// parallel takes how many devices share the current.
-func (g gatherer) parallel() {
-	if q, ok := g.b.Quantity("positions.parallel"); ok && q.Value >= 1 {
-		g.in.bank = int(q.Value)
+// parallel takes how many devices of a position share the current.
+func (g gatherer) parallel(position string) {
+	if _, ok := g.b.Quantity("positions.parallel"); !ok {
+		g.in.add(input{key: "positions.parallel", unit: quantity.Count, low: 1, mid: 1, high: 1, assumed: true, why: "no parts are named: taken as a single device"})
 		return
 	}
-	g.in.add(input{key: "positions.parallel", unit: quantity.Count, low: 1, mid: 1, high: 1, assumed: true, why: "no parts are named: taken as a single device"})
+	for _, p := range g.b.Positions() {
+		if p.Name == position {
+			g.in.bank = len(p.Parts)
+		}
+	}
 }
 
 // supply takes the bus. The highest voltage, when silent, is the mains at +10 %, a charged battery at +20 %, or the

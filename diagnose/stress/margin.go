@@ -1,6 +1,7 @@
 package stress
 
 import (
+	"fmt"
 	"slices"
 
 	"drivemend/measure"
@@ -28,20 +29,90 @@ type Margin struct {
 	Needs   []Need
 }
 
-// Figures are the peaks of one board with one network.
+// Figures are the peaks of one board with one network, at the position where they are highest over the rating.
 type Figures struct {
-	Network      Network
-	Position     string
-	Rated        float64 // V, at the coldest junction, of this board's switch
-	Nominal      *Edge   // gate-limited, nominal bus, running current
-	Cut          *Edge   // cut, nominal bus, running current
-	Highest      *Edge   // gate-limited, highest bus, worst current, middle of every interval
-	ShortCircuit *Edge   // gate-limited, highest bus, stated short-circuit current; nil when that is not stated
+	Network  Network
+	Position string
+	Alike    []string // positions with the same figures, this one first
+	Rated    float64  // V, at the coldest junction, of this position's switch
+	Nominal  *Edge    // gate-limited, nominal bus, running current: the edge that is highest
+	Cut      *Edge    // cut, nominal bus, running current
+	Highest  *Edge    // gate-limited, highest bus, worst current, middle of every interval: the edge that is highest
+	// Edges are the edges at nominal bus and running current. A chopper's turn-on is seen at its diode, and only given when
+	// the diode's recovery and the slope of the current are stated.
+	Edges        []*Edge
+	ShortCircuit *Edge // gate-limited, highest bus, stated short-circuit current; nil when that is not stated
 	Worst        Worst
 	P999         Percentile
+	Avalanche    *Avalanched // nil when the chip stays below its rating, or cannot avalanche
+	Clamp        *Clamped    // nil without a clamp
+	PumpUp       *PumpedUp   // nil unless the tie of a recovery network is open
+	Duty         *Duty       // nil without a network
+	LastPart     *LastPart   // nil without parallel parts and a stated spread of their delays
+	Measured     *FromCapture
 	Verdict      Verdict
 	LiftedBy     []string // the answers that would lift a verdict held down for want of them
 	Rests        []string // what a verdict rests on, in words with the safe interval
+}
+
+// Avalanched is what a MOSFET takes up in avalanche, at the highest bus and worst current; all of it on the one device
+// that breaks down first, at its rating.
+type Avalanched struct {
+	Prospective float64 // V, the peak if it did not avalanche
+	Volt        float64 // V, taken as its breakdown
+	Energy      float64 // J, each edge
+	Time        float64 // s
+	Current     float64 // A, highest
+	Rise        float64 // K of the junction in one pulse; 0 when no thermal ladder is stated
+	EveryCycle  bool    // at the nominal bus and running current too
+	OverEnergy  bool    // above the rated energy
+	OverCurrent bool    // above the rated current
+	Rated       bool    // energy and current of one pulse are stated
+}
+
+// Clamped is the balance of a clamp at the PWM frequency and worst current.
+type Clamped struct {
+	Volt   float64 // V, held; as stated, or where the resistor leaves it
+	Stated bool
+	Watts  float64 // into the resistor, at the PWM frequency; 0 when that is not stated
+	Charge float64 // C, each edge
+	Ripple float64 // V, each edge
+}
+
+// PumpedUp is the reservoir of a recovery network whose tie is open.
+type PumpedUp struct {
+	FirstEdge float64 // V, gained by the first edge at the running current
+	End       float64 // V, where it ends
+	EndsBy    string  // breakdown
+	Edges     float64 // until then
+	Time      float64 // s until then; 0 when the PWM frequency is not stated
+}
+
+// Duty is what the network goes through each PWM cycle, at the nominal bus and running current.
+type Duty struct {
+	CapacitorRMS  float64 // A; 0 when the PWM frequency is not stated
+	CapacitorPeak float64 // A
+	Slope         float64 // V/s, of the capacitor
+	ResistorWatts float64 // W; 0 when the PWM frequency is not stated
+	Discharge     float64 // A, into the switch that closes
+	Emptied       float64 // share of its charge that leaves within the shortest on-time
+}
+
+// LastPart is the part of a bank that opens last.
+type LastPart struct {
+	Current float64 // A, highest
+	Energy  float64 // J, each opening, at the worst current
+	Share   float64 // of the bank's current that it carries in the end
+}
+
+// FromCapture is the edge at the highest bus and worst current as a measured edge foretells it.
+type FromCapture struct {
+	Name           string  // of the capture or the stage
+	Low, Mid, High float64 // V, peak
+	Why            string  // by which law it was carried over
+	Loop           float64 // H, loop inductance found from it; 0 when it does not say enough
+	LoopLow        float64
+	LoopHigh       float64
 }
 
 // Network is a snubber with its parts.
@@ -61,8 +132,8 @@ type Part struct {
 // hand the current to a network faster, goes higher.
 type Worst struct {
 	Peak   float64
-	Edge   string // turn-off
-	Shape  string // cut, gate-limited
+	Edge   string // turn-off, turn-on, all-off
+	Shape  string // cut, gate-limited, ramp
 	Corner []Corner
 }
 
@@ -113,59 +184,119 @@ func Grade(share float64) Verdict {
 // the solver refuses; the error is always nil so far.
 func Compute(c *measure.Case, seed uint64) (*Margin, error) {
 	m := &Margin{Case: c.ID}
-	m.AsFound = m.figures(c.Board, seed)
+	found, rebuilt := openingsOf(c)
+	m.AsFound = m.figures(c.Board, found, seed)
 	if c.Rebuild != nil && len(c.Rebuild.Keys) > 0 {
 		m.Chosen = true
-		m.Rebuild = m.figures(c.Rebuild.Board, seed)
+		m.Rebuild = m.figures(c.Rebuild.Board, rebuilt, seed)
 	}
 	return m, nil
 }
 
-// figures works out one board and adds its assumptions and needs to the margin; nil when it cannot be worked out.
-func (m *Margin) figures(b measure.Board, seed uint64) *Figures {
-	p, needs := prepare(b)
+// figures works out one board and adds its assumptions and needs to the margin; nil when it cannot be worked out. Of
+// several unlike positions the one counts that comes nearest to its rating, or furthest over it.
+func (m *Margin) figures(b measure.Board, openings []seen, seed uint64) *Figures {
+	problems, needs := prepareAll(b)
 	m.addNeeds(needs)
-	if p == nil {
-		return nil
+	var worst *Figures
+	for _, p := range problems {
+		f := &Figures{Network: p.network(), Position: p.position, Alike: p.alike, Rated: p.rated}
+		err := p.edgesOf(f)
+		if err == nil {
+			f.Measured, err = p.fromCapture(openings)
+		}
+		if err == nil {
+			err = m.judge(f, p, seed)
+		}
+		if err != nil {
+			m.addNeeds([]Need{{unsolved, []string{forMargin, err.Error()}}})
+			return nil
+		}
+		if worst == nil || f.P999.Peak/f.Rated > worst.P999.Peak/worst.Rated {
+			worst = f
+			m.Rated, m.Stated, m.Allowed = p.rated, p.stated, withinShare*p.rated
+		}
 	}
-	if m.Rated == 0 {
-		m.Rated, m.Stated, m.Allowed = p.rated, p.stated, withinShare*p.rated
-	}
-	f := &Figures{Network: p.network(), Position: p.position, Rated: p.rated}
-	err := p.edges(f)
-	if err == nil {
-		err = m.judge(f, p, seed)
-	}
-	if err != nil {
-		m.addNeeds([]Need{{unsolved, []string{forMargin, err.Error()}}})
-		return nil
-	}
-	return f
+	return worst
 }
 
-// edges solves the edges that are shown with their waveforms.
-func (p *problem) edges(f *Figures) error {
-	solve := func(into **Edge, s scene, shape edgeShape) error {
-		e, err := shape(s)
-		if err == nil {
-			e.Position = p.position
-			*into = e
+// edgesOf solves the edges that are shown with their waveforms, and what follows from them.
+func (p *problem) edgesOf(f *Figures) error {
+	edges, err := p.cycle()
+	if err != nil {
+		return err
+	}
+	for _, e := range edges {
+		if e.Name != turnOn || p.closingKnown() {
+			f.Edges = append(f.Edges, e)
 		}
+	}
+	f.Duty = p.duty(edges)
+	f.Nominal = topEdge(f.Edges, p.leg())
+	if f.Cut, err = p.placed(isCut, p.nominal()); err != nil {
 		return err
 	}
-	if err := solve(&f.Nominal, p.nominal(), scene.gateLimited); err != nil {
-		return err
-	}
-	if err := solve(&f.Cut, p.nominal(), scene.cut); err != nil {
-		return err
-	}
-	if err := solve(&f.Highest, p.highest(), scene.gateLimited); err != nil {
-		return err
+	for _, g := range p.edges {
+		e, err := p.placed(g, p.highest())
+		if err != nil {
+			return err
+		}
+		if f.Highest == nil || e.Peak > f.Highest.Peak {
+			f.Highest = e
+		}
 	}
 	if s, ok := p.shortCircuit(); ok {
-		return solve(&f.ShortCircuit, s, scene.gateLimited)
+		if f.ShortCircuit, err = p.placed(opens, s); err != nil {
+			return err
+		}
 	}
-	return nil
+	return p.consequences(f)
+}
+
+// cycle is the opening and, where something takes the current over, the closing, at the nominal bus and running current.
+func (p *problem) cycle() ([]*Edge, error) {
+	list := []graded{opens}
+	if p.base.free {
+		list = append(list, closes)
+	}
+	var out []*Edge
+	for _, g := range list {
+		e, err := p.placed(g, p.nominal())
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, e)
+	}
+	return out, nil
+}
+
+// closingKnown tells whether the closing edge is shown. That of a leg always is, since it counts; what a chopper's
+// freewheel diode sees is guesswork without its recovery and the slope of the current.
+func (p *problem) closingKnown() bool {
+	return p.leg() || len(p.liftsClosing()) == 0
+}
+
+// topEdge is the highest of the edges that count; the closing of a chopper does not, its peak stands at the diode.
+func topEdge(edges []*Edge, leg bool) *Edge {
+	var top *Edge
+	for _, e := range edges {
+		if (e.Name != turnOn || leg) && (top == nil || e.Peak > top.Peak) {
+			top = e
+		}
+	}
+	return top
+}
+
+// placed solves an edge and names where its voltage stands.
+func (p *problem) placed(g graded, s scene) (*Edge, error) {
+	e, err := g.in(s)
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", g.name, err)
+	}
+	if e.Position = p.position; g.name == turnOn && !p.leg() {
+		e.Position = atFreewheel
+	}
+	return e, nil
 }
 
 // judge scans the unknowns, draws the percentile and gives the verdict.
@@ -191,6 +322,9 @@ func (m *Margin) judge(f *Figures, p *problem, seed uint64) error {
 // the peak over the bound; else it is thin.
 func (p *problem) verdict(f *Figures, scan []scanned) error {
 	f.Verdict = Grade(f.P999.Peak / p.rated)
+	if f.PumpUp != nil && f.PumpUp.EndsBy == StopBreakdown {
+		f.Verdict = OverIt // whatever a single edge does
+	}
 	if f.Verdict != Within {
 		return nil
 	}

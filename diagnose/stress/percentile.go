@@ -22,7 +22,7 @@ type drawn struct {
 
 // percentile draws the unknowns 400 times, each log-uniform over its interval (a quantity that may be nothing:
 // uniform), at the highest bus and worst current, which are held, and gives the 99.9th percentile of the
-// gate-limited peak, and the draw with the highest one.
+// highest peak of the graded edges, and the draw with the highest one.
 func (p *problem) percentile(seed uint64) (Percentile, scene, error) {
 	sample, err := p.draw(seed, draws)
 	if err != nil {
@@ -39,7 +39,7 @@ func (p *problem) percentile(seed uint64) (Percentile, scene, error) {
 // draw solves n boards; equal seeds give equal boards.
 func (p *problem) draw(seed uint64, n int) ([]drawn, error) {
 	random := rand.New(rand.NewPCG(seed, drawStream))
-	unknowns := p.unknowns()
+	unknowns := p.unknowns("")
 	out := make([]drawn, n)
 	for k := range out {
 		s := p.highest().quick()
@@ -52,7 +52,7 @@ func (p *problem) draw(seed uint64, n int) ([]drawn, error) {
 		out[k].s = s
 	}
 	return out, each(n, func(k int) error {
-		e, err := out[k].s.gateLimited()
+		e, err := p.highestEdge(out[k].s, p.edges...)
 		if err == nil {
 			out[k].peak = e.Peak
 		}

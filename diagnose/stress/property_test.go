@@ -122,8 +122,13 @@ func TestSeedDecidesPercentile(t *testing.T) {
 func stripped(m *Margin) string {
 	f := *m.AsFound
 	nominal, cut, highest := *f.Nominal, *f.Cut, *f.Highest
-	f.Nominal, f.Cut, f.Highest = nil, nil, nil
-	return fmt.Sprintf("%+v %+v %+v %+v %+v %+v", f, nominal, cut, highest, m.Assumed, m.Needs)
+	edges, duty := "", *f.Duty
+	for _, e := range append(f.Edges, &nominal, &cut, &highest) {
+		e.run = nil
+		edges += fmt.Sprintf("%+v", *e)
+	}
+	f.Nominal, f.Cut, f.Highest, f.Edges, f.Duty = nil, nil, nil, nil, nil
+	return fmt.Sprintf("%+v %s %+v %+v %+v", f, edges, duty, m.Assumed, m.Needs)
 }
 
 // Boards of any values that a case file may hold: a figure or a need, no panic, no error, not for ever. Most of them

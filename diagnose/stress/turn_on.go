@@ -1,0 +1,134 @@
+package stress
+
+import (
+	"math"
+
+	"drivemend/diagnose/circuit"
+)
+
+const (
+	recoverySteps = 100  // straight pieces of the recovery's fall, a sixth of them where only the peak is wanted
+	bendSteps     = 96   // straight pieces of a voltage that its gate bends, a sixth of them where only the peak is wanted
+	recoverySpan  = 8.0  // time constants of it that are followed
+	leftForward   = 1e-6 // of the load current that the diode may still carry when it is taken as blocking
+	rampSpan      = 10.0 // how far the closing channel's ramp goes on, over load and recovery current
+	refillSpan    = 5.0  // time constants of a network that empties through its resistor, followed for its heat
+)
+
+// closingSlope is the current slope of the bank that closes.
+func (s scene) closingSlope() float64 {
+	bank := s.in.bank
+	if s.leg {
+		bank = s.in.farBank
+	}
+	return s.opposite("switch.turn_on_slope") * float64(max(bank, 1)) * math.Max(s.steep, 1)
+}
+
+// turnOn solves the closing edge: the opposite switch takes the load current over on a ramp, the victim's diode
+// recovers, and the closing switch's voltage then falls no faster than its gate lets it. The victim's network starts
+// empty, that of the closing switch at the bus.
+func (s scene) turnOn() (*Edge, error) {
+	s, err := s.settled()
+	if err != nil {
+		return nil, err
+	}
+	c, r := s.closing(), s.recovery()
+	slope := s.closingSlope()
+	whole := (s.amps + r.amps) / slope
+	drain := c.Node("drain")
+	c.Voltage("surge", c.chip, drain, circuit.Constant(0))
+	c.Current("channel", drain, 0, circuit.Waveform{{T: 0, V: 0}, {T: rampSpan * whole, V: rampSpan * (s.amps + r.amps)}})
+	c.Voltage("floor-level", c.Node("floor"), 0, circuit.Constant(0))
+	c.Diode("floor", c.Node("floor"), drain, 0, floorSlope)
+	c.Current("recovery", c.far, c.load, circuit.Constant(r.amps))
+	if s.lifts > 0 {
+		c.Voltage("ramp", c.Node("ramp"), c.load, circuit.Constant(s.beyond()))
+		c.Diode("hold", c.far, c.Node("ramp"), 0, channelSlope)
+	}
+	run, probe, err := s.start(c)
+	if err != nil {
+		return nil, err
+	}
+	surge := run.ProbeCurrent("surge")
+	rises := (s.amps + r.amps) / math.Min(slope, s.bus/s.commutation()) // where the loop is slower than the switch
+	reached, err := run.To(3*rises+s.afterClosing(r), run.ProbeCurrent("loop"), s.amps*(1-leftForward)+r.amps)
+	if err == nil && reached {
+		err = c.block(run, probe, r)
+	}
+	e := c.read(run, probe, Edge{Name: turnOn, Shape: shapeRamp})
+	e.Surge, _ = run.Peak(surge)
+	return e, err
+}
+
+// block is the closing from the moment the diode blocks.
+func (c *cell) block(run *circuit.Run, probe int, r recovered) error {
+	t, level := run.Time(), run.Voltage(c.chip, 0)
+	run.Retarget("recovery", r.fall(t, c.s.pieces(recoverySteps)))
+	if level > 0 {
+		run.Retarget("floor-level", c.s.collapse(t, level))
+	}
+	if c.s.lifts > 0 && c.s.lifts < c.s.bus {
+		reached, err := c.climbTo(run, probe, c.s.lifts, t+c.s.afterClosing(r))
+		if err != nil || !reached {
+			return err
+		}
+		run.Retarget("ramp", c.s.selfTurnOn(run.Time()))
+	}
+	return c.follow(run, probe, t+c.s.afterClosing(r))
+}
+
+// collapse is the fall of the closing switch's voltage from a level at time t. At the bus its gate lets it fall at the
+// closing slope; the capacitance to the gate grows as the voltage falls, with its root, so that it ends as a parabola.
+func (s scene) collapse(t, level float64) circuit.Waveform {
+	whole := 2 * math.Sqrt(level*s.bus) / s.fallSlope()
+	w := circuit.Waveform{{T: t, V: level}}
+	pieces := s.pieces(bendSteps)
+	for k := 1; k <= pieces; k++ {
+		x := float64(k) / float64(pieces)
+		w = append(w, circuit.Point{T: t + x*whole, V: level * (1 - x) * (1 - x)})
+	}
+	return w
+}
+
+// selfTurnOn is the highest voltage that the victim can have from the moment its rise has lifted its own gate: risen
+// faster, it would conduct. C_gc falls with the root of the voltage, so that the slope grows with it, to that of an
+// opening at the bus: √v rises evenly.
+func (s scene) selfTurnOn(t float64) circuit.Waveform {
+	from, pace := math.Sqrt(s.lifts), s.get("switch.rise_slope")/(2*math.Sqrt(s.bus))
+	whole := 3 * math.Sqrt(s.bus) / pace
+	pieces := s.pieces(bendSteps)
+	var w circuit.Waveform
+	for k := 0; k <= pieces; k++ {
+		x := float64(k) / float64(pieces) * whole
+		w = append(w, circuit.Point{T: t + x, V: (from + pace*x) * (from + pace*x)})
+	}
+	return append(w, circuit.Point{T: t + 2*whole, V: math.Max(s.beyond(), w[len(w)-1].V)})
+}
+
+// fall is the reverse current of a diode from the moment it blocks, in straight pieces.
+func (r recovered) fall(t float64, pieces int) circuit.Waveform {
+	if r.amps <= 0 || r.time <= 0 {
+		return circuit.Constant(0)
+	}
+	w := circuit.Waveform{{T: t, V: r.amps}}
+	for k := 1; k <= pieces; k++ { // shorter pieces where it bends more
+		x := -2 * math.Log1p(-float64(k)/float64(pieces)*(1-math.Exp(-recoverySpan/2)))
+		w = append(w, circuit.Point{T: t + x*r.time, V: r.amps * math.Exp(-x)})
+	}
+	w[len(w)-1].V = 0
+	return w
+}
+
+// fallSlope is how fast the voltage of the closing switch falls.
+func (s scene) fallSlope() float64 { return s.opposite("switch.closing_slope") }
+
+// afterClosing is how long a closing is followed once the diode blocks: recovery, fall and some turns of the slowest
+// ring; where the heat is wanted, until the network of the closing switch has emptied.
+func (s scene) afterClosing(r recovered) float64 {
+	farad := s.ringFarad() + s.freewheelFarad()
+	span := recoverySpan*r.time + 2*s.bus/s.fallSlope() + s.turns()*2*math.Pi*math.Sqrt(s.henry()*farad)
+	if !s.fast {
+		span += refillSpan * s.get("snubber.resistance") * s.networkFarad()
+	}
+	return span
+}
