@@ -339,6 +339,18 @@ type comparison struct {
 	wrong         []string
 }
 
+// heldTop tells that the top of a ring has no moment of its own: a clamp or a reservoir holds it down, or an unclamped load
+// goes on driving it up.
+func (b sample) heldTop(peak float64) bool {
+	switch b.net {
+	case "clamp", "suppressor":
+		return peak > b.clamp
+	case "recovery":
+		return true
+	}
+	return b.topology == "unclamped"
+}
+
 // compare solves one board twice.
 func compare(n int, of recipe, dir string) comparison {
 	c := comparison{energies: map[string]float64{}}
@@ -374,7 +386,7 @@ func compare(n int, of recipe, dir string) comparison {
 	}
 	var own spiced // a ring is clear when both ways of reading it off the solver's own curve agree
 	own.swings(got.Waveform)
-	if clear := want.swing > clearRing*b.bus && relative(own.swing, want.swing) < 0.1; clear && !own.broad && relative(own.ring, got.Ring) < 0.01 && want.ring > 0 {
+	if clear := want.swing > clearRing*b.bus && relative(own.swing, want.swing) < 0.1; clear && !own.broad && !b.heldTop(want.peak) && relative(own.ring, got.Ring) < 0.01 && want.ring > 0 {
 		c.rang = true
 		if c.ring = relative(got.Ring, want.ring); !(c.ring <= ringTolerance) {
 			fail("ring %.4g Hz, ngspice %.4g Hz", got.Ring, want.ring)
