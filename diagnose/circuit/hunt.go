@@ -80,7 +80,7 @@ func (r *Run) aim(dt float64) {
 		}
 		r.bothRates(dt)
 		da, db := r.slopes(k)
-		first = math.Min(first, cubic(a-least, da*dt, b-least, db*dt).crossing())
+		first = math.Min(first, cubic(a-least, float64(da*dt), b-least, float64(db*dt)).crossing())
 	}
 	if r.goal = 0; first < 2 {
 		r.goal, r.sight = r.tau+float64(first*dt), dt/sightShare
@@ -92,8 +92,9 @@ type third [4]float64
 
 // cubic gives the one through a and b with slopes da and db there.
 func cubic(a, da, b, db float64) third {
-	rise := b - a
-	return third{a, da, float64(3*rise) - float64(2*da) - db, da + db - float64(2*rise)}
+	rise, twice := b-a, da+da
+	double := rise + rise
+	return third{a, da, double + rise - twice - db, da + db - double}
 }
 
 func (p third) at(t float64) float64 {
@@ -129,7 +130,7 @@ func (r *Run) bothRates(dt float64) {
 // below within dt: the least value of the cubic through both ends, and a share of its depth for what the cubic misses
 // (of a ring followed at 16 points a period, 1e-4 of its size).
 func dip(a, da, b, db, dt float64) float64 {
-	p := cubic(a, da*dt, b, db*dt)
+	p := cubic(a, float64(da*dt), b, float64(db*dt))
 	bottom := -p[1] / (p[2] + math.Sqrt(math.Max(0, float64(p[2]*p[2])-float64(3*p[3]*p[1]))))
 	least := p.at(bottom)
 	return least - float64(dipGuard*(math.Min(a, b)-least))
