@@ -26,7 +26,7 @@ var figureBoards = map[string]string{
 		"freewheel: {fitted: yes}\nloop: {inductance: 40 nH}\nsnubber: {kind: none}\nload: {running_current: 5 A, stall_current: 10 A}",
 	"clamp": "topology: low-side-chopper\nbus: {nominal: 310 V}\nswitch: {kind: igbt, rated_voltage: 600 V, rated_current: 40 A, fall_time: 100 ns}\nfreewheel: {fitted: yes}\n" +
 		"loop: {inductance: 100 nH}\nsnubber: {kind: clamp, capacitance: 1 µF, clamp_voltage: 430 V, resistance: 1 kΩ}\nload: {running_current: 20 A}",
-	"wild bridge": "topology: h-bridge\nsupply: battery\nbus: {nominal: 48 V, highest: 56 V}\nswitch: {kind: mosfet, rated_voltage: 75 V, rated_current: 80 A, fall_time: 20 ns, rise_slope: 20 V/ns, turn_on_slope: 3 A/ns, avalanche: {energy: 20 µJ}}\n" +
+	"wild bridge": "topology: h-bridge\nsupply: battery\nbus: {nominal: 48 V, highest: 56 V}\nswitch: {kind: mosfet, rated_voltage: 75 V, rated_current: 80 A, fall_time: 20 ns, rise_slope: 40 V/ns, turn_on_slope: 3 A/ns, avalanche: {energy: 20 µJ}}\n" +
 		"freewheel: {fitted: yes, recovery_charge: 800 nC}\nloop: {inductance: 150 nH}\nsnubber: {kind: none}\nload: {running_current: 60 A, stall_current: 160 A}",
 	"tame bridge": "topology: h-bridge\nsupply: battery\nbus: {nominal: 24 V, highest: 28 V}\nswitch: {kind: mosfet, rated_voltage: 200 V, rated_current: 80 A, fall_time: 200 ns, rise_slope: 0.2 V/ns, output_capacitance: 5 nF, turn_on_slope: 0.02 A/ns, avalanche: {energy: 300 mJ}}\n" +
 		"freewheel: {fitted: yes, forward_voltage: 0.5 V, recovery_charge: 5 nC}\nloop: {inductance: 15 nH}\nsnubber: {kind: none}\nload: {running_current: 3 A, stall_current: 6 A}",
@@ -92,7 +92,7 @@ func TestComputedVotes(t *testing.T) {
 		{"wild bridge", "predicted-avalanche", 2, 12},
 		{"tame bridge", "predicted-avalanche", -12, -1},
 		{"bare bridge", "predicted-avalanche", -3, 3},
-		{"wild bridge", "predicted-slope", 0.3, 3},
+		{"wild bridge", "predicted-slope", 0.5, 3},
 		{"tame bridge", "predicted-slope", -3, -0.5},
 		{"bare bridge", "predicted-slope", -3, 3},
 	} {

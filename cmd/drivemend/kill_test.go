@@ -375,11 +375,13 @@ func TestKilledAnyTime(t *testing.T) {
 		k.benchRound(r, saving)
 	}
 	k.enterRounds(want - k.kills())
+	for k.parts < want/20 && k.kills() < 3*want && !t.Failed() { // a fast disk is seldom caught at writing
+		k.enterRounds(want / 10)
+	}
 	t.Logf("%d kills in %.0f s %v: %d left a half-written file, %d a lock file, %d an empty try of the folder; %d answers acknowledged, %d lost; "+
 		"%d times the answer was on disk before it was acknowledged, %d times there was no file yet; %d sessions went on",
 		k.kills(), time.Since(began).Seconds(), k.during, k.parts, k.locks, k.tries, k.acknowledged, k.lost, k.early, k.fresh, k.resumed)
-	// How many kills hit the writing itself depends on the machine: of 200, 9 on an idle one and 54 on a loaded one.
-	if k.parts < want/100 {
-		t.Errorf("only %d kills hit a save while it wrote, want %d", k.parts, want/100)
+	if k.parts < want/20 {
+		t.Errorf("only %d kills hit a save while it wrote, want %d", k.parts, want/20)
 	}
 }

@@ -7,7 +7,6 @@ import (
 	"io"
 	"io/fs"
 	"os"
-	"path/filepath"
 	"slices"
 	"strings"
 
@@ -157,27 +156,4 @@ func noEdge(path string, m *stress.Margin, err error) error {
 		keys = append(keys, need.Key)
 	}
 	return wrongInput(path+": "+err.Error()+"; it needs "+strings.Join(keys, ", "), "what each is for: drivemend margin "+quoted(path), "enter it: drivemend enter "+quoted(path)+" KEY VALUE")
-}
-
-// putFile writes a file beside its place and puts it there in one step.
-func putFile(file string, content []byte) error {
-	temp, err := os.CreateTemp(filepath.Dir(file), ".drivemend-netlist-*")
-	if err != nil {
-		return wrongInput(file + ": cannot be written: " + err.Error())
-	}
-	defer os.Remove(temp.Name()) // not there any more once it was renamed
-	_, err = temp.Write(content)
-	if e := temp.Close(); err == nil {
-		err = e
-	}
-	if err == nil {
-		err = os.Chmod(temp.Name(), 0o644)
-	}
-	if err == nil {
-		err = os.Rename(temp.Name(), file)
-	}
-	if err != nil {
-		return wrongInput(file + ": cannot be written: " + err.Error())
-	}
-	return nil
 }

@@ -78,12 +78,17 @@ func writeReport(file string, r reports.Report) error {
 	if err := formats[strings.ToLower(filepath.Ext(file))](&page, r); err != nil {
 		return fmt.Errorf("%s: %w", file, err)
 	}
-	temp, err := os.CreateTemp(filepath.Dir(file), ".drivemend-report-*")
+	return putFile(file, page.Bytes())
+}
+
+// putFile writes a file beside its place and puts it there in one step: it is whole or not there.
+func putFile(file string, content []byte) error {
+	temp, err := os.CreateTemp(filepath.Dir(file), ".drivemend-file-*")
 	if err != nil {
 		return wrongInput(file + ": cannot be written: " + err.Error())
 	}
 	defer os.Remove(temp.Name()) // not there any more once it was renamed
-	_, err = temp.Write(page.Bytes())
+	_, err = temp.Write(content)
 	if e := temp.Close(); err == nil {
 		err = e
 	}

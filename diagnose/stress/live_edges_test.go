@@ -17,7 +17,6 @@ import (
 type spiced struct {
 	peak, ring float64
 	swing      float64 // V, from the peak to the trough after it
-	broad      bool    // the top is held down by a clamp, and has no moment of its own
 	energies   map[string]float64
 	held       float64 // A, what the channel carried when the chip was at the bus
 	file       string
@@ -31,7 +30,8 @@ func (b sample) victim() string {
 	return "v(chip)"
 }
 
-// step is the longest that ngspice may take: a fortieth of the fastest ring of the chip.
+// step is the longest that ngspice may take: a fortieth of the fastest ring of the chip, which a network's lead beside the
+// loop makes faster. (The decks of whole bridges do not come through with so short a step; their rings agree without.)
 func (b sample) step(window float64) float64 {
 	farad := b.farad * float64(b.bank)
 	for _, other := range []float64{b.farFarad * float64(b.farBank), b.junction} {
@@ -39,7 +39,14 @@ func (b sample) step(window float64) float64 {
 			farad = math.Min(farad, other)
 		}
 	}
-	ring := 2 * math.Pi * math.Sqrt((b.loop+b.pack/float64(b.bank))*farad)
+	henry := b.loop
+	if b.net != "none" && b.net != "decoupling" && b.topology != "all-off" {
+		henry = b.loop * b.lead / (b.loop + b.lead)
+	}
+	ring := 2 * math.Pi * math.Sqrt((henry+b.pack/float64(b.bank))*farad)
+	if b.edge == shapeRamp { // with a fortieth ngspice itself was 4 % off on one board (with an eightieth 0.01 %)
+		ring /= 2
+	}
 	return math.Min(window/1000, ring/40)
 }
 
@@ -133,37 +140,47 @@ func (d *deck) run(dir, name string) (map[string]float64, error) {
 	return nil, failure
 }
 
-// swings reads the ring off a curve: from its highest point to the next crest.
+// swings reads the ring off a curve: its highest point, the lowest one before the curve has come back by a fifth of the
+// swing, the highest one before it has gone down by as much again; the turn is timed where the curve falls through the
+// middle between that trough and that crest, after either top.
 func (s *spiced) swings(w []Sample) {
-	if len(w) < 3 {
-		return
-	}
 	top := 0
 	for k := range w {
 		if w[k].V > w[top].V {
 			top = k
 		}
 	}
-	trough := top
-	for trough+1 < len(w) && w[trough+1].V <= w[trough].V {
-		trough++
+	trough, k := top, top
+	for ; k < len(w) && w[k].V-w[trough].V <= 0.2*(w[top].V-w[trough].V); k++ {
+		if w[k].V < w[trough].V {
+			trough = k
+		}
 	}
-	crest := trough
-	for crest+1 < len(w) && w[crest+1].V >= w[crest].V {
-		crest++
+	if k == len(w) || trough == top {
+		return
 	}
 	s.swing = w[top].V - w[trough].V
-	if top > 0 && trough < len(w)-1 && crest < len(w)-1 {
-		s.ring = 1 / (w[crest].T - w[top].T)
+	crest := trough
+	for ; k < len(w) && w[crest].V-w[k].V <= 0.2*s.swing; k++ {
+		if w[k].V > w[crest].V {
+			crest = k
+		}
 	}
-	from, to := top, top // the top of a sine has a fiftieth of the swing over 9 % of the turn
-	for from > 0 && w[from-1].V > w[top].V-0.02*s.swing {
-		from--
+	if k == len(w) {
+		return
 	}
-	for to+1 < len(w) && w[to+1].V > w[top].V-0.02*s.swing {
-		to++
+	middle := (w[trough].V + w[crest].V) / 2
+	through := func(from int) float64 {
+		for n := from; n+1 < len(w); n++ {
+			if w[n+1].V <= middle {
+				return w[n].T + (w[n+1].T-w[n].T)*(w[n].V-middle)/(w[n].V-w[n+1].V)
+			}
+		}
+		return math.NaN()
 	}
-	s.broad = (w[to].T-w[from].T)*s.ring > broadTop
+	if turn := through(crest) - through(top); turn > 0 {
+		s.ring = 1 / turn
+	}
 }
 
 // spice is the board's edge by ngspice, in a folder of its own, followed for as long as the solver followed it.
@@ -271,7 +288,6 @@ const (
 	peakTolerance   = 0.005
 	ringTolerance   = 0.02
 	energyTolerance = 0.03 // of the largest energy of the edge
-	broadTop        = 0.14 // of a turn
 	clearRing       = 0.05 // of the bus: a smaller swing is not compared, nor one that is a ripple in one of the two
 	givenUp         = 0.1  // of the boards, on which ngspice may give up altogether
 )
@@ -339,18 +355,6 @@ type comparison struct {
 	wrong         []string
 }
 
-// heldTop tells that the top of a ring has no moment of its own: a clamp or a reservoir holds it down, or an unclamped load
-// goes on driving it up.
-func (b sample) heldTop(peak float64) bool {
-	switch b.net {
-	case "clamp", "suppressor":
-		return peak > b.clamp
-	case "recovery":
-		return true
-	}
-	return b.topology == "unclamped"
-}
-
 // compare solves one board twice.
 func compare(n int, of recipe, dir string) comparison {
 	c := comparison{energies: map[string]float64{}}
@@ -384,9 +388,9 @@ func compare(n int, of recipe, dir string) comparison {
 	if c.peak = relative(got.Peak, highest); !(c.peak <= peakTolerance) {
 		fail("peak %.3f V, ngspice %.3f V on a bus of %.0f V", got.Peak, highest, b.bus)
 	}
-	var own spiced // a ring is clear when both ways of reading it off the solver's own curve agree
+	var own spiced
 	own.swings(got.Waveform)
-	if clear := want.swing > clearRing*b.bus && relative(own.swing, want.swing) < 0.1; clear && !own.broad && !b.heldTop(want.peak) && relative(own.ring, got.Ring) < 0.01 && want.ring > 0 {
+	if clear := want.swing > clearRing*b.bus && relative(own.swing, want.swing) < 0.1; clear && got.Ring > 0 && want.ring > 0 {
 		c.rang = true
 		if c.ring = relative(got.Ring, want.ring); !(c.ring <= ringTolerance) {
 			fail("ring %.4g Hz, ngspice %.4g Hz", got.Ring, want.ring)

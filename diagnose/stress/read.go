@@ -3,6 +3,7 @@ package stress
 import (
 	"errors"
 	"math"
+	"slices"
 
 	"drivemend/diagnose/circuit"
 )
@@ -134,31 +135,69 @@ func crossing(w []Sample, level float64) float64 {
 	return math.NaN()
 }
 
-// ring reads frequency and damping ratio off the swings after the peak: from peak to trough is half a turn, and the
-// swings shrink by exp(−π·ζ/√(1−ζ²)) each half turn.
+// ripple is the share of the first swing that a turn has to swing back by, to count as one: less is another mode riding on
+// the ring.
+const ripple = 0.2
+
+// ring reads frequency and damping ratio off the swings after the peak: the peak, the trough after it, the next crest. A
+// clamp makes tops broad, so that their moment says little: the frequency is that of falling through half the height of
+// the second crest, once after either top. The swings shrink by exp(−π·ζ/√(1−ζ²)) each half turn.
 func ring(w []Sample, peakTime float64) (hertz, damping float64) {
 	turns := turningPoints(w, peakTime)
 	if len(turns) < 3 {
 		return 0, 0
 	}
-	first, second := turns[0].V-turns[1].V, turns[2].V-turns[1].V
-	period := turns[2].T - turns[0].T
-	if first <= 0 || second <= 0 || second >= first || period <= 0 {
+	peak, trough, crest := height(w, turns[0]), height(w, turns[1]), height(w, turns[2])
+	first, second := peak-trough, crest-trough
+	if first <= 0 || second <= 0 || second >= first {
+		return 0, 0
+	}
+	half := (trough + crest) / 2
+	period := falling(w[turns[2]:], half) - falling(w[turns[0]:], half)
+	if !(period > 0) {
 		return 0, 0
 	}
 	l := math.Log(first / second)
 	return 1 / period, l / math.Hypot(math.Pi, l)
 }
 
-// turningPoints gives the peak and the extremes after it, refined by a parabola through three samples.
-func turningPoints(w []Sample, from float64) []Sample {
-	var out []Sample
-	for i := 1; i+1 < len(w) && len(out) < 3; i++ {
-		a, b, c := w[i-1], w[i], w[i+1]
-		if c.T < from || (b.V-a.V)*(c.V-b.V) > 0 || b.V == a.V {
-			continue
+// height is that of a turn between samples.
+func height(w []Sample, at int) float64 {
+	if at == 0 || at == len(w)-1 {
+		return w[at].V
+	}
+	return vertex(w[at-1], w[at], w[at+1]).V
+}
+
+// falling is when a waveform first falls through a level; not a number when it does not.
+func falling(w []Sample, level float64) float64 {
+	for i := 1; i < len(w); i++ {
+		if a, b := w[i-1], w[i]; a.V > level && b.V <= level {
+			return a.T + (b.T-a.T)*(a.V-level)/(a.V-b.V)
 		}
-		out = append(out, vertex(a, b, c))
+	}
+	return math.NaN()
+}
+
+// turningPoints gives the places of the peak and of the trough and crest after it, over ripples on the way.
+func turningPoints(w []Sample, from float64) []int {
+	top := slices.IndexFunc(w, func(s Sample) bool { return s.T >= from })
+	if top < 0 {
+		return nil
+	}
+	if top > 0 && w[top-1].V > w[top].V {
+		top--
+	}
+	out, turn, sign := []int{top}, top, -1.0 // what is looked for next: a trough
+	for i := top + 1; i < len(w) && len(out) < 3; i++ {
+		back := sign * (w[turn].V - w[i].V)
+		switch height := math.Abs(w[top].V - w[turn].V); {
+		case back < 0:
+			turn = i
+		case back > ripple*height && height > 0:
+			out, sign = append(out, turn), -sign
+			turn = i
+		}
 	}
 	return out
 }
