@@ -117,7 +117,11 @@ func writeVerdict(s *screen, m *stress.Margin, b marginBoard) {
 func dangersOf(f *stress.Figures) []fact {
 	var out []fact
 	if f.Avalanche != nil && f.Avalanche.EveryCycle {
-		out = append(out, fact{"avalanche", "the switch breaks down in every PWM cycle; no such board is within, whatever its rated energy"})
+		text := "by these figures the switch breaks down in every PWM cycle; no such board is within, whatever its rated energy"
+		if len(f.LiftedBy) > 0 {
+			text += "; they rest on assumed values, see below"
+		}
+		out = append(out, fact{"avalanche", text})
 	}
 	if p := f.PumpUp; p != nil {
 		text := "its tie is open: the edges pump it up to " + volts(p.End)

@@ -2,6 +2,7 @@ package stress
 
 import (
 	"math"
+	"strings"
 	"testing"
 	"time"
 
@@ -176,5 +177,34 @@ func TestCaptureFollowsWhatWasMeasured(t *testing.T) {
 	one, two := carry(over), carry(2*over)
 	if math.Abs((two.Mid-bus)-2*(one.Mid-bus)) > 1e-9*two.Mid || !(two.High > one.High) || !(two.Low > one.Low) {
 		t.Errorf("%+v, of twice the overshoot %+v", *one, *two)
+	}
+}
+
+// A board that is within by its stated values is not when a measured opening foretells more: within, by one that lies far
+// below; thin, naming it, where only its upper end passes 80 % of the rating; over, where it foretells a peak above the rating.
+func TestMeasuredOpeningOverrulesTheDraws(t *testing.T) {
+	for _, c := range []struct {
+		peak string // at the highest bus and worst current, so that nothing is carried
+		want Verdict
+	}{{"345 V", Within}, {"445 V", Thin}, {"620 V", OverIt}} {
+		peak, err := quantity.Parse(c.peak, quantity.Volt)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if c.want == Thin { // a reading whose upper end alone passes the bound
+			peak.Low, peak.High = 0.9*peak.Value, 1.2*peak.Value
+		}
+		m, err := Compute(&measure.Case{ID: "bench", Board: soundBoard(t), Captures: []measure.Capture{opening("scope.csv", map[string]quantity.Quantity{
+			"bus": quantity.Of(340, quantity.Volt), "current": quantity.Of(20, quantity.Ampere), "peak": peak})}}, 1)
+		if err != nil {
+			t.Fatal(err)
+		}
+		f := m.AsFound
+		if f.Verdict != c.want {
+			t.Errorf("%s: %s, want %s; foretold %.0f, %.0f, %.0f V, allowed %.0f V, rests on %v", c.peak, f.Verdict, c.want, f.Measured.Low, f.Measured.Mid, f.Measured.High, m.Allowed, f.Rests)
+		}
+		if c.want == Thin && (len(f.Rests) == 0 || !strings.Contains(f.Rests[len(f.Rests)-1], "scope.csv")) {
+			t.Errorf("thin, and the capture is not named: %v", f.Rests)
+		}
 	}
 }

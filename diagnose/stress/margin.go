@@ -3,6 +3,7 @@ package stress
 import (
 	"fmt"
 	"slices"
+	"strings"
 
 	"drivemend/measure"
 	"drivemend/measure/quantity"
@@ -52,7 +53,7 @@ type Figures struct {
 	Measured     *FromCapture
 	Verdict      Verdict
 	LiftedBy     []string // the answers that would lift a verdict held down for want of them
-	Rests        []string // what a verdict rests on, in words with the safe interval
+	Rests        []string // what a verdict rests on or leaves out, in words, assumed values with their safe interval
 }
 
 // Avalanched is what a MOSFET takes up in avalanche, at the highest bus and worst current; all of it on the one device
@@ -245,6 +246,14 @@ func (p *problem) edgesOf(f *Figures) error {
 			f.Highest = e
 		}
 	}
+	if p.leg() && !p.closingKnown() {
+		e, err := p.placed(closes, p.highest().quick())
+		if err != nil {
+			return err
+		}
+		f.Rests = append(f.Rests, fmt.Sprintf("the closing of the opposite switch is not graded, for want of %s: with typical values it would reach %s",
+			strings.Join(p.liftsClosing(), " and "), quantity.Format(e.Peak, quantity.Volt)))
+	}
 	if s, ok := p.shortCircuit(); ok {
 		if f.ShortCircuit, err = p.placed(opens, s); err != nil {
 			return err
@@ -270,11 +279,9 @@ func (p *problem) cycle() ([]*Edge, error) {
 	return out, nil
 }
 
-// closingKnown tells whether the closing edge is shown. That of a leg always is, since it counts; what a chopper's
-// freewheel diode sees is guesswork without its recovery and the slope of the current.
-func (p *problem) closingKnown() bool {
-	return p.leg() || len(p.liftsClosing()) == 0
-}
+// closingKnown tells whether the closing edge is shown and, in a leg, graded. Without the recovery of the diode and the
+// slope of the current it is guesswork: with typical values alone most sound bridges would stand above their rating.
+func (p *problem) closingKnown() bool { return len(p.liftsClosing()) == 0 }
 
 // topEdge is the highest of the edges that count; the closing of a chopper does not, its peak stands at the diode.
 func topEdge(edges []*Edge, leg bool) *Edge {
@@ -318,24 +325,43 @@ func (m *Margin) judge(f *Figures, p *problem, seed uint64) error {
 	return p.verdict(f, scan)
 }
 
-// verdict grades the percentile. Within is given only when the gate is known and no assumed value alone could take
-// the peak over the bound; else it is thin.
+// verdict grades the percentile, or what a measured opening foretells where that is worse. Within is given only when the
+// gate is known, no assumed value alone could take the peak over the bound, and a measured opening does not reach over it;
+// else it is thin.
 func (p *problem) verdict(f *Figures, scan []scanned) error {
-	f.Verdict = Grade(f.P999.Peak / p.rated)
+	f.Verdict = Grade(max(f.P999.Peak, f.foretold()) / p.rated)
 	if f.PumpUp != nil && f.PumpUp.EndsBy == StopBreakdown {
 		f.Verdict = OverIt // whatever a single edge does
+	}
+	if f.foretold() > f.P999.Peak {
+		f.Rests = append(f.Rests, fmt.Sprintf("graded by the opening measured as %s, which foretells %s at the highest bus and worst current",
+			f.Measured.Name, quantity.Format(f.foretold(), quantity.Volt)))
 	}
 	if f.Verdict != Within {
 		return nil
 	}
-	var err error
-	if f.Rests, err = p.rests(scan, withinShare*p.rated); err != nil {
+	assumed, err := p.rests(scan, withinShare*p.rated)
+	if err != nil {
 		return err
 	}
-	if len(f.Rests)+len(f.LiftedBy) > 0 {
+	measured := len(f.Rests) // that alone takes nothing from a verdict
+	f.Rests = append(f.Rests, assumed...)
+	if limit := withinShare * p.rated; f.Measured != nil && f.Measured.High > limit {
+		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, carried to the highest bus and worst current, may reach %s",
+			f.Measured.Name, quantity.Format(f.Measured.High, quantity.Volt)))
+	}
+	if len(f.Rests)-measured+len(f.LiftedBy) > 0 {
 		f.Verdict = Thin
 	}
 	return nil
+}
+
+// foretold is the peak that a measured opening lets expect; 0 without one.
+func (f *Figures) foretold() float64 {
+	if f.Measured == nil {
+		return 0
+	}
+	return f.Measured.Mid
 }
 
 func (m *Margin) addNeeds(needs []Need) {

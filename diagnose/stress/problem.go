@@ -92,7 +92,7 @@ func prepareAt(at place) (*problem, []Need) {
 		in.need(p.liftsClosing()[0], "what the freewheel diode sees when the switch closes")
 	}
 	p.edges = []graded{opens}
-	if at.leg() {
+	if at.leg() && p.closingKnown() {
 		p.edges = append(p.edges, closes)
 	}
 	if at.bridge {

@@ -225,6 +225,9 @@ func (p *problem) better(best, from footing) (footing, error) {
 // corners are the edges and shapes of the absolute corner.
 func (p *problem) corners() []graded {
 	out := append([]graded{isCut}, p.edges...)
+	if p.leg() && !p.closingKnown() {
+		out = append(out, closes)
+	}
 	if p.bridge {
 		out = append(out, isCutEach)
 	}
