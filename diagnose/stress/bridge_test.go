@@ -182,16 +182,24 @@ func TestLegNeverBetterThanThin(t *testing.T) {
 	}
 }
 
-// A bridge is graded on all gates off, a half-bridge has no other leg, a chopper no closing.
+// A bridge is graded on all gates off, a half-bridge has no other leg, a chopper no closing, and a leg only on a closing
+// whose recovery charge and slope are stated.
 func TestEdgesThatCount(t *testing.T) {
-	for topology, want := range map[string]string{"low-side-chopper": "turn-off", "half-bridge": "turn-off turn-on",
-		"h-bridge": "turn-off turn-on all-off", "three-phase": "turn-off turn-on all-off"} {
-		var got []string
-		for _, g := range problemOf(t, bridgeOf(t, topology, pump)).edges {
-			got = append(got, g.name)
-		}
-		if strings.Join(got, " ") != want {
-			t.Errorf("%s: %v, want %s", topology, got, want)
+	closing := with(pump, [2]string{"freewheel.recovery_charge", "200 nC"}, [2]string{"switch.turn_on_slope", "300 A/µs"})
+	for topology, want := range map[string][2]string{
+		"low-side-chopper": {"turn-off", "turn-off"},
+		"half-bridge":      {"turn-off", "turn-off turn-on"},
+		"h-bridge":         {"turn-off all-off", "turn-off turn-on all-off"},
+		"three-phase":      {"turn-off all-off", "turn-off turn-on all-off"},
+	} {
+		for i, list := range [][][2]string{pump, closing} {
+			var got []string
+			for _, g := range problemOf(t, bridgeOf(t, topology, list)).edges {
+				got = append(got, g.name)
+			}
+			if strings.Join(got, " ") != want[i] {
+				t.Errorf("%s, closing stated %v: %v, want %s", topology, i == 1, got, want[i])
+			}
 		}
 	}
 }

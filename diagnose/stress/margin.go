@@ -251,7 +251,7 @@ func (p *problem) edgesOf(f *Figures) error {
 		if err != nil {
 			return err
 		}
-		f.Rests = append(f.Rests, fmt.Sprintf("the closing of the opposite switch is not graded, for want of %s: with typical values it would reach %s",
+		f.Rests = append(f.Rests, fmt.Sprintf("every edge but the closing of the opposite switch, which is not graded for want of %s; with typical values it would reach %s",
 			strings.Join(p.liftsClosing(), " and "), quantity.Format(e.Peak, quantity.Volt)))
 	}
 	if s, ok := p.shortCircuit(); ok {
@@ -334,7 +334,7 @@ func (p *problem) verdict(f *Figures, scan []scanned) error {
 		f.Verdict = OverIt // whatever a single edge does
 	}
 	if f.foretold() > f.P999.Peak {
-		f.Rests = append(f.Rests, fmt.Sprintf("graded by the opening measured as %s, which foretells %s at the highest bus and worst current",
+		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, which foretells %s at the highest bus and worst current",
 			f.Measured.Name, quantity.Format(f.foretold(), quantity.Volt)))
 	}
 	if f.Verdict != Within {
@@ -347,7 +347,7 @@ func (p *problem) verdict(f *Figures, scan []scanned) error {
 	measured := len(f.Rests) // that alone takes nothing from a verdict
 	f.Rests = append(f.Rests, assumed...)
 	if limit := withinShare * p.rated; f.Measured != nil && f.Measured.High > limit {
-		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, carried to the highest bus and worst current, may reach %s",
+		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, which may reach %s at the highest bus and worst current",
 			f.Measured.Name, quantity.Format(f.Measured.High, quantity.Volt)))
 	}
 	if len(f.Rests)-measured+len(f.LiftedBy) > 0 {
