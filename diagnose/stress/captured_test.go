@@ -15,7 +15,8 @@ func probed(t *testing.T, p *problem, bus, amps float64) map[string]quantity.Qua
 	t.Helper()
 	s := p.base
 	s.bus, s.amps = bus, amps
-	e, err := s.watchTerminals()
+	s.outside = true
+	e, err := s.gateLimited()
 	if err != nil {
 		t.Fatal(err)
 	}

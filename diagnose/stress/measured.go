@@ -12,6 +12,9 @@ import (
 type Measured struct {
 	AtChip  bool   // the probe stood on the chip; false: on the terminals, where the package's own drop is missing
 	Network string // none, capacitor, rc, rcd; "" when not known, which counts as the widest of them
+	// Columns tells that the output capacitance falls far faster than with the root of the voltage, as it does in MOSFETs
+	// of 500 V and more whose drift region is built of columns.
+	Columns bool
 
 	Bus      quantity.Quantity // V, at the leg just before the edge
 	Current  quantity.Quantity // A, switched off, of the whole bank
@@ -237,27 +240,43 @@ type Carried struct {
 	Bound float64 // V that no board of thousands passed; far away unless bus and current are raised together
 }
 
-// reach is how far boards fall from the law of a bare edge: 99 in 100 as powers of its factor, and all of them from the
-// scaled peak as a factor.
-type reach struct{ low, high, scaled float64 }
+// reach is how far boards fall from the law of a bare edge: 99 in 100 as powers of its factor, and as a multiple of it where
+// bus and current are raised together by little; all of them from the scaled peak as a factor.
+type reach struct{ low, high, together, scaled float64 }
 
 // reaches come from the boards of TestCarriedBoards, 4 000 of each network, bus and current raised by one to ten times
-// each: no bare edge passed the law, with networks 99 in 100 stayed within these powers. The scaled peak was passed by one
-// board of 1 000 with an rcd (by 21 % at most) and one of 4 000 with a capacitor (5 %), none of the others. Rounded up;
-// judgement as to the range of the boards.
+// each: no bare edge passed the law, with networks 99 in 100 stayed within these powers. Of the boards raised together 99 in
+// 100 stayed within these multiples. The scaled peak was passed by one board of 1 000 with an rcd (by 21 % at most) and one
+// of 4 000 with a capacitor (5 %), none of the others. Rounded up; judgement as to the range of the boards.
 var reaches = map[string]reach{
-	"none":      {low: -0.4, high: 1, scaled: 1},
-	"capacitor": {low: -0.4, high: 1.1, scaled: 1.1},
-	"rc":        {low: -1.1, high: 1.45, scaled: 1},
-	"rcd":       {low: -1.0, high: 1.2, scaled: 1.25},
-	"":          {low: -1.1, high: 1.45, scaled: 1.25}, // the widest
+	"none":      {low: -0.4, high: 1, together: 1, scaled: 1},
+	"capacitor": {low: -0.4, high: 1.1, together: 1.1, scaled: 1.1},
+	"rc":        {low: -1.1, high: 1.45, together: 1.15, scaled: 1},
+	"rcd":       {low: -1.0, high: 1.2, together: 1.2, scaled: 1.25},
+	"":          {low: -1.1, high: 1.45, together: 1.2, scaled: 1.25}, // the widest
 }
+
+// Bus and current are raised together when neither grows by more than mostTogether times, nor one by more than mostApart
+// times the other.
+const (
+	mostTogether = 3.0
+	mostApart    = 2.0
+)
+
+// The powers of the bus with which a ring grows that the output capacitance decides, I·√(L/C): a quarter where C falls with
+// the root of the voltage; with columns, whose capacitance falls by more than ten times over some tens of volts, three
+// quarters (judgement; on the gate-driven reference boards 0.65 at most).
+const (
+	bendOfRoot    = 0.25
+	bendOfColumns = 0.75
+)
 
 // At carries the measured peak to another bus (V) and current (A), both above zero. With r and q the ratios of current and
 // bus, the overshoot of a bare edge lies below max(r·q^¼, √(r·q)) times the measured one:
 //   - channel-limited, L·di/dt: the slope grows at most in proportion to the current (constant fall time);
 //   - cut, a + √(a²+2aV) with a in proportion to the current: between r and √(r·q);
-//   - ring-dominated, I·√(L/C): r, and q^¼ at most for an output capacitance that falls with the root of the bus.
+//   - ring-dominated, I·√(L/C): r, and q^¼ at most for an output capacitance that falls with the root of the bus; with
+//     columns q^¾.
 //
 // A network breaks that law: what it holds when the bus is reached depends on how long the rise took, so that an rc's step
 // R·I, or the last of the channel's current in an rcd, can appear at the full current and not at the low one. Then
@@ -295,11 +314,29 @@ func (m Measured) carry(bus, current float64, power reach) Carried {
 	least, over, most := max(0, m.Peak.Low-m.Bus.High), m.Peak.Value-m.Bus.Value, m.Peak.High-m.Bus.Low
 	r, q := current/m.Current.Value, bus/m.Bus.Value
 	upR, upQ := max(1, current/m.Current.Low), max(1, bus/m.Bus.Low)
-	law := max(upR*math.Pow(upQ, 0.25), math.Sqrt(upR*upQ))
+	ringing := upR * math.Pow(upQ, m.bend())
+	law := max(ringing, math.Sqrt(upR*upQ))
 	mid := over * min(r, math.Sqrt(r*q))
-	c := Carried{Mid: bus + mid, Bound: m.Peak.High * power.scaled * max(upR*math.Pow(upQ, 0.25), upQ)}
-	c.High = bus + max(mid, min(most*math.Pow(law, power.high), max(0, c.Bound-bus)))
+	c := Carried{Mid: bus + mid, Bound: m.Peak.High * power.scaled * max(ringing, upQ)}
+	c.High = bus + max(mid, min(most*power.above(law, upR, upQ), max(0, c.Bound-bus)))
 	c.Bound = max(c.Bound, c.High)
 	c.Low = bus + min(mid, least*math.Pow(law, power.low)*min(1, r))
 	return c
+}
+
+// bend is the power of the bus with which a ring grows.
+func (m Measured) bend() float64 {
+	if m.Columns {
+		return bendOfColumns
+	}
+	return bendOfRoot
+}
+
+// above is how far the overshoot may grow, by the law and the growth of current and bus.
+func (p reach) above(law, r, q float64) float64 {
+	grown := math.Pow(law, p.high)
+	if r <= mostTogether && q <= mostTogether && r <= mostApart*q && q <= mostApart*r {
+		grown = min(grown, p.together*law)
+	}
+	return grown
 }
