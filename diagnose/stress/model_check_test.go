@@ -93,7 +93,7 @@ func TestModelDiodePeak(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		if err := s.recovery(w); err != nil {
+		if err := s.recovery(w, w.all["i(vk)"]); err != nil {
 			t.Fatal(err)
 		}
 		late := c.lifetime * c.transit / (c.lifetime + c.transit)

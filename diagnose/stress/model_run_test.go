@@ -9,11 +9,12 @@ import (
 // modelEdge is what one edge of the reference showed. A scope reads at the terminals; the chip sees more.
 type modelEdge struct {
 	Bus, Amps                  float64
-	Chip, Terminal             float64 // V, highest voltage of the victim
-	At                         float64 // s, when the chip's was reached, after the gate's edge
-	FallTime, Slope, SteepFall float64 // s, A/s: 90 to 10 % of the switch's current, its mean and its steepest slope
-	VoltSlope                  float64 // V/s between 10 and 90 % of the bus
-	Recovery, RiseSlope        float64 // A of reverse recovery; A/s from 10 to 90 % of the current at closing
+	Chip, Terminal             float64    // V, highest voltage of the victim
+	At                         float64    // s, when the chip's was reached, after the gate's edge
+	FallTime, Slope, SteepFall float64    // s, A/s: 90 to 10 % of the switch's current, its mean and its steepest slope
+	VoltSlope                  float64    // V/s between 10 and 90 % of the bus
+	Recovery, RiseSlope        float64    // A of reverse recovery; A/s from 10 to 90 % of the current at closing
+	Diode                      modelSheet // of a maker's test: how the opposite diode blocked
 	Points                     int
 }
 
@@ -108,5 +109,14 @@ func (b modelBoard) read(w waves, bus, amps float64, opening bool) (modelEdge, b
 	top, _ := w.top(current)
 	e.Recovery = top - amps
 	e.At -= gateEdge
+	if b.wholeFall {
+		forward := make([]float64, len(current))
+		for k, i := range current {
+			forward[k] = amps - i
+		}
+		if err := e.Diode.recovery(w, forward); err != nil {
+			return e, false
+		}
+	}
 	return e, over
 }
