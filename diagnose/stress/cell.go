@@ -99,7 +99,7 @@ func (s scene) lay(lower device, current float64) *cell {
 	if s.free {
 		c.Current("load", c.local, c.load, circuit.Constant(s.amps))
 	} else {
-		c.Inductor("load", c.rail, c.load, s.load, s.amps)
+		c.Inductor("load", c.local, c.load, s.load, s.amps)
 	}
 	c.output("", c.chip, 0, lower)
 	c.Diode("reverse", 0, c.chip, plainDrop, plainSlope)

@@ -210,7 +210,7 @@ func (m *Margin) figures(b measure.Board, openings []seen, seed uint64) *Figures
 			err = m.judge(f, p, seed)
 		}
 		if err != nil {
-			m.addNeeds([]Need{{unsolved, []string{forMargin, err.Error()}}})
+			m.addNeeds([]Need{{unsolved, []string{forMargin, p.refusal(err)}}})
 			return nil
 		}
 		if worst == nil || f.P999.Peak/f.Rated > worst.P999.Peak/worst.Rated {
