@@ -110,7 +110,7 @@ func (s scene) lay(lower device, current float64) *cell {
 // run in the skin of copper and foils, and in whatever they induce. R = √(L/C)/(2ζ), with the output capacitance.
 func (c *cell) dampLoop(henry float64) {
 	ratio := c.s.get("loop.damping_ratio")
-	if ratio <= 0 || henry <= 0 {
+	if ratio < leastDamping || henry <= 0 {
 		return
 	}
 	ohm := math.Sqrt(henry/c.s.meanFarad()) / (2 * ratio)

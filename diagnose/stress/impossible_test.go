@@ -293,3 +293,16 @@ func TestClampThatHoldsNothing(t *testing.T) {
 		t.Errorf("%v", err)
 	}
 }
+
+// A damping ratio next to nothing damps as none does; as a resistor beside the loop it had a time constant that no step of
+// the solver could follow.
+func TestNextToNoDamping(t *testing.T) {
+	with := func(ratio float64) scene {
+		return problemOf(t, put(wellBuilt(t, "half-bridge", "rc"), "loop.damping_ratio", ratio)).highest()
+	}
+	for _, solve := range []edgeShape{scene.cut, scene.gateLimited, scene.turnOn} {
+		if none, tiny := peakOf(t, with(0), solve), peakOf(t, with(1e-10), solve); none != tiny {
+			t.Errorf("%g V without damping, %g V with next to none", none, tiny)
+		}
+	}
+}

@@ -18,6 +18,7 @@ const (
 	leastHenry   = 1e-18   // H; a forward recovery of less is none
 	leastAmps    = 0.1     // A, load current below which times and recovery no longer grow
 	leastOhm     = 1e-6    // Ω, of a resistor that is stated as nothing
+	leastDamping = 1e-4    // ratio of the loop's ring; one of less loses a thousandth in the turns that are followed
 	ringsShown   = 3.0     // turns of the slowest ring that are followed
 	ringsAtPeak  = 2.0     // the same where only the peak is wanted
 )

@@ -54,9 +54,9 @@ const mostNamed = 3
 func (p *problem) refusal(err error) string {
 	what, _, _ := strings.Cut(err.Error(), "; ") // what follows is advice about circuits, not about boards
 	said := fmt.Sprintf("position %s, %s", p.position, what)
-	named := oddValues(p.own, "")
+	named := p.oddValues(p.own, "")
 	if p.leg() {
-		for _, v := range oddValues(p.far, "switch.") {
+		for _, v := range p.oddValues(p.far, "switch.") {
 			if v.text = p.opposite + ": " + v.text; !slices.ContainsFunc(named, func(have oddValue) bool { return have.key == v.key }) {
 				named = append(named, v)
 			}
@@ -81,18 +81,25 @@ type oddValue struct {
 	away      float64
 }
 
-// oddValues lists the stated values of a board outside their usual range, of keys that begin with a prefix.
-func oddValues(b measure.Board, prefix string) []oddValue {
+// oddValues lists the stated values of a board outside their usual range that bear on its edges, of keys that begin with
+// a prefix.
+func (p *problem) oddValues(b measure.Board, prefix string) []oddValue {
 	var out []oddValue
 	for _, r := range usualRanges {
 		q, ok := b.Quantity(r.key)
-		if !ok || !strings.HasPrefix(r.key, prefix) || r.low <= 0 || q.Value >= r.low && q.Value <= r.high {
+		if !ok || !strings.HasPrefix(r.key, prefix) || p.bearsNot(r.key) || r.low <= 0 || q.Value >= r.low && q.Value <= r.high {
 			continue
 		}
 		text := fmt.Sprintf("%s %s (usually %s to %s)", r.key, quantity.Format(q.Value, q.Unit), quantity.Format(r.low, q.Unit), quantity.Format(r.high, q.Unit))
 		out = append(out, oddValue{r.key, text, r.away(q.Value)})
 	}
 	return out
+}
+
+// bearsNot tells whether no edge can depend on a key: parts that this network does not have, and ratings.
+func (p *problem) bearsNot(key string) bool {
+	return strings.HasPrefix(key, "snubber.") && !p.in.has(key) || strings.HasPrefix(key, "switch.avalanche.") ||
+		key == "switch.spread.delay" || key == "cooling.coldest_air" || key == "pwm.frequency" && p.base.net != "clamp"
 }
 
 // away is how far a value lies outside the range, as a logarithm; nothing at all, where the key table allows it, is no
