@@ -306,3 +306,13 @@ func TestNextToNoDamping(t *testing.T) {
 		}
 	}
 }
+
+// A rating under the bus is over, with its figures, whatever a reservoir does that climbs from the bus to the rating.
+func TestRatingUnderTheBus(t *testing.T) {
+	for _, network := range []string{"none", "recovery, tie broken"} {
+		m := computed(t, put(wellBuilt(t, "low-side-chopper", network), "switch.rated_voltage", 250))
+		if m.AsFound == nil || m.AsFound.Verdict != OverIt || m.AsFound.PumpUp != nil {
+			t.Errorf("%s: %+v, needs %v", network, m.AsFound, m.Needs)
+		}
+	}
+}
