@@ -201,23 +201,27 @@ func notNumbers(at string, v reflect.Value) []string {
 // from a board that has it otherwise.
 func TestLimitsAreNamed(t *testing.T) {
 	for _, c := range []struct {
-		key, value, want string
+		keys [][2]string
+		want string
 	}{
-		{"bus.capacitance", "4.7 nF", "snubber.capacitance 10 nF is larger than the bus bank (bus.capacitance 4.7 nF)"},
-		{"snubber.capacitance", "10 mF", "is larger than the bus bank"},
-		{"pwm.shortest_on_time", "1 ns", "pwm.shortest_on_time 1 ns is shorter than one turn"},
+		{[][2]string{{"bus.capacitance", "4.7 nF"}}, "snubber.capacitance 10 nF is larger than the bus bank (bus.capacitance 4.7 nF)"},
+		{[][2]string{{"snubber.capacitance", "10 mF"}}, "is larger than the bus bank"},
+		{[][2]string{{"pwm.shortest_on_time", "1 ns"}}, "pwm.shortest_on_time 1 ns is shorter than one turn"},
+		{[][2]string{{"snubber.kind", "suppressor"}, {"snubber.clamp_voltage", "270 V"}, {"snubber.slope_resistance", "0.1 Ω"}, {"snubber.capacitance", "1 nF"}},
+			"conduct at 270 V (snubber.clamp_voltage), under the highest bus"},
 	} {
-		m := computed(t, soundBoard(t, [2]string{c.key, c.value}))
+		m := computed(t, soundBoard(t, c.keys...))
 		f := m.AsFound
 		if f == nil {
-			t.Errorf("%s %s: no figures, needs %v", c.key, c.value, m.Needs)
+			t.Errorf("%v: no figures, needs %v", c.keys, m.Needs)
 			continue
 		}
+		t.Logf("%v: %s, %q", c.keys, f.Verdict, f.Rests)
 		if f.Verdict == Within || !strings.Contains(strings.Join(f.Rests, "; "), c.want) {
-			t.Errorf("%s %s: %s, rests on %q, want %q", c.key, c.value, f.Verdict, f.Rests, c.want)
+			t.Errorf("%v: %s, rests on %q, want %q", c.keys, f.Verdict, f.Rests, c.want)
 		}
 		for _, odd := range notNumbers("margin", reflect.ValueOf(m)) {
-			t.Errorf("%s %s: %s", c.key, c.value, odd)
+			t.Errorf("%v: %s", c.keys, odd)
 		}
 	}
 }

@@ -10,6 +10,18 @@ import (
 // limits says what a board states that these edges cannot follow to the end, one sentence each. The figures stand, but a
 // verdict of within would claim too much.
 func (p *problem) limits(f *Figures) []string {
+	out := p.misfits()
+	on, ok := p.own.Quantity("pwm.shortest_on_time")
+	if turn := p.turn(f); ok && on.Value < turn {
+		out = append(out, fmt.Sprintf("every edge is taken to begin after the ring of the one before, but pwm.shortest_on_time %s is shorter than "+
+			"one turn of it, %s: the peaks of two edges may add up; correct the on-time, or damp the ring", quantity.Format(on.Value, quantity.Second),
+			quantity.Format(turn, quantity.Second)))
+	}
+	return out
+}
+
+// misfits says which parts of the network do not go with the bus.
+func (p *problem) misfits() []string {
 	var out []string
 	if key, farad := p.networkStore(); farad > 0 {
 		if bank, ok := p.own.Quantity("bus.capacitance"); ok && farad > bank.Value {
@@ -18,11 +30,11 @@ func (p *problem) limits(f *Figures) []string {
 				quantity.Format(bank.Value, quantity.Farad)))
 		}
 	}
-	on, ok := p.own.Quantity("pwm.shortest_on_time")
-	if turn := p.turn(f); ok && on.Value < turn {
-		out = append(out, fmt.Sprintf("every edge is taken to begin after the ring of the one before, but pwm.shortest_on_time %s is shorter than "+
-			"one turn of it, %s: the peaks of two edges may add up; correct the on-time, or damp the ring", quantity.Format(on.Value, quantity.Second),
-			quantity.Format(turn, quantity.Second)))
+	volt, ok := p.own.Quantity("snubber.clamp_voltage")
+	if highest := p.in.mid("bus.highest"); ok && p.in.has("snubber.clamp_voltage") && volt.Value < highest {
+		out = append(out, fmt.Sprintf("the network begins to conduct at %s (snubber.clamp_voltage), under the highest bus of %s: it conducts "+
+			"as long as the switch is open, and burns, which these edges do not show; it has to begin above the bus",
+			quantity.Format(volt.Value, quantity.Volt), quantity.Format(highest, quantity.Volt)))
 	}
 	return out
 }

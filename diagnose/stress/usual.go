@@ -53,7 +53,7 @@ const mostNamed = 3
 // what to do about them.
 func (p *problem) refusal(err error) string {
 	what, _, _ := strings.Cut(err.Error(), "; ") // what follows is advice about circuits, not about boards
-	said := fmt.Sprintf("position %s, %s", p.position, what)
+	said := strings.Join(append([]string{fmt.Sprintf("position %s, %s", p.position, what)}, p.misfits()...), "; ")
 	named := p.oddValues(p.own, "")
 	if p.leg() {
 		for _, v := range p.oddValues(p.far, "switch.") {
