@@ -187,7 +187,7 @@ func (s *system) rateOf(k int, rates []float64) float64 {
 
 // record enters the step tried into scales, traces and peaks.
 func (r *Run) record(dt float64, l int, at float64) {
-	t := r.seg.from + at
+	t := math.Min(r.seg.from+at, r.seg.till) // the sum may be a rounding beyond the corner, from which the next samples count
 	for k := range r.watch {
 		w := &r.watch[k]
 		if w.isDiode {

@@ -99,7 +99,7 @@ func (s scene) lay(lower device, current float64) *cell {
 	if s.free {
 		c.Current("load", c.local, c.load, circuit.Constant(s.amps))
 	} else {
-		c.Inductor("load", c.rail, c.load, s.load, s.amps)
+		c.Inductor("load", c.local, c.load, s.load, s.amps)
 	}
 	c.output("", c.chip, 0, lower)
 	c.Diode("reverse", 0, c.chip, plainDrop, plainSlope)
@@ -110,7 +110,7 @@ func (s scene) lay(lower device, current float64) *cell {
 // run in the skin of copper and foils, and in whatever they induce. R = √(L/C)/(2ζ), with the output capacitance.
 func (c *cell) dampLoop(henry float64) {
 	ratio := c.s.get("loop.damping_ratio")
-	if ratio <= 0 || henry <= 0 {
+	if ratio < leastDamping || henry <= 0 {
 		return
 	}
 	ohm := math.Sqrt(henry/c.s.meanFarad()) / (2 * ratio)

@@ -98,14 +98,14 @@ func (p *problem) clamped() (*Clamped, error) {
 
 // pumpedUp is where a reservoir goes whose tie is broken, at the running current. What one edge brings is solved; from
 // there the voltage over the bus climbs with the root of the number of edges, until the switch breaks down or a bleeder
-// takes away as much.
+// takes away as much. Nothing climbs to a rating that the bus alone is over.
 func (p *problem) pumpedUp() (*PumpedUp, error) {
 	if p.base.net != "recovery" || !p.base.open {
 		return nil, nil
 	}
 	s := p.nominal()
 	e, err := s.gateLimited()
-	if err != nil || e.gained <= 0 {
+	if err != nil || e.gained <= 0 || s.bus >= p.rated {
 		return nil, err
 	}
 	farad := s.get("snubber.reservoir")

@@ -23,6 +23,7 @@ type Edge struct {
 	gained    float64 // V, that a reservoir gained
 	terminals float64 // V, highest at the terminals, where they are watched
 	struck    float64 // A, highest avalanche current
+	steps     int     // of the solver
 	run       *circuit.Run
 	plus      int // nodes of the chip whose voltage it is
 	minus     int

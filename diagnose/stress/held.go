@@ -1,6 +1,7 @@
 package stress
 
 import (
+	"fmt"
 	"math"
 
 	"drivemend/diagnose/circuit"
@@ -60,6 +61,10 @@ func (s scene) fixedPoint() (float64, error) {
 
 // surplus is the current that the edges bring to a clamp, less what its resistor carries away.
 func (s scene) surplus(held float64) (float64, error) {
+	if !(held > 0) || math.IsInf(held, 0) { // nothing held would be looked for again, without end
+		return 0, fmt.Errorf("the voltage the clamp settles at comes out as %g V; state snubber.clamp_voltage, or correct bus.nominal, "+
+			"snubber.resistance and pwm.frequency", held)
+	}
 	s.held = held
 	e, err := s.gateLimited()
 	if err != nil {

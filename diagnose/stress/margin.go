@@ -210,7 +210,7 @@ func (m *Margin) figures(b measure.Board, openings []seen, seed uint64) *Figures
 			err = m.judge(f, p, seed)
 		}
 		if err != nil {
-			m.addNeeds([]Need{{unsolved, []string{forMargin, err.Error()}}})
+			m.addNeeds([]Need{{unsolved, []string{forMargin, p.refusal(err)}}})
 			return nil
 		}
 		if worst == nil || f.P999.Peak/f.Rated > worst.P999.Peak/worst.Rated {
@@ -326,8 +326,8 @@ func (m *Margin) judge(f *Figures, p *problem, seed uint64) error {
 }
 
 // verdict grades the percentile, or what a measured opening foretells where that is worse. Within is given only when the
-// gate is known, no assumed value alone could take the peak over the bound, and a measured opening does not reach over it;
-// else it is thin.
+// gate is known, no assumed value alone could take the peak over the bound, a measured opening does not reach over it, and
+// the edges follow all that the board states; else it is thin.
 func (p *problem) verdict(f *Figures, scan []scanned) error {
 	f.Verdict = Grade(max(f.P999.Peak, f.foretold()) / p.rated)
 	if f.PumpUp != nil && f.PumpUp.EndsBy == StopBreakdown {
@@ -337,6 +337,8 @@ func (p *problem) verdict(f *Figures, scan []scanned) error {
 		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, which foretells %s at the highest bus and worst current",
 			f.Measured.Name, quantity.Format(f.foretold(), quantity.Volt)))
 	}
+	limits := p.limits(f)
+	f.Rests = append(f.Rests, limits...)
 	if f.Verdict != Within {
 		return nil
 	}
@@ -350,7 +352,7 @@ func (p *problem) verdict(f *Figures, scan []scanned) error {
 		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, which may reach %s at the highest bus and worst current",
 			f.Measured.Name, quantity.Format(f.Measured.High, quantity.Volt)))
 	}
-	if len(f.Rests)-measured+len(f.LiftedBy) > 0 {
+	if len(f.Rests)-measured+len(limits)+len(f.LiftedBy) > 0 {
 		f.Verdict = Thin
 	}
 	return nil

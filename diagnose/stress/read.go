@@ -11,7 +11,7 @@ import (
 // read takes the figures off a run.
 func (c *cell) read(run *circuit.Run, probe int, e Edge) *Edge {
 	s := c.s
-	e.Bus, e.Current, e.charge, e.gained = s.bus, s.amps, c.taken(run), c.gained(run)
+	e.Bus, e.Current, e.charge, e.gained, e.steps = s.bus, s.amps, c.taken(run), c.gained(run), run.Steps()
 	if c.outside >= 0 {
 		e.terminals, _ = run.Peak(c.outside)
 	}

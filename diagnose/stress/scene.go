@@ -1,6 +1,7 @@
 package stress
 
 import (
+	"cmp"
 	"fmt"
 	"math"
 
@@ -17,6 +18,7 @@ const (
 	leastHenry   = 1e-18   // H; a forward recovery of less is none
 	leastAmps    = 0.1     // A, load current below which times and recovery no longer grow
 	leastOhm     = 1e-6    // Ω, of a resistor that is stated as nothing
+	leastDamping = 1e-4    // ratio of the loop's ring; one of less loses a thousandth in the turns that are followed
 	ringsShown   = 3.0     // turns of the slowest ring that are followed
 	ringsAtPeak  = 2.0     // the same where only the peak is wanted
 )
@@ -53,6 +55,7 @@ type scene struct {
 	lifts     float64  // V, to which the victim has to rise at a closing to lift its own gate; 0 when that is not known
 	outside   bool     // the terminals are watched too
 	fast      bool     // only the peak is wanted
+	most      int      // steps of the solver; 0 counts as mostSteps
 }
 
 // fallShape is a stated IGBT fall: the fraction that falls fast, and the tail's time constant.
@@ -159,7 +162,7 @@ func (s scene) turns() float64 {
 
 // start begins the transient and watches the victim, and the network's capacitor where more than the peak is wanted.
 func (s scene) start(c *cell) (*circuit.Run, int, error) {
-	options := []circuit.Option{circuit.WithLimit(mostSteps)}
+	options := []circuit.Option{circuit.WithLimit(cmp.Or(s.most, mostSteps))}
 	if s.fast {
 		options = append(options, circuit.WithoutEnergy(), circuit.WithoutTrace())
 	}

@@ -71,7 +71,7 @@ func (p *problem) spans() (map[string]Span, []Need) {
 	out := map[string]Span{}
 	opening, err := p.sweep(turnOff, p.openingFigures)
 	if err != nil {
-		return out, []Need{{unsolved, []string{peakOverRated, err.Error()}}}
+		return out, []Need{{unsolved, []string{peakOverRated, p.refusal(err)}}}
 	}
 	out[peakOverRated] = opening.span(0)
 	if p.base.net == "clamp" {
@@ -81,7 +81,7 @@ func (p *problem) spans() (map[string]Span, []Need) {
 	add := func(name string, work func() (Span, bool, error)) {
 		span, ok, err := work()
 		if err != nil {
-			needs = append(needs, Need{unsolved, []string{name, err.Error()}})
+			needs = append(needs, Need{unsolved, []string{name, p.refusal(err)}})
 		} else if ok {
 			out[name] = span
 		}
