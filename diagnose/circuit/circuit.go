@@ -1,7 +1,8 @@
 // Package circuit solves the transients of small piecewise-linear circuits: resistors, capacitors, inductors
-// (coupled or not), sources with piecewise-linear waveforms, diodes and clamps. It knows nothing of drives.
+// (coupled or not), sources whose waveforms are straight pieces and curves, diodes and clamps. It knows nothing of drives.
 //
-// Between two switching events a circuit is linear, and its sources are straight lines. The step over such a span
+// Between two switching events a circuit is linear, and its sources are straight lines or solve linear equations of their
+// own (Curve), which are laid beside those of the circuit. The step over such a span
 // is the exact solution of the state equations (matrix exponential, cached by diode pattern), so the step length
 // decides only how often the solver looks, never how exact the result is. Events are found by halving the step
 // with the same cached matrices and, in the last piece, on the Taylor polynomial of the solution.
@@ -49,8 +50,12 @@ type branch struct {
 	start float64  // initial voltage of a capacitor, current of an inductor
 	volt  float64  // a diode's threshold
 	wave  Waveform // a source's waveform
+	bends []Curve  // in place of parts of it
 	index int      // among the sources, or among the diodes
 }
+
+// source is what a source does.
+func (b *branch) source() source { return source{b.wave, b.bends} }
 
 // coupling is a mutual inductance between two inductors (branch numbers).
 type coupling struct {
@@ -111,15 +116,15 @@ func (c *Circuit) Inductor(name string, a, b int, henry, ampere float64) {
 	c.add(branch{name: name, kind: inductor, a: a, b: b, value: henry, start: ampere})
 }
 
-// Voltage adds a voltage source: v(a) - v(b) = w(t).
-func (c *Circuit) Voltage(name string, a, b int, w Waveform) {
-	c.add(branch{name: name, kind: voltageSource, a: a, b: b, wave: w, index: c.sources})
+// Voltage adds a voltage source: v(a) - v(b) = w(t); curves, sorted by time, take the place of the waveform in theirs.
+func (c *Circuit) Voltage(name string, a, b int, w Waveform, curves ...Curve) {
+	c.add(branch{name: name, kind: voltageSource, a: a, b: b, wave: w, bends: curves, index: c.sources})
 	c.sources++
 }
 
-// Current adds a current source: w(t) flows from a through the source to b.
-func (c *Circuit) Current(name string, a, b int, w Waveform) {
-	c.add(branch{name: name, kind: currentSource, a: a, b: b, wave: w, index: c.sources})
+// Current adds a current source: w(t) flows from a through the source to b; curves as for Voltage.
+func (c *Circuit) Current(name string, a, b int, w Waveform, curves ...Curve) {
+	c.add(branch{name: name, kind: currentSource, a: a, b: b, wave: w, bends: curves, index: c.sources})
 	c.sources++
 }
 
@@ -165,7 +170,7 @@ func (c *Circuit) add(b branch) {
 		c.fault("%s %q: initial value or threshold beyond ±%g", what, b.name, mostLevel)
 	}
 	if b.kind == voltageSource || b.kind == currentSource {
-		if err := b.wave.Check(); err != nil {
+		if err := b.source().check(); err != nil {
 			c.fault("%s %q: %w", what, b.name, err)
 		}
 	}

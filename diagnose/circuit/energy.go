@@ -6,13 +6,13 @@ import "math"
 // solution. Products of any two quantities of the circuit follow from them.
 func (r *Run) gather(dt float64, l int) {
 	s := r.sys
-	n := s.nx
+	n := len(r.x)
 	m := n + 2
 	y := r.scratch(m)
 	for g := range gaussPoints {
 		at := r.tau + float64(gaussNode[g]*dt)
 		if l >= 0 {
-			s.step(y[:n], r.x, &s.solver.gauss[g][l], &r.seg, r.tau)
+			s.step(y[:n], r.x, &s.solver.gauss[g][l], r.tau)
 		} else {
 			s.along(y[:n], gaussNode[g]*dt)
 		}
@@ -37,7 +37,7 @@ func (r *Run) flush() {
 		return
 	}
 	s := r.sys
-	m := s.nx + 2
+	m := len(r.x) + 2
 	y := r.scratch(2 * m)
 	v, i := y[:m], y[m:]
 	for k := range r.totals {
@@ -49,6 +49,12 @@ func (r *Run) flush() {
 		t.square += quadratic(i, i, r.moment)
 	}
 	clear(r.moment)
+}
+
+// clearMoment makes the moments fit the present states and empties them.
+func (r *Run) clearMoment() {
+	n := len(r.x) + 2
+	r.room.resize(&r.moment, n*n)
 }
 
 // linear is the integral of a form over [states | 1 | τ]: the row of the moments that belongs to the 1.

@@ -149,13 +149,14 @@ func (r *Run) adopt(on uint64) (cut string, err error) {
 
 // use loads the states of a system from the branches.
 func (r *Run) use(s *system, on uint64) {
-	r.sys, r.on = s, on
-	if len(r.x) != s.nx {
-		for _, p := range []*[]float64{&r.x, &r.next, &r.rateOld, &r.rateNew} {
-			r.room.resize(p, s.nx)
-		}
-		r.room.resize(&r.spare, 3*s.nx)
+	old, bends := 0, 2*len(r.seg.bends)
+	if r.sys != nil {
+		old = r.sys.nx
 	}
+	r.stretch(max(old, s.nx) + bends)
+	copy(r.x[s.nx:], r.x[old:old+bends])
+	r.stretch(s.nx + bends)
+	r.sys, r.on = s, on
 	for x, k := range s.states {
 		r.x[x] = r.held[k]
 	}
@@ -214,7 +215,7 @@ func (r *Run) contradiction(exact bool) int {
 			} else {
 				clear(second)
 				s.derive(second, first, 1)
-				g = r.form(second)
+				g = r.form(second) + r.bending(first)
 			}
 			tol *= s.norm
 		}
@@ -243,10 +244,7 @@ func (r *Run) settled() {
 		r.volts = math.Max(r.volts, math.Abs(r.form(r.sys.v(k))))
 		r.amps = math.Max(r.amps, math.Abs(r.form(r.sys.i(k))))
 	}
-	n := r.sys.nx + 2
-	if len(r.moment) != n*n {
-		r.room.resize(&r.moment, n*n)
-	}
+	r.clearMoment()
 	r.restart(false)
 	r.sys.solver.segment = -1
 	r.refresh()

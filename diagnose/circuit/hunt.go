@@ -202,7 +202,7 @@ func (r *Run) headway(who int) error {
 
 // polynomial gives a watched quantity as a polynomial of the time after τ in units of the finest step.
 func (s *system) polynomial(k int, tau float64) *[degree + 1]float64 {
-	n, p, f := s.nx, &s.solver.scalar, s.line(k)
+	n, p, f := s.solver.order, &s.solver.scalar, s.line(k)
 	for i := range p {
 		p[i] = dot(row(s.solver.poly, n, i), f)
 	}

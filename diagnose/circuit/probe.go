@@ -107,8 +107,16 @@ func (r *Run) refresh() {
 		return
 	}
 	r.knowOld, r.knowNew = false, false
+	v.order = n + 2*len(r.seg.bends)
+	w := v.order + 2
+	r.room.resize(&v.watch, len(r.watch)*w)
+	r.room.resize(&v.dx, v.order*w)
+	r.room.resize(&v.poly, (degree+1)*v.order)
 	for i := range n {
-		s.collapse(row(v.dx, n+2, i), row(s.rate, s.width, i), &r.seg)
+		s.collapse(row(v.dx, w, i), row(s.rate, s.width, i), &r.seg)
+	}
+	for i, b := range r.seg.bends {
+		b.equations(v.dx[(n+2*i)*w:], w, n+2*i)
 	}
 	for k := range r.watch {
 		s.collapse(s.line(k), row(v.forms, s.width, k), &r.seg)
@@ -127,12 +135,8 @@ func (r *Run) refresh() {
 // makeForms writes down the forms of all watches for the present system.
 func (r *Run) makeForms() {
 	s := r.sys
-	v, n := &s.solver, s.nx
+	v := &s.solver
 	v.forms = r.room.take(len(r.watch) * s.width)
-	v.watch = r.room.take(len(r.watch) * (n + 2))
-	v.dx = r.room.take(n * (n + 2))
-	v.work = r.room.take(n + 2)
-	v.poly = r.room.take((degree + 1) * n)
 	for k := range r.watch {
 		f := row(v.forms, s.width, k)
 		switch w := &r.watch[k]; {
@@ -150,17 +154,17 @@ func (r *Run) makeForms() {
 	}
 }
 
-func (s *system) line(k int) []float64 { return row(s.solver.watch, s.nx+2, k) }
+func (s *system) line(k int) []float64 { return row(s.solver.watch, s.solver.order+2, k) }
 
 // value evaluates a watch.
 func (r *Run) value(k int, x []float64, tau float64) float64 {
-	f, n := r.sys.line(k), r.sys.nx
+	f, n := r.sys.line(k), r.sys.solver.order
 	return dot(x, f) + (f[n] + float64(f[n+1]*tau))
 }
 
 // look evaluates all watches for the states given.
 func (r *Run) look(x []float64, tau float64) {
-	n := r.sys.nx
+	n := r.sys.solver.order
 	v := r.looked[:len(r.watch)]
 	apply(v, r.sys.solver.watch, n+2, x)
 	for k := range r.watch {
@@ -171,7 +175,7 @@ func (r *Run) look(x []float64, tau float64) {
 
 // rates computes the derivative of the states.
 func (s *system) rates(dst, x []float64, tau float64) {
-	n := s.nx
+	n := s.solver.order
 	apply(dst, s.solver.dx, n+2, x)
 	for i, d := range dst {
 		f := row(s.solver.dx, n+2, i)
@@ -182,7 +186,7 @@ func (s *system) rates(dst, x []float64, tau float64) {
 // rateOf is the derivative of a watch for given derivatives of the states.
 func (s *system) rateOf(k int, rates []float64) float64 {
 	f := s.line(k)
-	return dot(rates, f) + f[s.nx+1]
+	return dot(rates, f) + f[s.solver.order+1]
 }
 
 // record enters the step tried into scales, traces and peaks.
@@ -248,12 +252,13 @@ func (w *watch) reach(t, v float64) {
 func (r *Run) extreme(k int, dt float64, l int, sign float64) {
 	s := r.sys
 	levels := s.solver.levels
-	x, half, rates := r.spare[:s.nx], r.spare[s.nx:2*s.nx], r.spare[2*s.nx:]
+	n := s.solver.order
+	x, half, rates := r.spare[:n], r.spare[n:2*n], r.spare[2*n:3*n]
 	tau := r.tau
 	copy(x, r.x)
 	for l >= 0 && l < len(levels)-1 {
 		l++
-		s.step(half, x, &levels[l], &r.seg, tau)
+		s.step(half, x, &levels[l], tau)
 		s.rates(rates, half, tau+levels[l].h)
 		if sign*s.rateOf(k, rates) > 0 {
 			copy(x, half)

@@ -33,7 +33,7 @@ func WithLimit(steps int) Option { return func(o *options) { o.limit = steps } }
 type Run struct {
 	c       *Circuit
 	opts    options
-	waves   []Waveform
+	waves   []source
 	turns   []turn // what Retarget did so far
 	cache   map[pattern]*system
 	room    room
@@ -89,18 +89,18 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 	}
 	r.held = make([]float64, len(c.branches))
 	r.totals = make([]total, len(c.branches))
-	r.waves = make([]Waveform, c.sources)
+	r.waves = make([]source, c.sources)
 	for k, b := range r.c.branches {
 		r.held[k] = b.start
 		if b.kind == voltageSource || b.kind == currentSource {
-			r.waves[b.index] = b.wave
+			r.waves[b.index] = b.source()
 		}
 		if b.kind == diode {
 			r.watch = append(r.watch, watch{branch: k, isDiode: true})
 			r.looked = append(r.looked, 0)
 		}
 	}
-	r.seg = segment{value: make([]float64, c.sources), slope: make([]float64, c.sources)}
+	r.seg = segment{value: make([]float64, c.sources), slope: make([]float64, c.sources), bends: make([]bend, 0, c.sources)}
 	r.locateSegment(0)
 	r.firstScale()
 	if err := r.settle(-1); err != nil {
@@ -131,9 +131,9 @@ func (r *Run) firstScale() {
 		case inductor:
 			r.amps = math.Max(r.amps, math.Abs(r.held[k]))
 		case voltageSource:
-			r.volts = math.Max(r.volts, b.wave.size())
+			r.volts = math.Max(r.volts, b.source().size())
 		case currentSource:
-			r.amps = math.Max(r.amps, b.wave.size())
+			r.amps = math.Max(r.amps, b.source().size())
 		case diode:
 			r.volts = math.Max(r.volts, math.Abs(b.volt))
 		}
@@ -180,7 +180,7 @@ func (r *Run) advance(t float64) (stopped bool, err error) {
 		return false, fmt.Errorf("circuit: %d steps taken and only %g s reached; ask for a shorter time or take out the fastest ring", r.opts.limit, r.Time())
 	}
 	end := math.Min(t, r.seg.till)
-	fresh, err := r.sys.prepare(t-r.Time(), r.seg.till-r.seg.from, &r.opts)
+	fresh, err := r.sys.prepare(t-r.Time(), &r.seg, &r.opts)
 	if err != nil {
 		return false, err
 	}
@@ -238,20 +238,21 @@ func (r *Run) choose(room float64) (dt float64, l int) {
 		}
 		r.rung, r.left = l, r.per
 	}
+	room = math.Min(room, r.seg.longest)
 	for l < len(levels) && levels[l].h > room*(1+1e-12) {
 		l++
 	}
 	if l == len(levels) {
 		return room, -1
 	}
-	r.sys.fill(l)
+	r.sys.fill(l, &r.seg)
 	return levels[l].h, l
 }
 
 // try computes the states one step ahead without accepting them.
 func (r *Run) try(dt float64, l int) {
 	if l >= 0 {
-		r.sys.step(r.next, r.x, &r.sys.solver.levels[l], &r.seg, r.tau)
+		r.sys.step(r.next, r.x, &r.sys.solver.levels[l], r.tau)
 	} else {
 		r.sys.expand(r.x, r.tau)
 		r.sys.along(r.next, dt)
@@ -305,26 +306,66 @@ func (r *Run) restart(corner bool) {
 
 // jumpsAt tells whether a source jumps at t, the end of the present segment or a moment within it.
 func (r *Run) jumpsAt(t float64) bool {
-	g := &r.seg
 	for k, w := range r.waves {
-		if jumps(w.At(t), g.value[k]+float64(g.slope[k]*(t-g.from))) {
+		c, _ := w.piece(t)
+		if was, _ := r.given(k); jumps(c.Value, was) && math.Abs(c.Value-was) > rounding*r.seg.size(k) {
 			return true
 		}
 	}
 	return false
 }
 
-// locateSegment finds the straight stretch of all sources that begins at t.
+// given is the present value and slope of a source.
+func (r *Run) given(k int) (value, slope float64) {
+	g := &r.seg
+	value, slope = g.value[k]+float64(g.slope[k]*r.tau), g.slope[k]
+	for i, b := range g.bends {
+		if v := r.x[r.sys.nx+2*i:]; b.source == k {
+			value, slope = value+v[0], slope+v[1]
+		}
+	}
+	return value, slope
+}
+
+// locateSegment finds the stretch of all sources that begins at t and has no corner.
 func (r *Run) locateSegment(t float64) {
 	g := &r.seg
 	g.id++
-	g.from, g.till = t, math.Inf(1)
+	g.from, g.till, g.rate, g.bends = t, math.Inf(1), 0, g.bends[:0]
 	for k, w := range r.waves {
-		value, slope, until := w.piece(t)
-		g.value[k], g.slope[k] = value, slope
-		g.till = math.Min(g.till, until)
+		c, straight := w.piece(t)
+		g.value[k], g.slope[k] = c.Value, c.Slope
+		g.till = math.Min(g.till, c.Till)
+		if !straight {
+			g.bends = append(g.bends, bend{k, c})
+			g.rate = math.Max(g.rate, c.rate())
+		}
+	}
+	if g.longest = math.Inf(1); len(g.bends) > 0 {
+		points, _ := r.opts.follow()
+		g.longest = (g.till - t) / float64(points/2)
 	}
 	r.tau = 0
+	if r.sys != nil { // every curve begins without a deviation
+		n := r.sys.nx
+		r.stretch(n + 2*len(g.bends))
+		clear(r.x[n:])
+	}
+}
+
+// stretch makes room for so many states and deviations, and keeps what is there.
+func (r *Run) stretch(n int) {
+	for _, p := range []*[]float64{&r.x, &r.next, &r.rateOld, &r.rateNew} {
+		if cap(*p) < n {
+			old := *p
+			*p = r.room.take(n)
+			copy(*p, old)
+		}
+		*p = (*p)[:n]
+	}
+	if cap(r.spare) < 3*n {
+		r.spare = r.room.take(3 * n)
+	}
 }
 
 // enterSegment goes over a corner: diodes may switch if a source jumps or if a capacitor current follows its slope.
@@ -339,6 +380,7 @@ func (r *Run) enterSegment(t float64) error {
 		return r.settle(-1)
 	}
 	r.refresh()
+	r.clearMoment()
 	r.look(r.x, 0)
 	for k := range r.watch {
 		w := &r.watch[k]
@@ -356,9 +398,19 @@ func (r *Run) enterSegment(t float64) error {
 // form evaluates a form at the present moment.
 func (r *Run) form(f []float64) float64 {
 	s := r.sys
-	v := dot(r.x, f) + f[s.width-1]
+	v := dot(r.x[:s.nx], f) + f[s.width-1]
 	for u := range s.nu {
-		v += float64(f[s.value(u)]*(r.seg.value[u]+float64(r.seg.slope[u]*r.tau))) + float64(f[s.slope(u)]*r.seg.slope[u])
+		value, slope := r.given(u)
+		v += float64(f[s.value(u)]*value) + float64(f[s.slope(u)]*slope)
+	}
+	return v
+}
+
+// bending is what the second derivatives of the sources add to the derivative of a form.
+func (r *Run) bending(f []float64) float64 {
+	v := 0.0
+	for i, b := range r.seg.bends {
+		v += float64(f[r.sys.slope(b.source)] * b.bendAt(r.tau, r.x[r.sys.nx+2*i:]))
 	}
 	return v
 }
