@@ -249,9 +249,5 @@ func (r *Run) settled() {
 	r.sys.solver.segment = -1
 	r.refresh()
 	r.look(r.x, r.tau)
-	for k := range r.watch {
-		w := &r.watch[k]
-		w.now = w.then
-	}
 	r.sample()
 }

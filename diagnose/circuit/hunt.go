@@ -5,14 +5,7 @@ import (
 	"math"
 )
 
-// closeBy is how near to its limit, relative to the scale of the circuit, a quantity must be at both ends of a step to
-// be checked for a dip between them; at 16 points a ring a dip is below 1 % of the swing.
-const closeBy = 0.02
-
-// peakBy is the same for the peak of a probe, relative to the range it has covered, which a ring may just be widening.
-const peakBy = 0.06
-
-// dipGuard is what is added to the depth of a dip that the slopes at both ends of a step tell.
+// dipGuard is what is added to the depth of a dip that the rates at both ends of a step tell.
 const dipGuard = 0.05
 
 // sightShare is the share of a step up to which the estimate of a crossing inside it is trusted.
@@ -25,44 +18,30 @@ type stop struct {
 	armed, hit bool
 }
 
-// ends gives what of a watch must stay above least: its height at both ends of the step tried, and above which
-// height at both ends it need not be looked at closer. False if nobody asks for it.
-func (r *Run) ends(k int) (a, b, least, near float64, asked bool) {
+// heights are what of a watch must stay above least: its height and the rate of that at both ends of the step tried.
+type heights struct{ a, da, b, db, least float64 }
+
+// ends gives the heights of a watch; false if nobody asks for it.
+func (r *Run) ends(k int) (h heights, asked bool) {
 	w := &r.watch[k]
 	if w.isDiode {
-		return w.now, w.then, -w.tol, w.near, true
+		return heights{w.now, w.rate, w.then, w.rateThen, -w.tol}, true
 	}
 	if k != r.stop.watch || !r.stop.armed {
-		return 0, 0, 0, 0, false
+		return h, false
 	}
-	return r.stop.level - w.now, r.stop.level - w.then, 0, closeBy * (math.Abs(r.stop.level) + r.volts + r.amps), true
+	return heights{r.stop.level - w.now, -w.rate, r.stop.level - w.then, -w.rateThen, 0}, true
 }
 
-// slopes gives the rates of that height, from bothRates.
-func (r *Run) slopes(k int) (da, db float64) {
-	da, db = r.sys.rateOf(k, r.rateOld), r.sys.rateOf(k, r.rateNew)
-	if !r.watch[k].isDiode {
-		return -da, -db
-	}
-	return da, db
+// crosses tells whether the height falls to the least, or dips and comes back, which is seen from the rates.
+func (h *heights) crosses(dt float64) bool {
+	return h.b <= h.least || h.da < 0 && h.db > 0 && dip(h.a, h.da, h.b, h.db, dt) < h.least
 }
 
-// trouble tells whether a diode switches, or the stop level is reached, within the step tried. A dip and return
-// inside the step is seen from the slopes at its ends.
+// trouble tells whether a diode switches, or the stop level is reached, within the step tried.
 func (r *Run) trouble(dt float64) bool {
 	for k := range r.watch {
-		a, b, least, near, asked := r.ends(k)
-		if !asked {
-			continue
-		}
-		if b <= least {
-			return true
-		}
-		if a > near && b > near {
-			continue
-		}
-		r.bothRates(dt)
-		if da, db := r.slopes(k); da < 0 && db > 0 && dip(a, da, b, db, dt) < least {
+		if h, asked := r.ends(k); asked && h.crosses(dt) {
 			return true
 		}
 	}
@@ -74,13 +53,11 @@ func (r *Run) trouble(dt float64) bool {
 func (r *Run) aim(dt float64) {
 	first := 2.0
 	for k := range r.watch {
-		a, b, least, _, asked := r.ends(k)
-		if !asked || b > least {
+		h, asked := r.ends(k)
+		if !asked || h.b > h.least {
 			continue
 		}
-		r.bothRates(dt)
-		da, db := r.slopes(k)
-		first = math.Min(first, cubic(a-least, float64(da*dt), b-least, float64(db*dt)).crossing())
+		first = math.Min(first, cubic(h.a-h.least, float64(h.da*dt), h.b-h.least, float64(h.db*dt)).crossing())
 	}
 	if r.goal = 0; first < 2 {
 		r.goal, r.sight = r.tau+float64(first*dt), dt/sightShare
@@ -114,18 +91,6 @@ func (p third) crossing() float64 {
 	return low
 }
 
-// bothRates computes the derivatives of the states at the start and the end of the step tried, those not known yet.
-func (r *Run) bothRates(dt float64) {
-	if !r.knowOld {
-		r.sys.rates(r.rateOld, r.x, r.tau)
-		r.knowOld = true
-	}
-	if !r.knowNew {
-		r.sys.rates(r.rateNew, r.next, r.tau+dt)
-		r.knowNew = true
-	}
-}
-
 // dip gives a height that a curve with falling slope da at its start a and rising slope db at its end b does not go
 // below within dt: the least value of the cubic through both ends, and a share of its depth for what the cubic misses
 // (of a ring followed at 16 points a period, 1e-4 of its size).
@@ -143,7 +108,7 @@ func (r *Run) event(dt float64) (stopped bool, err error) {
 	first, who := dt, -1
 	for k := range r.watch {
 		w := &r.watch[k]
-		if a, b, _, near, asked := r.ends(k); !asked || (a > near && b > near) {
+		if h, asked := r.ends(k); !asked || !h.crosses(dt) {
 			continue
 		}
 		p := s.polynomial(k, r.tau)
@@ -160,7 +125,7 @@ func (r *Run) event(dt float64) (stopped bool, err error) {
 			first, who = at*unit, k
 		}
 	}
-	if who < 0 { // a near miss that the slopes could not rule out
+	if who < 0 { // a near miss that the rates could not rule out
 		return false, r.accept(dt, r.retry(dt), r.tau+dt)
 	}
 	r.retry(first)
@@ -183,7 +148,6 @@ func (r *Run) event(dt float64) (stopped bool, err error) {
 // retry computes the step anew from the expanded polynomial and returns the level that says so.
 func (r *Run) retry(dt float64) int {
 	r.sys.along(r.next, dt)
-	r.knowNew = false
 	r.look(r.next, r.tau+dt)
 	return -1
 }

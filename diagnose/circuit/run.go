@@ -41,10 +41,6 @@ type Run struct {
 	sys     *system
 	held    []float64 // per branch: capacitor voltage, inductor current at the last event
 	x, next []float64 // states now and after the step tried
-	rateOld []float64 // derivatives at both ends of a step, and whether they are known
-	rateNew []float64
-	knowOld bool
-	knowNew bool
 	spare   []float64
 	seg     segment
 	tau     float64 // time since the start of the segment
@@ -57,7 +53,7 @@ type Run struct {
 	per     int     // steps at each length while growing
 	calm    float64 // time since the last restart
 	watch   []watch
-	looked  []float64 // scratch, a value per watch
+	looked  []float64 // scratch, a value and a rate per watch
 	stop    stop
 	totals  []total   // per branch
 	moment  []float64 // ∫ y·yᵀ over the present segment and pattern, y = [states | 1 | τ]
@@ -97,7 +93,7 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 		}
 		if b.kind == diode {
 			r.watch = append(r.watch, watch{branch: k, isDiode: true})
-			r.looked = append(r.looked, 0)
+			r.looked = append(r.looked, 0, 0)
 		}
 	}
 	r.seg = segment{value: make([]float64, c.sources), slope: make([]float64, c.sources), bends: make([]bend, 0, c.sources)}
@@ -257,7 +253,6 @@ func (r *Run) try(dt float64, l int) {
 		r.sys.expand(r.x, r.tau)
 		r.sys.along(r.next, dt)
 	}
-	r.knowNew = false
 	r.look(r.next, r.tau+dt)
 }
 
@@ -268,12 +263,8 @@ func (r *Run) accept(dt float64, l int, at float64) error {
 	}
 	r.record(dt, l, at)
 	r.x, r.next = r.next, r.x
-	r.rateOld, r.rateNew = r.rateNew, r.rateOld
-	r.knowOld, r.knowNew = r.knowNew && at == r.tau+dt, false
 	r.tau = at
-	for k := range r.watch {
-		r.watch[k].now = r.watch[k].then
-	}
+	r.arrive()
 	for _, v := range r.x {
 		if !(math.Abs(v) < 1e150) {
 			return fmt.Errorf("circuit: the solution grows without bound at %g s; check the sources", r.Time())
@@ -355,7 +346,7 @@ func (r *Run) locateSegment(t float64) {
 
 // stretch makes room for so many states and deviations, and keeps what is there.
 func (r *Run) stretch(n int) {
-	for _, p := range []*[]float64{&r.x, &r.next, &r.rateOld, &r.rateNew} {
+	for _, p := range []*[]float64{&r.x, &r.next} {
 		if cap(*p) < n {
 			old := *p
 			*p = r.room.take(n)
@@ -363,8 +354,8 @@ func (r *Run) stretch(n int) {
 		}
 		*p = (*p)[:n]
 	}
-	if cap(r.spare) < 3*n {
-		r.spare = r.room.take(3 * n)
+	if cap(r.spare) < 2*n {
+		r.spare = r.room.take(2 * n)
 	}
 }
 
@@ -383,12 +374,10 @@ func (r *Run) enterSegment(t float64) error {
 	r.clearMoment()
 	r.look(r.x, 0)
 	for k := range r.watch {
-		w := &r.watch[k]
-		if w.isDiode && w.then < -w.tol {
+		if w := &r.watch[k]; w.isDiode && w.then < -w.tol {
 			r.keep()
 			return r.settle(-1)
 		}
-		w.now = w.then
 	}
 	r.sample()
 	r.restart(true)
