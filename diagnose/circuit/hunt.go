@@ -8,6 +8,10 @@ import (
 // dipGuard is what is added to the depth of a dip that the rates at both ends of a step tell.
 const dipGuard = 0.05
 
+// roughBy is how far, relative to the scale of the circuit, a watched quantity may end from where the mean of its rates at
+// both ends of a step would take it; at 8 points a ring that is 4 % of the ring. A cubic through both ends is then close.
+const roughBy = 0.04
+
 // sightShare is the share of a step up to which the estimate of a crossing inside it is trusted.
 const sightShare = 512
 
@@ -36,6 +40,47 @@ func (r *Run) ends(k int) (h heights, asked bool) {
 // crosses tells whether the height falls to the least, or dips and comes back, which is seen from the rates.
 func (h *heights) crosses(dt float64) bool {
 	return h.b <= h.least || h.da < 0 && h.db > 0 && dip(h.a, h.da, h.b, h.db, dt) < h.least
+}
+
+// rough tells whether a step is too long for what it passes over, and notes how rough it is.
+func (r *Run) rough(dt float64) bool {
+	r.defect = 0
+	for k := range r.watch {
+		w := &r.watch[k]
+		miss := math.Abs(w.then - w.now - float64(0.5*dt*(w.rate+w.rateThen)))
+		r.defect = math.Max(r.defect, miss/r.scale(w))
+	}
+	return r.defect > roughBy
+}
+
+// scale is the size of what a watch measures.
+func (r *Run) scale(w *watch) float64 {
+	switch {
+	case w.isSlope:
+		return math.Max(math.Abs(w.top.V), math.Abs(w.low.V)) + math.SmallestNonzeroFloat64
+	case w.isCurrent || w.isDiode && w.conducts:
+		return r.amps + math.SmallestNonzeroFloat64
+	}
+	return r.volts + math.SmallestNonzeroFloat64
+}
+
+// opening gives the level of the first step after an event or a corner: what was kicked there shows in the rates, and what
+// does not show moves nothing.
+func (r *Run) opening() int {
+	v := &r.sys.solver
+	l := v.grade
+	if !r.opts.quick() {
+		return l
+	}
+	least := math.Inf(1)
+	for k := range r.watch {
+		w := &r.watch[k]
+		least = math.Min(least, roughBy*r.scale(w)/math.Abs(w.rate))
+	}
+	for l > r.lowest() && v.levels[l-1].h <= least {
+		l--
+	}
+	return l
 }
 
 // trouble tells whether a diode switches, or the stop level is reached, within the step tried.

@@ -8,7 +8,8 @@ import (
 
 const (
 	pointsPerRing = 40  // steps per period of the fastest ring that is not damped away at once, for a trace
-	pointsToFind  = 16  // the same when only peaks and events are wanted
+	pointsToFind  = 16  // the same when only energies, peaks and events are wanted
+	pointsAtPeak  = 8   // the same when only peaks and events are wanted, with steps that watch what they miss
 	ringDamping   = 0.5 // modes damped more than this do not shorten the step; restarts resolve them
 	dampingToFind = 0.8 // the same when only peaks and events are wanted, with steps that grow faster
 	dieAway       = 14  // time constants until a ring counts for nothing (1e-6 of its size)
@@ -24,10 +25,13 @@ const (
 
 // follow gives the steps per period of a ring, and the damping above which it need not be followed.
 func (o *options) follow() (points, damping float64) {
-	if o.trace {
+	switch {
+	case o.trace:
 		return pointsPerRing, ringDamping
+	case o.energy:
+		return pointsToFind, dampingToFind
 	}
-	return pointsToFind, dampingToFind
+	return pointsAtPeak, dampingToFind
 }
 
 // pace gives the steps at each length while the step grows after an event, or after a mere corner of a waveform.
@@ -37,9 +41,14 @@ func (o *options) pace(corner bool) int {
 		return energySteps
 	case o.trace && !corner:
 		return restartSteps
+	case o.quick():
+		return 1
 	}
 	return kinkSteps
 }
+
+// quick tells that only peaks and events are wanted: the steps need not be even, nor short enough for a quadrature.
+func (o *options) quick() bool { return !o.trace && !o.energy }
 
 // gaussNode and gaussWeight are the Gauss-Legendre nodes and weights on [0, 1].
 var (

@@ -52,6 +52,7 @@ type Run struct {
 	left    int
 	per     int     // steps at each length while growing
 	calm    float64 // time since the last restart
+	defect  float64 // what the last step missed, relative to the scale
 	watch   []watch
 	looked  []float64 // scratch, a value and a rate per watch
 	stop    stop
@@ -191,6 +192,10 @@ func (r *Run) advance(t float64) (stopped bool, err error) {
 	}
 	dt, l := r.choose(room)
 	r.try(dt, l)
+	if r.opts.quick() && l >= 0 && l < len(r.sys.solver.levels)-1 && r.rough(dt) {
+		r.rung, r.left = l+1, r.per
+		return false, nil
+	}
 	if r.trouble(dt) {
 		if l >= 0 && l < len(r.sys.solver.levels)-1 {
 			if !r.opts.trace { // the samples of a trace are to be even
@@ -224,7 +229,7 @@ func until(from, end float64) float64 {
 func (r *Run) choose(room float64) (dt float64, l int) {
 	levels := r.sys.solver.levels
 	if r.rung >= len(levels) {
-		r.rung = r.sys.solver.grade
+		r.rung = r.opening()
 	}
 	l = r.rung
 	if left := r.goal - r.tau; left > r.sight {
@@ -277,16 +282,21 @@ func (r *Run) accept(dt float64, l int, at float64) error {
 // grow lengthens the steps as the time since the last event grows; rings hold them back until they have died away.
 func (r *Run) grow(dt float64) {
 	r.calm += dt
+	if r.left--; r.left <= 0 && r.defect <= roughBy/8 && r.rung > r.lowest() {
+		r.rung--
+		r.left = r.per
+	}
+}
+
+// lowest is the level to which the steps may grow as yet.
+func (r *Run) lowest() int {
 	lowest := 0
 	for _, g := range r.sys.solver.rings {
 		if r.calm <= g.quiet && g.level > lowest {
 			lowest = g.level
 		}
 	}
-	if r.left--; r.left <= 0 && r.rung > lowest {
-		r.rung--
-		r.left = r.per
-	}
+	return lowest
 }
 
 // restart makes the steps short again after an event or a corner of a waveform, so that fast modes are followed.
