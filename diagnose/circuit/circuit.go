@@ -25,6 +25,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 )
 
 // kind tells what a branch is.
@@ -67,9 +68,7 @@ type coupling struct {
 // and reported by Start, so that a circuit can be built without looking at every call.
 type Circuit struct {
 	nodes    []string
-	number   map[string]int
 	branches []branch
-	byName   map[string]int
 	couples  []coupling
 	sources  int
 	diodes   int
@@ -88,16 +87,15 @@ const maxDiodes = 62
 
 // New starts an empty circuit.
 func New() *Circuit {
-	return &Circuit{nodes: []string{"0"}, number: map[string]int{"0": 0}, byName: map[string]int{}}
+	return &Circuit{nodes: append(make([]string, 0, 16), "0"), branches: make([]branch, 0, 32)}
 }
 
 // Node gives the number of a named node, making it on first use; "0" is the reference.
 func (c *Circuit) Node(name string) int {
-	if n, ok := c.number[name]; ok {
+	if n := slices.Index(c.nodes, name); n >= 0 {
 		return n
 	}
 	c.nodes = append(c.nodes, name)
-	c.number[name] = len(c.nodes) - 1
 	return len(c.nodes) - 1
 }
 
@@ -138,8 +136,8 @@ func (c *Circuit) Diode(name string, a, b int, volt, ohm float64) {
 
 // Couple couples two inductors already added, with factor -1 < k < 1; both count from their first node.
 func (c *Circuit) Couple(first, second string, k float64) {
-	i, okFirst := c.byName[first]
-	j, okSecond := c.byName[second]
+	i, okFirst := c.find(first)
+	j, okSecond := c.find(second)
 	switch {
 	case !okFirst || !okSecond || c.branches[i].kind != inductor || c.branches[j].kind != inductor || i == j:
 		c.fault("coupling of %q and %q: both must be different inductors added before", first, second)
@@ -154,7 +152,7 @@ func (c *Circuit) Couple(first, second string, k float64) {
 // add checks an element and stores it; a faulty one is remembered and stored too, so that later names still resolve.
 func (c *Circuit) add(b branch) {
 	what := kindName[b.kind]
-	if _, taken := c.byName[b.name]; taken || b.name == "" {
+	if _, taken := c.find(b.name); taken || b.name == "" {
 		c.fault("%s %q: the name is empty or already taken; give every element its own name", what, b.name)
 	}
 	if b.a < 0 || b.a >= len(c.nodes) || b.b < 0 || b.b >= len(c.nodes) {
@@ -174,8 +172,17 @@ func (c *Circuit) add(b branch) {
 			c.fault("%s %q: %w", what, b.name, err)
 		}
 	}
-	c.byName[b.name] = len(c.branches)
 	c.branches = append(c.branches, b)
+}
+
+// find gives the branch of a name; a list as short as this is read faster than hashed.
+func (c *Circuit) find(name string) (number int, ok bool) {
+	for k := range c.branches {
+		if c.branches[k].name == name {
+			return k, true
+		}
+	}
+	return 0, false
 }
 
 func (c *Circuit) fault(format string, args ...any) {

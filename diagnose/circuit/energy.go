@@ -94,7 +94,7 @@ func (r *Run) Square(name string) float64 { return r.total(name).square }
 type total struct{ energy, charge, square float64 }
 
 func (r *Run) total(name string) total {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	if !ok || !r.opts.energy {
 		return total{math.NaN(), math.NaN(), math.NaN()}
 	}
@@ -105,7 +105,7 @@ func (r *Run) total(name string) total {
 // Stored gives the energy a named capacitor or inductor holds at present (½·C·v² or ½·L·i², joules); NaN otherwise.
 // The mutual energy of coupled inductors belongs to none of them and is left out.
 func (r *Run) Stored(name string) float64 {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	if !ok {
 		return math.NaN()
 	}

@@ -42,20 +42,23 @@ func (r *Run) tolerance(w *watch) float64 {
 
 // system gives the equations of a pattern, from the cache if it was met before.
 func (r *Run) system(p pattern) (*system, error) {
-	if s, ok := r.cache[p]; ok {
-		return s, nil
+	for _, s := range r.cache {
+		if s.pattern == p {
+			return s, nil
+		}
 	}
-	s, err := newSystem(r.c, p.on, p.leaky, &r.room)
+	s, err := newSystem(r.c, p, r.room)
 	if err != nil {
 		return nil, err
 	}
-	r.cache[p] = s
+	r.cache = append(r.cache, s)
 	return s, nil
 }
 
 // keep writes the states back to the branches, those in loops and cut sets included.
 func (r *Run) keep() {
-	for k, b := range r.c.branches {
+	for k := range r.c.branches {
+		b := &r.c.branches[k]
 		if b.kind == capacitor && b.value > 0 {
 			r.held[k] = r.form(r.sys.v(k))
 		} else if b.kind == inductor {

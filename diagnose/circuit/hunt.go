@@ -12,6 +12,9 @@ const dipGuard = 0.05
 // both ends of a step would take it; at 8 points a ring that is 4 % of the ring. A cubic through both ends is then close.
 const roughBy = 0.04
 
+// rateRounding is what rounding leaves of a rate, relative to the fastest rate of the circuit.
+const rateRounding = 1e-14
+
 // sightShare is the share of a step up to which the estimate of a crossing inside it is trusted.
 const sightShare = 512
 
@@ -50,37 +53,20 @@ func (r *Run) rough(dt float64) bool {
 		miss := math.Abs(w.then - w.now - float64(0.5*dt*(w.rate+w.rateThen)))
 		r.defect = math.Max(r.defect, miss/r.scale(w))
 	}
+	r.defect -= float64(rateRounding * r.sys.norm * dt)
 	return r.defect > roughBy
 }
 
 // scale is the size of what a watch measures.
 func (r *Run) scale(w *watch) float64 {
+	size := math.Max(math.Abs(w.top.V), math.Abs(w.low.V)) + math.SmallestNonzeroFloat64
 	switch {
 	case w.isSlope:
-		return math.Max(math.Abs(w.top.V), math.Abs(w.low.V)) + math.SmallestNonzeroFloat64
+		return size
 	case w.isCurrent || w.isDiode && w.conducts:
-		return r.amps + math.SmallestNonzeroFloat64
+		return math.Max(size, r.amps)
 	}
-	return r.volts + math.SmallestNonzeroFloat64
-}
-
-// opening gives the level of the first step after an event or a corner: what was kicked there shows in the rates, and what
-// does not show moves nothing.
-func (r *Run) opening() int {
-	v := &r.sys.solver
-	l := v.grade
-	if !r.opts.quick() {
-		return l
-	}
-	least := math.Inf(1)
-	for k := range r.watch {
-		w := &r.watch[k]
-		least = math.Min(least, roughBy*r.scale(w)/math.Abs(w.rate))
-	}
-	for l > r.lowest() && v.levels[l-1].h <= least {
-		l--
-	}
-	return l
+	return math.Max(size, r.volts)
 }
 
 // trouble tells whether a diode switches, or the stop level is reached, within the step tried.

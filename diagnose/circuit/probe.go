@@ -31,7 +31,7 @@ func (r *Run) Probe(a, b int) int {
 
 // ProbeCurrent records the current of a named element from now on and gives its handle; -1 if there is none.
 func (r *Run) ProbeCurrent(name string) int {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	if !ok {
 		return -1
 	}
@@ -149,7 +149,7 @@ func (r *Run) makeForms() {
 		case w.isCurrent:
 			copy(f, s.i(w.branch))
 		case w.isSlope:
-			plain := make([]float64, s.width)
+			plain := r.room.take(s.width)
 			s.difference(plain, w.a, w.b)
 			s.derive(f, plain, 1)
 		default:

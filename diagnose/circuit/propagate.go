@@ -231,7 +231,7 @@ func (s *system) balancedNorm() float64 {
 
 // chain gives the levels h, h/2 ... h/2^count, the last by Taylor series; fill makes the others.
 func (s *system) chain(h float64, count int) []level {
-	list := make([]level, count+1)
+	list := s.room.levels.take(count + 1)
 	for k := range list {
 		list[k] = level{h: math.Ldexp(h, -k), segment: -1}
 	}

@@ -33,7 +33,7 @@ func (r *Run) Retarget(name string, w Waveform, curves ...Curve) {
 
 // source gives the number of a named source.
 func (r *Run) source(name string) (number int, ok bool) {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	if !ok || (r.c.branches[k].kind != voltageSource && r.c.branches[k].kind != currentSource) {
 		return 0, false
 	}
@@ -67,6 +67,9 @@ func (r *Run) ran(source int) Waveform {
 // that Source gives, so that the deck needs nobody to change it on the way. An end after Time runs on with the present
 // waveforms.
 func (r *Run) Netlist(title string, end, step float64, measures ...Measure) (string, error) {
+	if r.sys == nil {
+		return "", r.err
+	}
 	c := r.c.snapshot()
 	for k := range c.branches {
 		if b := &c.branches[k]; b.kind == voltageSource || b.kind == currentSource {

@@ -35,8 +35,8 @@ type Run struct {
 	opts    options
 	waves   []source
 	turns   []turn // what Retarget did so far
-	cache   map[pattern]*system
-	room    room
+	cache   []*system
+	room    *room
 	on      uint64 // conducting diodes
 	sys     *system
 	held    []float64 // per branch: capacitor voltage, inductor current at the last event
@@ -76,7 +76,7 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 	if err := c.check(); err != nil {
 		return nil, err
 	}
-	r := &Run{c: c.snapshot(), cache: map[pattern]*system{}}
+	r := &Run{c: c.view(), room: rooms.Get().(*room)}
 	r.opts = options{energy: true, trace: true, longest: math.Inf(1), limit: 2_000_000}
 	for _, o := range opts {
 		o(&r.opts)
@@ -84,10 +84,14 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 	if !(r.opts.longest > 0) {
 		return nil, fmt.Errorf("circuit: step %g s must be above zero", r.opts.longest)
 	}
-	r.held = make([]float64, len(c.branches))
-	r.totals = make([]total, len(c.branches))
+	r.held = r.room.take(len(c.branches))
+	if r.opts.energy {
+		r.totals = make([]total, len(c.branches))
+	}
+	r.watch, r.looked = make([]watch, 0, c.diodes+4), make([]float64, 0, 2*c.diodes+8)
 	r.waves = make([]source, c.sources)
-	for k, b := range r.c.branches {
+	for k := range r.c.branches {
+		b := &r.c.branches[k]
 		r.held[k] = b.start
 		if b.kind == voltageSource || b.kind == currentSource {
 			r.waves[b.index] = b.source()
@@ -97,7 +101,7 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 			r.looked = append(r.looked, 0, 0)
 		}
 	}
-	r.seg = segment{value: make([]float64, c.sources), slope: make([]float64, c.sources), bends: make([]bend, 0, c.sources)}
+	r.seg = segment{value: r.room.take(c.sources), slope: r.room.take(c.sources), bends: make([]bend, 0, c.sources)}
 	r.locateSegment(0)
 	r.firstScale()
 	if err := r.settle(-1); err != nil {
@@ -106,23 +110,26 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 	return r, nil
 }
 
-// snapshot keeps a run apart from elements added later.
+// snapshot is a copy whose elements can be changed.
 func (c *Circuit) snapshot() *Circuit {
 	d := *c
 	d.nodes = slices.Clone(c.nodes)
 	d.branches = slices.Clone(c.branches)
 	d.couples = slices.Clone(c.couples)
-	d.byName = make(map[string]int, len(c.byName))
-	for k := range d.branches {
-		d.byName[d.branches[k].name] = k
-	}
+	return &d
+}
+
+// view keeps a run apart from elements added later: they come behind, or into another list.
+func (c *Circuit) view() *Circuit {
+	d := *c
+	d.nodes, d.branches, d.couples = slices.Clip(c.nodes), slices.Clip(c.branches), slices.Clip(c.couples)
 	return &d
 }
 
 // firstScale takes the scale of tolerances from sources, initial values and thresholds.
 func (r *Run) firstScale() {
-	for k, b := range r.c.branches {
-		switch b.kind {
+	for k := range r.c.branches {
+		switch b := &r.c.branches[k]; b.kind {
 		case capacitor:
 			r.volts = math.Max(r.volts, math.Abs(r.held[k]))
 		case inductor:
@@ -192,7 +199,7 @@ func (r *Run) advance(t float64) (stopped bool, err error) {
 	}
 	dt, l := r.choose(room)
 	r.try(dt, l)
-	if r.opts.quick() && l >= 0 && l < len(r.sys.solver.levels)-1 && r.rough(dt) {
+	if r.opts.quick() && l >= 0 && r.rough(dt) && l < len(r.sys.solver.levels)-1 {
 		r.rung, r.left = l+1, r.per
 		return false, nil
 	}
@@ -229,7 +236,7 @@ func until(from, end float64) float64 {
 func (r *Run) choose(room float64) (dt float64, l int) {
 	levels := r.sys.solver.levels
 	if r.rung >= len(levels) {
-		r.rung = r.opening()
+		r.rung = r.sys.solver.grade
 	}
 	l = r.rung
 	if left := r.goal - r.tau; left > r.sight {
@@ -302,7 +309,7 @@ func (r *Run) lowest() int {
 // restart makes the steps short again after an event or a corner of a waveform, so that fast modes are followed.
 func (r *Run) restart(corner bool) {
 	per := r.opts.pace(corner)
-	r.rung, r.left, r.per, r.calm, r.goal = mostLevels+1, per, per, 0, 0
+	r.rung, r.left, r.per, r.calm, r.goal, r.defect = mostLevels+1, per, per, 0, 0, 0
 }
 
 // jumpsAt tells whether a source jumps at t, the end of the present segment or a moment within it.

@@ -53,9 +53,9 @@ func (s scene) turnOn() (*Edge, error) {
 	if err == nil && reached {
 		err = c.block(run, probe, r)
 	}
-	e := c.read(run, probe, Edge{Name: turnOn, Shape: shapeRamp})
+	e := Edge{Name: turnOn, Shape: shapeRamp}
 	e.Surge, _ = run.Peak(surge)
-	return e, err
+	return c.read(run, probe, e), err
 }
 
 // block is the closing from the moment the diode blocks.
