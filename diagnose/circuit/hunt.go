@@ -51,7 +51,9 @@ func (r *Run) rough(dt float64) bool {
 	for k := range r.watch {
 		w := &r.watch[k]
 		miss := math.Abs(w.then - w.now - float64(0.5*dt*(w.rate+w.rateThen)))
-		r.defect = math.Max(r.defect, miss/r.scale(w))
+		if size := r.scale(w); miss > r.defect*size {
+			r.defect = miss / size
+		}
 	}
 	r.defect -= float64(rateRounding * r.sys.norm * dt)
 	return r.defect > roughBy
@@ -196,8 +198,8 @@ func (r *Run) headway(who int) error {
 }
 
 // polynomial gives a watched quantity as a polynomial of the time after τ in units of the finest step.
-func (s *system) polynomial(k int, tau float64) *[degree + 1]float64 {
-	n, p, f := s.solver.order, &s.solver.scalar, s.line(k)
+func (s *system) polynomial(k int, tau float64) []float64 {
+	n, p, f := s.solver.order, s.solver.scalar[:s.solver.terms], s.line(k)
 	for i := range p {
 		p[i] = dot(row(s.solver.poly, n, i), f)
 	}
@@ -207,7 +209,7 @@ func (s *system) polynomial(k int, tau float64) *[degree + 1]float64 {
 }
 
 // firstRoot gives the first place in [0, dt] where a polynomial that starts positive falls to zero.
-func firstRoot(p *[degree + 1]float64, dt float64) (float64, bool) {
+func firstRoot(p []float64, dt float64) (float64, bool) {
 	if p[0] <= 0 {
 		return 0, true
 	}
@@ -216,43 +218,70 @@ func firstRoot(p *[degree + 1]float64, dt float64) (float64, bool) {
 		if !(slopeAt(p, 0) < 0 && slopeAt(p, dt) > 0) {
 			return 0, false
 		}
-		end = bisect(dt, func(t float64) bool { return slopeAt(p, t) < 0 })
+		end = turnOf(p, dt, -1)
 		if horner(p, end) > 0 {
 			return 0, false
 		}
 	}
-	return bisect(end, func(t float64) bool { return horner(p, t) > 0 }), true
+	return rootOf(end, func(t float64) (v, slope float64) { return horner(p, t), slopeAt(p, t) }), true
 }
 
-// bisect gives the place in [0, end] where a condition true at 0 stops being true, to the last digit.
-func bisect(end float64, holds func(float64) bool) float64 {
-	low, high := 0.0, end
-	for range 60 {
-		mid := low + float64(0.5*(high-low))
-		if mid <= low || mid >= high {
+// turnOf gives where a polynomial that starts with a slope of a sign turns round within [0, dt].
+func turnOf(p []float64, dt, sign float64) float64 {
+	return rootOf(dt, func(t float64) (v, slope float64) { return sign * slopeAt(p, t), sign * bendAt(p, t) })
+}
+
+// rootOf gives the place in [0, end] where a function positive at 0 stops being so, to the last digits. Newton's steps close
+// in from one side; one twice as long then catches the other. Where they leave the bracket its middle is taken.
+func rootOf(end float64, f func(float64) (v, slope float64)) float64 {
+	low, high, at := 0.0, end, 0.5*end
+	for range 100 {
+		width := high - low
+		v, slope := f(at)
+		switch {
+		case v > 0:
+			low = at
+		case v < 0:
+			high = at
+		default:
+			return at
+		}
+		step := math.Abs(v / slope)
+		if high-low > 0.5*width {
+			step *= 2
+		}
+		next := at + math.Copysign(math.Max(step, 2e-16*end), v)
+		if !(next > low && next < high) {
+			next = low + float64(0.5*(high-low))
+		}
+		if next <= low || next >= high {
 			break
 		}
-		if holds(mid) {
-			low = mid
-		} else {
-			high = mid
-		}
+		at = next
 	}
 	return high
 }
 
-func horner(p *[degree + 1]float64, t float64) float64 {
-	v := p[degree]
-	for k := degree - 1; k >= 0; k-- {
+func horner(p []float64, t float64) float64 {
+	v := 0.0
+	for k := len(p) - 1; k >= 0; k-- {
 		v = float64(v*t) + p[k]
 	}
 	return v
 }
 
-func slopeAt(p *[degree + 1]float64, t float64) float64 {
-	v := degree * p[degree]
-	for k := degree - 1; k >= 1; k-- {
+func slopeAt(p []float64, t float64) float64 {
+	v := 0.0
+	for k := len(p) - 1; k >= 1; k-- {
 		v = float64(v*t) + float64(float64(k)*p[k])
+	}
+	return v
+}
+
+func bendAt(p []float64, t float64) float64 {
+	v := 0.0
+	for k := len(p) - 1; k >= 2; k-- {
+		v = float64(v*t) + float64(float64(k*(k-1))*p[k])
 	}
 	return v
 }

@@ -260,7 +260,7 @@ func (r *Run) extreme(k int, dt float64, l int, sign float64) {
 	s.expand(x, tau)
 	p := s.polynomial(k, tau)
 	unit := s.solver.unit()
-	turn := bisect(dt/unit, func(t float64) bool { return sign*slopeAt(p, t) > 0 })
+	turn := turnOf(p, dt/unit, sign)
 	r.watch[k].reach(r.seg.from+tau+float64(turn*unit), horner(p, turn))
 }
 

@@ -7,20 +7,21 @@ import (
 )
 
 const (
-	pointsPerRing = 40  // steps per period of the fastest ring that is not damped away at once, for a trace
-	pointsToFind  = 16  // the same when only energies, peaks and events are wanted
-	pointsAtPeak  = 8   // the same when only peaks and events are wanted, with steps that watch what they miss
-	ringDamping   = 0.5 // modes damped more than this do not shorten the step; restarts resolve them
-	dampingToFind = 0.8 // the same when only peaks and events are wanted, with steps that grow faster
-	dieAway       = 14  // time constants until a ring counts for nothing (1e-6 of its size)
-	dieAwayEnergy = 23  // the same when energies are kept (1e-10)
-	smallNorm     = 0.5 // rate × step below which the Taylor polynomial is used
-	degree        = 15  // of that polynomial: 0.5^16/16! is below the last digit
-	mostLevels    = 90  // halvings of the step
-	restartSteps  = 4   // steps at each length while the step grows after an event, for a trace
-	kinkSteps     = 2   // the same after a mere corner of a waveform
-	energySteps   = 6   // the same after both when energies are kept
-	gaussPoints   = 5   // per step for energies; the error at 16 points a ring is 1e-13
+	pointsPerRing = 40    // steps per period of the fastest ring that is not damped away at once, for a trace
+	pointsToFind  = 16    // the same when only energies, peaks and events are wanted
+	pointsAtPeak  = 8     // the same when only peaks and events are wanted, with steps that watch what they miss
+	ringDamping   = 0.5   // modes damped more than this do not shorten the step; restarts resolve them
+	dampingToFind = 0.8   // the same when only peaks and events are wanted, with steps that grow faster
+	dieAway       = 14    // time constants until a ring counts for nothing (1e-6 of its size)
+	dieAwayEnergy = 23    // the same when energies are kept (1e-10)
+	smallNorm     = 0.5   // rate × step below which the Taylor polynomial is used
+	degree        = 15    // of that polynomial: 0.5^16/16! is below the last digit
+	lastBit       = 1e-17 // of a sum, relative; what is smaller adds nothing
+	mostLevels    = 90    // halvings of the step
+	restartSteps  = 4     // steps at each length while the step grows after an event, for a trace
+	kinkSteps     = 2     // the same after a mere corner of a waveform
+	energySteps   = 6     // the same after both when energies are kept
+	gaussPoints   = 5     // per step for energies; the error at 16 points a ring is 1e-13
 )
 
 // follow gives the steps per period of a ring, and the damping above which it need not be followed.
@@ -90,6 +91,7 @@ type solver struct {
 	forms   []float64            // forms of the watched quantities
 	watch   []float64            // the same collapsed: rows of order+2
 	poly    []float64            // Taylor coefficients of the states: degree+1 rows of order
+	terms   int                  // of them that count
 	scalar  [degree + 1]float64
 }
 
@@ -351,14 +353,19 @@ func (s *system) driveLast(l *level, g *segment) {
 			now[i] = v.dx[i*w+j] * l.h
 			l.d[i*v.stride+j] = now[i]
 		}
-		for k := 2; k <= degree+2; k++ {
+		for k, quiet := 2, 0; k <= degree+2 && quiet < 2; k++ {
 			apply(next, v.dx, w, now)
+			quiet++
 			for i := range n {
 				if j == n && k == 2 { // the time has moved on
 					next[i] += float64(v.dx[i*w+n+1] * l.h)
 				}
 				next[i] = float64(next[i] * l.h / float64(k))
-				l.d[i*v.stride+j] += next[i]
+				sum := &l.d[i*v.stride+j]
+				if next[i] != 0 && math.Abs(next[i]) > lastBit*math.Abs(*sum) {
+					quiet = 0 // two terms that add nothing, and so do those to come
+				}
+				*sum += next[i]
 			}
 			now, next = next, now
 		}
@@ -452,7 +459,9 @@ func (s *system) expand(x []float64, tau float64) {
 	n, v := s.solver.order, &s.solver
 	copy(v.poly[:n], x)
 	unit := v.unit()
-	for k := 1; k <= degree; k++ {
+	quiet := 0
+	for v.terms = 1; v.terms <= degree && quiet < 2; v.terms++ {
+		k := v.terms
 		to := row(v.poly, n, k)
 		apply(to, v.dx, n+2, row(v.poly, n, k-1))
 		for i, d := range to {
@@ -464,6 +473,13 @@ func (s *system) expand(x []float64, tau float64) {
 			}
 			to[i] = d * unit / float64(k)
 		}
+		quiet++
+		for i, d := range to {
+			if d != 0 && math.Abs(d) > lastBit*math.Abs(x[i]) {
+				quiet = 0
+				break
+			}
+		}
 	}
 }
 
@@ -471,8 +487,9 @@ func (s *system) expand(x []float64, tau float64) {
 func (s *system) along(dst []float64, dt float64) {
 	n := s.solver.order
 	dt /= s.solver.unit()
-	copy(dst, row(s.solver.poly, n, degree))
-	for k := degree - 1; k >= 0; k-- {
+	last := s.solver.terms - 1
+	copy(dst, row(s.solver.poly, n, last))
+	for k := last - 1; k >= 0; k-- {
 		for i, c := range row(s.solver.poly, n, k) {
 			dst[i] = float64(dst[i]*dt) + c
 		}
