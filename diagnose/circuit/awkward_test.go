@@ -382,3 +382,45 @@ func TestNetlistNames(t *testing.T) {
 		t.Error("an unknown node was measured")
 	}
 }
+
+// A run that was released answers with NaN and errors, and the next one in its space knows nothing of it.
+func TestRelease(t *testing.T) {
+	solve := func(c *Circuit) (peak float64, r *Run) {
+		r = begin(t, c, WithoutEnergy(), WithoutTrace())
+		p := r.Probe(1, 0)
+		to(t, r, 2e-6)
+		peak, _ = r.Peak(p)
+		return peak, r
+	}
+	want, _ := solve(snubbedEdge())
+	other, _, _ := leg(50e-9)
+	for range 3 {
+		for _, c := range []*Circuit{other, snubbedEdge()} {
+			got, r := solve(c)
+			if c != other && got != want {
+				t.Errorf("peak %v in used space, %v in new", got, want)
+			}
+			r.Release()
+			r.Release()
+			if _, err := r.To(1, -1, 0); err == nil {
+				t.Error("a released run runs on")
+			}
+			if _, err := r.Netlist("x", 1, 0.1); err == nil {
+				t.Error("a released run has a netlist")
+			}
+			if _, err := r.Modes(); err == nil {
+				t.Error("a released run has modes")
+			}
+			r.Retarget("channel", Constant(1))
+			top, _ := r.Peak(0)
+			for k, v := range []float64{top, r.Voltage(1, 0), r.Slope(1, 0), r.BranchCurrent("channel"), r.Energy("channel"), r.Stored("Cs"), float64(r.Probe(1, 0)), float64(r.ProbeCurrent("channel"))} {
+				if !math.IsNaN(v) && v != -1 {
+					t.Errorf("question %d is answered by %g", k, v)
+				}
+			}
+			if r.Source("channel") != nil || r.Conducts("D") || r.Trace(0) != nil {
+				t.Error("a released run knows its sources")
+			}
+		}
+	}
+}

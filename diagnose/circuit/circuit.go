@@ -1,7 +1,8 @@
 // Package circuit solves the transients of small piecewise-linear circuits: resistors, capacitors, inductors
-// (coupled or not), sources with piecewise-linear waveforms, diodes and clamps. It knows nothing of drives.
+// (coupled or not), sources whose waveforms are straight pieces and curves, diodes and clamps. It knows nothing of drives.
 //
-// Between two switching events a circuit is linear, and its sources are straight lines. The step over such a span
+// Between two switching events a circuit is linear, and its sources are straight lines or solve linear equations of their
+// own (Curve), which are laid beside those of the circuit. The step over such a span
 // is the exact solution of the state equations (matrix exponential, cached by diode pattern), so the step length
 // decides only how often the solver looks, never how exact the result is. Events are found by halving the step
 // with the same cached matrices and, in the last piece, on the Taylor polynomial of the solution.
@@ -24,6 +25,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 )
 
 // kind tells what a branch is.
@@ -49,8 +51,12 @@ type branch struct {
 	start float64  // initial voltage of a capacitor, current of an inductor
 	volt  float64  // a diode's threshold
 	wave  Waveform // a source's waveform
+	bends []Curve  // in place of parts of it
 	index int      // among the sources, or among the diodes
 }
+
+// source is what a source does.
+func (b *branch) source() source { return source{b.wave, b.bends} }
 
 // coupling is a mutual inductance between two inductors (branch numbers).
 type coupling struct {
@@ -62,9 +68,7 @@ type coupling struct {
 // and reported by Start, so that a circuit can be built without looking at every call.
 type Circuit struct {
 	nodes    []string
-	number   map[string]int
 	branches []branch
-	byName   map[string]int
 	couples  []coupling
 	sources  int
 	diodes   int
@@ -83,16 +87,15 @@ const maxDiodes = 62
 
 // New starts an empty circuit.
 func New() *Circuit {
-	return &Circuit{nodes: []string{"0"}, number: map[string]int{"0": 0}, byName: map[string]int{}}
+	return &Circuit{nodes: append(make([]string, 0, 16), "0"), branches: make([]branch, 0, 32)}
 }
 
 // Node gives the number of a named node, making it on first use; "0" is the reference.
 func (c *Circuit) Node(name string) int {
-	if n, ok := c.number[name]; ok {
+	if n := slices.Index(c.nodes, name); n >= 0 {
 		return n
 	}
 	c.nodes = append(c.nodes, name)
-	c.number[name] = len(c.nodes) - 1
 	return len(c.nodes) - 1
 }
 
@@ -111,15 +114,15 @@ func (c *Circuit) Inductor(name string, a, b int, henry, ampere float64) {
 	c.add(branch{name: name, kind: inductor, a: a, b: b, value: henry, start: ampere})
 }
 
-// Voltage adds a voltage source: v(a) - v(b) = w(t).
-func (c *Circuit) Voltage(name string, a, b int, w Waveform) {
-	c.add(branch{name: name, kind: voltageSource, a: a, b: b, wave: w, index: c.sources})
+// Voltage adds a voltage source: v(a) - v(b) = w(t); curves, sorted by time, take the place of the waveform in theirs.
+func (c *Circuit) Voltage(name string, a, b int, w Waveform, curves ...Curve) {
+	c.add(branch{name: name, kind: voltageSource, a: a, b: b, wave: w, bends: curves, index: c.sources})
 	c.sources++
 }
 
-// Current adds a current source: w(t) flows from a through the source to b.
-func (c *Circuit) Current(name string, a, b int, w Waveform) {
-	c.add(branch{name: name, kind: currentSource, a: a, b: b, wave: w, index: c.sources})
+// Current adds a current source: w(t) flows from a through the source to b; curves as for Voltage.
+func (c *Circuit) Current(name string, a, b int, w Waveform, curves ...Curve) {
+	c.add(branch{name: name, kind: currentSource, a: a, b: b, wave: w, bends: curves, index: c.sources})
 	c.sources++
 }
 
@@ -133,8 +136,8 @@ func (c *Circuit) Diode(name string, a, b int, volt, ohm float64) {
 
 // Couple couples two inductors already added, with factor -1 < k < 1; both count from their first node.
 func (c *Circuit) Couple(first, second string, k float64) {
-	i, okFirst := c.byName[first]
-	j, okSecond := c.byName[second]
+	i, okFirst := c.find(first)
+	j, okSecond := c.find(second)
 	switch {
 	case !okFirst || !okSecond || c.branches[i].kind != inductor || c.branches[j].kind != inductor || i == j:
 		c.fault("coupling of %q and %q: both must be different inductors added before", first, second)
@@ -149,7 +152,7 @@ func (c *Circuit) Couple(first, second string, k float64) {
 // add checks an element and stores it; a faulty one is remembered and stored too, so that later names still resolve.
 func (c *Circuit) add(b branch) {
 	what := kindName[b.kind]
-	if _, taken := c.byName[b.name]; taken || b.name == "" {
+	if _, taken := c.find(b.name); taken || b.name == "" {
 		c.fault("%s %q: the name is empty or already taken; give every element its own name", what, b.name)
 	}
 	if b.a < 0 || b.a >= len(c.nodes) || b.b < 0 || b.b >= len(c.nodes) {
@@ -165,12 +168,21 @@ func (c *Circuit) add(b branch) {
 		c.fault("%s %q: initial value or threshold beyond ±%g", what, b.name, mostLevel)
 	}
 	if b.kind == voltageSource || b.kind == currentSource {
-		if err := b.wave.Check(); err != nil {
+		if err := b.source().check(); err != nil {
 			c.fault("%s %q: %w", what, b.name, err)
 		}
 	}
-	c.byName[b.name] = len(c.branches)
 	c.branches = append(c.branches, b)
+}
+
+// find gives the branch of a name; a list as short as this is read faster than hashed.
+func (c *Circuit) find(name string) (number int, ok bool) {
+	for k := range c.branches {
+		if c.branches[k].name == name {
+			return k, true
+		}
+	}
+	return 0, false
 }
 
 func (c *Circuit) fault(format string, args ...any) {

@@ -10,29 +10,6 @@ var errSingular = errors.New("nearly singular equations")
 // leastPivot is the smallest pivot, after scaling to a unit diagonal, that still counts as independent.
 const leastPivot = 1e-14
 
-// room hands out zeroed numbers from larger blocks, which live as long as the run.
-type room struct{ free []float64 }
-
-const roomBlock = 4096
-
-func (r *room) take(n int) []float64 {
-	if n > len(r.free) {
-		r.free = make([]float64, max(n, roomBlock))
-	}
-	own := r.free[:n:n]
-	r.free = r.free[n:]
-	return own
-}
-
-// resize makes a slice n long and zero, in the space it has if that is enough.
-func (r *room) resize(p *[]float64, n int) {
-	if cap(*p) < n {
-		*p = r.take(n)
-	}
-	*p = (*p)[:n]
-	clear(*p)
-}
-
 // row gives row i of a matrix stored by rows of width w.
 func row(m []float64, w, i int) []float64 { return m[i*w : (i+1)*w : (i+1)*w] }
 
@@ -123,10 +100,10 @@ func addRows(dst, k, m []float64, stride int) {
 }
 
 // solveSPD solves m·x = rhs in place for a symmetric positive definite n×n matrix and w right-hand sides (rhs is n
-// rows of width w). The matrix is scaled to a unit diagonal first, so that values of any size may stand side by side.
-func solveSPD(m []float64, n int, rhs []float64, w int) error {
-	scale := make([]float64, n)
-	for i := range scale {
+// rows of width w). The matrix is scaled to a unit diagonal first, so that values of any size may stand side by side; scale
+// is space for n factors.
+func solveSPD(m, scale []float64, n int, rhs []float64, w int) error {
+	for i := range n {
 		d := m[i*n+i]
 		if !(d > 0) || math.IsInf(d, 0) {
 			return errSingular

@@ -6,13 +6,13 @@ import "math"
 // solution. Products of any two quantities of the circuit follow from them.
 func (r *Run) gather(dt float64, l int) {
 	s := r.sys
-	n := s.nx
+	n := len(r.x)
 	m := n + 2
 	y := r.scratch(m)
 	for g := range gaussPoints {
 		at := r.tau + float64(gaussNode[g]*dt)
 		if l >= 0 {
-			s.step(y[:n], r.x, &s.solver.gauss[g][l], &r.seg, r.tau)
+			s.step(y[:n], r.x, &s.solver.gauss[g][l], r.tau)
 		} else {
 			s.along(y[:n], gaussNode[g]*dt)
 		}
@@ -37,7 +37,7 @@ func (r *Run) flush() {
 		return
 	}
 	s := r.sys
-	m := s.nx + 2
+	m := len(r.x) + 2
 	y := r.scratch(2 * m)
 	v, i := y[:m], y[m:]
 	for k := range r.totals {
@@ -49,6 +49,12 @@ func (r *Run) flush() {
 		t.square += quadratic(i, i, r.moment)
 	}
 	clear(r.moment)
+}
+
+// clearMoment makes the moments fit the present states and empties them.
+func (r *Run) clearMoment() {
+	n := len(r.x) + 2
+	r.room.resize(&r.moment, n*n)
 }
 
 // linear is the integral of a form over [states | 1 | τ]: the row of the moments that belongs to the 1.
@@ -88,7 +94,7 @@ func (r *Run) Square(name string) float64 { return r.total(name).square }
 type total struct{ energy, charge, square float64 }
 
 func (r *Run) total(name string) total {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	if !ok || !r.opts.energy {
 		return total{math.NaN(), math.NaN(), math.NaN()}
 	}
@@ -99,7 +105,7 @@ func (r *Run) total(name string) total {
 // Stored gives the energy a named capacitor or inductor holds at present (½·C·v² or ½·L·i², joules); NaN otherwise.
 // The mutual energy of coupled inductors belongs to none of them and is left out.
 func (r *Run) Stored(name string) float64 {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	if !ok {
 		return math.NaN()
 	}

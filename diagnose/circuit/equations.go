@@ -5,6 +5,7 @@ import "fmt"
 // system holds the equations of one diode pattern. Every quantity is a form: a row of factors on the vector
 // y = [states | source values | source slopes | 1].
 type system struct {
+	pattern
 	tree   *tree
 	room   *room
 	nx, nu int
@@ -21,12 +22,12 @@ type system struct {
 }
 
 // newSystem forms the equations of a pattern of conducting diodes.
-func newSystem(c *Circuit, on uint64, leaky bool, space *room) (*system, error) {
-	t, err := newTree(c, on, leaky)
+func newSystem(c *Circuit, p pattern, space *room) (*system, error) {
+	t, err := newTree(c, p, space)
 	if err != nil {
 		return nil, err
 	}
-	s := &system{tree: t, room: space, nu: c.sources, column: make([]int, len(c.branches))}
+	s := &system{pattern: p, tree: t, room: space, nu: c.sources, column: space.ints.take(len(c.branches))}
 	s.number()
 	s.known()
 	for _, step := range []func() error{s.resistive, s.capacitive, s.inductive} {
@@ -41,7 +42,7 @@ func newSystem(c *Circuit, on uint64, leaky bool, space *room) (*system, error) 
 
 // number gives every capacitor of the tree and every inductor outside it a state.
 func (s *system) number() {
-	s.states = make([]int, 0, len(s.tree.class))
+	s.states = s.room.ints.take(len(s.tree.class))[:0]
 	for i, k := range s.tree.class {
 		s.column[i] = -1
 		if (k == store && s.tree.inTree[i]) || (k == choke && !s.tree.inTree[i]) {
@@ -119,8 +120,8 @@ func (s *system) threshold(k int) float64 {
 
 // resistive solves the resistors: R_link + loop resistances of the tree form a positive definite matrix.
 func (s *system) resistive() error {
-	var links, twigs []int
-	at := make([]int, len(s.tree.class))
+	list := s.room.ints.take(3 * len(s.tree.class))
+	at, links, twigs := list[:len(s.tree.class)], list[len(s.tree.class):][:0], list[2*len(s.tree.class):][:0]
 	for k, c := range s.tree.class {
 		if c == lossy && s.tree.inTree[k] {
 			twigs = append(twigs, k)
@@ -153,7 +154,7 @@ func (s *system) resistive() error {
 			}
 		}
 	}
-	if err := solveSPD(m, n, rhs, s.width); err != nil {
+	if err := solveSPD(m, s.room.take(n), n, rhs, s.width); err != nil {
 		return fmt.Errorf("circuit: resistances differ too much to be solved together (%w); leave out the smallest or the largest", err)
 	}
 	for a, k := range links {
@@ -283,7 +284,7 @@ func (s *system) eachInductance(visit func(p, q int, henry float64)) {
 
 // firstStates lists the states of a class.
 func (s *system) firstStates(want class) []int {
-	var list []int
+	list := s.room.ints.take(s.nx)[:0]
 	for x, k := range s.states {
 		if s.tree.class[k] == want {
 			list = append(list, x)
@@ -294,7 +295,7 @@ func (s *system) firstStates(want class) []int {
 
 // places tells at which place in the list of states a branch stands.
 func (s *system) places(states []int) []int {
-	place := make([]int, len(s.tree.class))
+	place := s.room.ints.take(len(s.tree.class))
 	for j, x := range states {
 		place[s.states[x]] = j
 	}
@@ -307,7 +308,7 @@ func (s *system) solveStates(m, rhs []float64, states []int) error {
 	for j, x := range states {
 		s.mass[x] = m[j*n+j]
 	}
-	if err := solveSPD(m, n, rhs, s.width); err != nil {
+	if err := solveSPD(m, s.room.take(n), n, rhs, s.width); err != nil {
 		return err
 	}
 	for j, x := range states {

@@ -42,20 +42,23 @@ func (r *Run) tolerance(w *watch) float64 {
 
 // system gives the equations of a pattern, from the cache if it was met before.
 func (r *Run) system(p pattern) (*system, error) {
-	if s, ok := r.cache[p]; ok {
-		return s, nil
+	for _, s := range r.cache {
+		if s.pattern == p {
+			return s, nil
+		}
 	}
-	s, err := newSystem(r.c, p.on, p.leaky, &r.room)
+	s, err := newSystem(r.c, p, r.room)
 	if err != nil {
 		return nil, err
 	}
-	r.cache[p] = s
+	r.cache = append(r.cache, s)
 	return s, nil
 }
 
 // keep writes the states back to the branches, those in loops and cut sets included.
 func (r *Run) keep() {
-	for k, b := range r.c.branches {
+	for k := range r.c.branches {
+		b := &r.c.branches[k]
 		if b.kind == capacitor && b.value > 0 {
 			r.held[k] = r.form(r.sys.v(k))
 		} else if b.kind == inductor {
@@ -149,13 +152,14 @@ func (r *Run) adopt(on uint64) (cut string, err error) {
 
 // use loads the states of a system from the branches.
 func (r *Run) use(s *system, on uint64) {
-	r.sys, r.on = s, on
-	if len(r.x) != s.nx {
-		for _, p := range []*[]float64{&r.x, &r.next, &r.rateOld, &r.rateNew} {
-			r.room.resize(p, s.nx)
-		}
-		r.room.resize(&r.spare, 3*s.nx)
+	old, bends := 0, 2*len(r.seg.bends)
+	if r.sys != nil {
+		old = r.sys.nx
 	}
+	r.stretch(max(old, s.nx) + bends)
+	copy(r.x[s.nx:], r.x[old:old+bends])
+	r.stretch(s.nx + bends)
+	r.sys, r.on = s, on
 	for x, k := range s.states {
 		r.x[x] = r.held[k]
 	}
@@ -214,7 +218,7 @@ func (r *Run) contradiction(exact bool) int {
 			} else {
 				clear(second)
 				s.derive(second, first, 1)
-				g = r.form(second)
+				g = r.form(second) + r.bending(first)
 			}
 			tol *= s.norm
 		}
@@ -243,17 +247,10 @@ func (r *Run) settled() {
 		r.volts = math.Max(r.volts, math.Abs(r.form(r.sys.v(k))))
 		r.amps = math.Max(r.amps, math.Abs(r.form(r.sys.i(k))))
 	}
-	n := r.sys.nx + 2
-	if len(r.moment) != n*n {
-		r.room.resize(&r.moment, n*n)
-	}
+	r.clearMoment()
 	r.restart(false)
 	r.sys.solver.segment = -1
 	r.refresh()
 	r.look(r.x, r.tau)
-	for k := range r.watch {
-		w := &r.watch[k]
-		w.now = w.then
-	}
 	r.sample()
 }

@@ -5,15 +5,15 @@ import (
 	"math"
 )
 
-// closeBy is how near to its limit, relative to the scale of the circuit, a quantity must be at both ends of a step to
-// be checked for a dip between them; at 16 points a ring a dip is below 1 % of the swing.
-const closeBy = 0.02
-
-// peakBy is the same for the peak of a probe, relative to the range it has covered, which a ring may just be widening.
-const peakBy = 0.06
-
-// dipGuard is what is added to the depth of a dip that the slopes at both ends of a step tell.
+// dipGuard is what is added to the depth of a dip that the rates at both ends of a step tell.
 const dipGuard = 0.05
+
+// roughBy is how far, relative to the scale of the circuit, a watched quantity may end from where the mean of its rates at
+// both ends of a step would take it; at 8 points a ring that is 4 % of the ring. A cubic through both ends is then close.
+const roughBy = 0.04
+
+// rateRounding is what rounding leaves of a rate, relative to the fastest rate of the circuit.
+const rateRounding = 1e-14
 
 // sightShare is the share of a step up to which the estimate of a crossing inside it is trusted.
 const sightShare = 512
@@ -25,44 +25,56 @@ type stop struct {
 	armed, hit bool
 }
 
-// ends gives what of a watch must stay above least: its height at both ends of the step tried, and above which
-// height at both ends it need not be looked at closer. False if nobody asks for it.
-func (r *Run) ends(k int) (a, b, least, near float64, asked bool) {
+// heights are what of a watch must stay above least: its height and the rate of that at both ends of the step tried.
+type heights struct{ a, da, b, db, least float64 }
+
+// ends gives the heights of a watch; false if nobody asks for it.
+func (r *Run) ends(k int) (h heights, asked bool) {
 	w := &r.watch[k]
 	if w.isDiode {
-		return w.now, w.then, -w.tol, w.near, true
+		return heights{w.now, w.rate, w.then, w.rateThen, -w.tol}, true
 	}
 	if k != r.stop.watch || !r.stop.armed {
-		return 0, 0, 0, 0, false
+		return h, false
 	}
-	return r.stop.level - w.now, r.stop.level - w.then, 0, closeBy * (math.Abs(r.stop.level) + r.volts + r.amps), true
+	return heights{r.stop.level - w.now, -w.rate, r.stop.level - w.then, -w.rateThen, 0}, true
 }
 
-// slopes gives the rates of that height, from bothRates.
-func (r *Run) slopes(k int) (da, db float64) {
-	da, db = r.sys.rateOf(k, r.rateOld), r.sys.rateOf(k, r.rateNew)
-	if !r.watch[k].isDiode {
-		return -da, -db
-	}
-	return da, db
+// crosses tells whether the height falls to the least, or dips and comes back, which is seen from the rates.
+func (h *heights) crosses(dt float64) bool {
+	return h.b <= h.least || h.da < 0 && h.db > 0 && dip(h.a, h.da, h.b, h.db, dt) < h.least
 }
 
-// trouble tells whether a diode switches, or the stop level is reached, within the step tried. A dip and return
-// inside the step is seen from the slopes at its ends.
+// rough tells whether a step is too long for what it passes over, and notes how rough it is.
+func (r *Run) rough(dt float64) bool {
+	r.defect = 0
+	for k := range r.watch {
+		w := &r.watch[k]
+		miss := math.Abs(w.then - w.now - float64(0.5*dt*(w.rate+w.rateThen)))
+		if size := r.scale(w); miss > r.defect*size {
+			r.defect = miss / size
+		}
+	}
+	r.defect -= float64(rateRounding * r.sys.norm * dt)
+	return r.defect > roughBy
+}
+
+// scale is the size of what a watch measures.
+func (r *Run) scale(w *watch) float64 {
+	size := math.Max(math.Abs(w.top.V), math.Abs(w.low.V)) + math.SmallestNonzeroFloat64
+	switch {
+	case w.isSlope:
+		return size
+	case w.isCurrent || w.isDiode && w.conducts:
+		return math.Max(size, r.amps)
+	}
+	return math.Max(size, r.volts)
+}
+
+// trouble tells whether a diode switches, or the stop level is reached, within the step tried.
 func (r *Run) trouble(dt float64) bool {
 	for k := range r.watch {
-		a, b, least, near, asked := r.ends(k)
-		if !asked {
-			continue
-		}
-		if b <= least {
-			return true
-		}
-		if a > near && b > near {
-			continue
-		}
-		r.bothRates(dt)
-		if da, db := r.slopes(k); da < 0 && db > 0 && dip(a, da, b, db, dt) < least {
+		if h, asked := r.ends(k); asked && h.crosses(dt) {
 			return true
 		}
 	}
@@ -74,13 +86,11 @@ func (r *Run) trouble(dt float64) bool {
 func (r *Run) aim(dt float64) {
 	first := 2.0
 	for k := range r.watch {
-		a, b, least, _, asked := r.ends(k)
-		if !asked || b > least {
+		h, asked := r.ends(k)
+		if !asked || h.b > h.least {
 			continue
 		}
-		r.bothRates(dt)
-		da, db := r.slopes(k)
-		first = math.Min(first, cubic(a-least, float64(da*dt), b-least, float64(db*dt)).crossing())
+		first = math.Min(first, cubic(h.a-h.least, float64(h.da*dt), h.b-h.least, float64(h.db*dt)).crossing())
 	}
 	if r.goal = 0; first < 2 {
 		r.goal, r.sight = r.tau+float64(first*dt), dt/sightShare
@@ -114,18 +124,6 @@ func (p third) crossing() float64 {
 	return low
 }
 
-// bothRates computes the derivatives of the states at the start and the end of the step tried, those not known yet.
-func (r *Run) bothRates(dt float64) {
-	if !r.knowOld {
-		r.sys.rates(r.rateOld, r.x, r.tau)
-		r.knowOld = true
-	}
-	if !r.knowNew {
-		r.sys.rates(r.rateNew, r.next, r.tau+dt)
-		r.knowNew = true
-	}
-}
-
 // dip gives a height that a curve with falling slope da at its start a and rising slope db at its end b does not go
 // below within dt: the least value of the cubic through both ends, and a share of its depth for what the cubic misses
 // (of a ring followed at 16 points a period, 1e-4 of its size).
@@ -143,7 +141,7 @@ func (r *Run) event(dt float64) (stopped bool, err error) {
 	first, who := dt, -1
 	for k := range r.watch {
 		w := &r.watch[k]
-		if a, b, _, near, asked := r.ends(k); !asked || (a > near && b > near) {
+		if h, asked := r.ends(k); !asked || !h.crosses(dt) {
 			continue
 		}
 		p := s.polynomial(k, r.tau)
@@ -160,7 +158,7 @@ func (r *Run) event(dt float64) (stopped bool, err error) {
 			first, who = at*unit, k
 		}
 	}
-	if who < 0 { // a near miss that the slopes could not rule out
+	if who < 0 { // a near miss that the rates could not rule out
 		return false, r.accept(dt, r.retry(dt), r.tau+dt)
 	}
 	r.retry(first)
@@ -183,7 +181,6 @@ func (r *Run) event(dt float64) (stopped bool, err error) {
 // retry computes the step anew from the expanded polynomial and returns the level that says so.
 func (r *Run) retry(dt float64) int {
 	r.sys.along(r.next, dt)
-	r.knowNew = false
 	r.look(r.next, r.tau+dt)
 	return -1
 }
@@ -201,8 +198,8 @@ func (r *Run) headway(who int) error {
 }
 
 // polynomial gives a watched quantity as a polynomial of the time after τ in units of the finest step.
-func (s *system) polynomial(k int, tau float64) *[degree + 1]float64 {
-	n, p, f := s.nx, &s.solver.scalar, s.line(k)
+func (s *system) polynomial(k int, tau float64) []float64 {
+	n, p, f := s.solver.order, s.solver.scalar[:s.solver.terms], s.line(k)
 	for i := range p {
 		p[i] = dot(row(s.solver.poly, n, i), f)
 	}
@@ -212,7 +209,7 @@ func (s *system) polynomial(k int, tau float64) *[degree + 1]float64 {
 }
 
 // firstRoot gives the first place in [0, dt] where a polynomial that starts positive falls to zero.
-func firstRoot(p *[degree + 1]float64, dt float64) (float64, bool) {
+func firstRoot(p []float64, dt float64) (float64, bool) {
 	if p[0] <= 0 {
 		return 0, true
 	}
@@ -221,43 +218,70 @@ func firstRoot(p *[degree + 1]float64, dt float64) (float64, bool) {
 		if !(slopeAt(p, 0) < 0 && slopeAt(p, dt) > 0) {
 			return 0, false
 		}
-		end = bisect(dt, func(t float64) bool { return slopeAt(p, t) < 0 })
+		end = turnOf(p, dt, -1)
 		if horner(p, end) > 0 {
 			return 0, false
 		}
 	}
-	return bisect(end, func(t float64) bool { return horner(p, t) > 0 }), true
+	return rootOf(end, func(t float64) (v, slope float64) { return horner(p, t), slopeAt(p, t) }), true
 }
 
-// bisect gives the place in [0, end] where a condition true at 0 stops being true, to the last digit.
-func bisect(end float64, holds func(float64) bool) float64 {
-	low, high := 0.0, end
-	for range 60 {
-		mid := low + float64(0.5*(high-low))
-		if mid <= low || mid >= high {
+// turnOf gives where a polynomial that starts with a slope of a sign turns round within [0, dt].
+func turnOf(p []float64, dt, sign float64) float64 {
+	return rootOf(dt, func(t float64) (v, slope float64) { return sign * slopeAt(p, t), sign * bendAt(p, t) })
+}
+
+// rootOf gives the place in [0, end] where a function positive at 0 stops being so, to the last digits. Newton's steps close
+// in from one side; one twice as long then catches the other. Where they leave the bracket its middle is taken.
+func rootOf(end float64, f func(float64) (v, slope float64)) float64 {
+	low, high, at := 0.0, end, 0.5*end
+	for range 100 {
+		width := high - low
+		v, slope := f(at)
+		switch {
+		case v > 0:
+			low = at
+		case v < 0:
+			high = at
+		default:
+			return at
+		}
+		step := math.Abs(v / slope)
+		if high-low > 0.5*width {
+			step *= 2
+		}
+		next := at + math.Copysign(math.Max(step, 2e-16*end), v)
+		if !(next > low && next < high) {
+			next = low + float64(0.5*(high-low))
+		}
+		if next <= low || next >= high {
 			break
 		}
-		if holds(mid) {
-			low = mid
-		} else {
-			high = mid
-		}
+		at = next
 	}
 	return high
 }
 
-func horner(p *[degree + 1]float64, t float64) float64 {
-	v := p[degree]
-	for k := degree - 1; k >= 0; k-- {
+func horner(p []float64, t float64) float64 {
+	v := 0.0
+	for k := len(p) - 1; k >= 0; k-- {
 		v = float64(v*t) + p[k]
 	}
 	return v
 }
 
-func slopeAt(p *[degree + 1]float64, t float64) float64 {
-	v := degree * p[degree]
-	for k := degree - 1; k >= 1; k-- {
+func slopeAt(p []float64, t float64) float64 {
+	v := 0.0
+	for k := len(p) - 1; k >= 1; k-- {
 		v = float64(v*t) + float64(float64(k)*p[k])
+	}
+	return v
+}
+
+func bendAt(p []float64, t float64) float64 {
+	v := 0.0
+	for k := len(p) - 1; k >= 2; k-- {
+		v = float64(v*t) + float64(float64(k*(k-1))*p[k])
 	}
 	return v
 }

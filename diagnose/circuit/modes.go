@@ -6,8 +6,6 @@ import (
 	"math"
 	"math/cmplx"
 	"sort"
-
-	"gonum.org/v1/gonum/mat"
 )
 
 // Mode is one natural mode of the present diode pattern.
@@ -24,6 +22,9 @@ func (m Mode) String() string {
 
 // Modes gives the natural modes of the present diode pattern, the fastest first. A conjugate pair is one mode.
 func (r *Run) Modes() ([]Mode, error) {
+	if r.sys == nil {
+		return nil, r.err
+	}
 	rates, err := r.sys.eigenvalues()
 	if err != nil {
 		return nil, err
@@ -43,7 +44,7 @@ func (r *Run) Modes() ([]Mode, error) {
 	return modes, nil
 }
 
-// eigenvalues gives the rates of the scaled state matrix; values that are zero but for rounding are returned as zero.
+// eigenvalues gives, until the next are asked for, the rates of the scaled state matrix; values that are zero but for rounding are returned as zero.
 func (s *system) eigenvalues() ([]complex128, error) {
 	if s.nx == 0 {
 		return nil, nil
@@ -54,11 +55,10 @@ func (s *system) eigenvalues() ([]complex128, error) {
 			return nil, errors.New("circuit: a time constant is too short for a number; leave out the smallest element")
 		}
 	}
-	var e mat.Eigen
-	if !e.Factorize(mat.NewDense(s.nx, s.nx, a), mat.EigenNone) {
+	rates, ok := eigenvaluesOf(a, s.room.take(2*s.nx), s.nx, s.room.rates[:0])
+	if s.room.rates = rates; !ok {
 		return nil, errors.New("circuit: the natural modes could not be found; change a value slightly")
 	}
-	rates := e.Values(nil)
 	largest := 0.0
 	for _, l := range rates {
 		largest = math.Max(largest, cmplx.Abs(l))
@@ -71,9 +71,10 @@ func (s *system) eigenvalues() ([]complex128, error) {
 	return rates, nil
 }
 
-// scaled gives the state matrix with states counted in √joule, which puts all its entries on the scale of a rate.
+// scaled gives the state matrix with states counted in √joule, which puts all its entries on the scale of a rate. It
+// holds until the next is asked for.
 func (s *system) scaled() []float64 {
-	a := make([]float64, s.nx*s.nx)
+	a := s.room.moment(s.nx * s.nx)
 	for i := range s.nx {
 		for j := range s.nx {
 			a[i*s.nx+j] = row(s.rate, s.width, i)[j] * math.Sqrt(s.mass[i]/s.mass[j])

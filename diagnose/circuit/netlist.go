@@ -123,7 +123,7 @@ func (d *deck) element(k int) {
 		over := fmt.Sprintf("(v(%s)-v(%s)-(%s))", d.node[b.a], d.node[b.b], number(b.volt))
 		d.line("%s I=%s*(%s+sqrt(%s*%s+%s))", head, number(0.5/math.Max(b.value, deckOhm)), over, over, over, number(softness*softness))
 	default:
-		d.line("%s %s", head, d.source(b.wave))
+		d.line("%s %s", head, d.source(b.source().straight()))
 	}
 }
 

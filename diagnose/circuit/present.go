@@ -9,7 +9,7 @@ func (r *Run) BranchCurrent(name string) float64 { return r.branchForm(name, r.s
 func (r *Run) BranchVoltage(name string) float64 { return r.branchForm(name, r.sys.v) }
 
 func (r *Run) branchForm(name string, form func(int) []float64) float64 {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	if !ok {
 		return math.NaN()
 	}
@@ -37,11 +37,11 @@ func (r *Run) Slope(a, b int) float64 {
 }
 
 func (r *Run) hasNodes(a, b int) bool {
-	return a >= 0 && b >= 0 && a < len(r.c.nodes) && b < len(r.c.nodes)
+	return r.sys != nil && a >= 0 && b >= 0 && a < len(r.c.nodes) && b < len(r.c.nodes)
 }
 
 // Conducts tells whether a named diode conducts at present.
 func (r *Run) Conducts(name string) bool {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	return ok && r.c.branches[k].kind == diode && r.on>>uint(r.c.branches[k].index)&1 == 1
 }

@@ -14,8 +14,9 @@ type watch struct {
 	conducts  bool    // a diode's state
 	a, b      int     // of a voltage probe
 	now, then float64 // at the present moment, after the step tried
+	rate      float64 // at the present moment
+	rateThen  float64 // after the step tried
 	tol       float64 // how far a diode's margin may fall below zero
-	near      float64 // a margin above this needs no closer look
 	top, low  Point   // highest and lowest value with its time
 	trace     []Point
 }
@@ -30,7 +31,7 @@ func (r *Run) Probe(a, b int) int {
 
 // ProbeCurrent records the current of a named element from now on and gives its handle; -1 if there is none.
 func (r *Run) ProbeCurrent(name string) int {
-	k, ok := r.c.byName[name]
+	k, ok := r.find(name)
 	if !ok {
 		return -1
 	}
@@ -50,13 +51,14 @@ func (r *Run) ProbeSlope(a, b int) int {
 func (r *Run) addProbe(w watch) int {
 	r.watch = append(r.watch, w)
 	k := len(r.watch) - 1
-	r.looked = append(r.looked, 0)
+	r.looked = append(r.looked, 0, 0)
 	for _, s := range r.cache {
 		s.solver.forms = nil // made anew with the new probe
 	}
 	r.refresh()
+	r.look(r.x, r.tau)
+	r.arrive()
 	p := &r.watch[k]
-	p.now = r.value(k, r.x, r.tau)
 	p.top = Point{r.Time(), p.now}
 	p.low = p.top
 	if r.opts.trace {
@@ -106,33 +108,39 @@ func (r *Run) refresh() {
 	if v.segment == r.seg.id {
 		return
 	}
-	r.knowOld, r.knowNew = false, false
+	v.order = n + 2*len(r.seg.bends)
+	w := v.order + 2
+	r.room.resize(&v.watch, 2*len(r.watch)*w)
+	r.room.resize(&v.dx, v.order*w)
+	r.room.resize(&v.poly, (degree+1)*v.order)
 	for i := range n {
-		s.collapse(row(v.dx, n+2, i), row(s.rate, s.width, i), &r.seg)
+		s.collapse(row(v.dx, w, i), row(s.rate, s.width, i), &r.seg)
+	}
+	for i, b := range r.seg.bends {
+		b.equations(v.dx[(n+2*i)*w:], w, n+2*i)
 	}
 	for k := range r.watch {
 		s.collapse(s.line(k), row(v.forms, s.width, k), &r.seg)
-	}
-	v.segment = r.seg.id
-	for k := range r.watch {
+		s.differentiate(s.line(len(r.watch)+k), s.line(k))
 		if w := &r.watch[k]; w.isDiode {
-			w.tol, w.near = trigger*r.tolerance(w), closeBy*r.volts
-			if w.conducts {
-				w.near = closeBy * r.amps
-			}
+			w.tol = trigger * r.tolerance(w)
 		}
 	}
+	v.segment = r.seg.id
+}
+
+// differentiate gives the collapsed row of the rate of a collapsed row.
+func (s *system) differentiate(dst, row []float64) {
+	n := s.solver.order
+	addRows(dst, row[:n], s.solver.dx, n+2)
+	dst[n] += row[n+1]
 }
 
 // makeForms writes down the forms of all watches for the present system.
 func (r *Run) makeForms() {
 	s := r.sys
-	v, n := &s.solver, s.nx
+	v := &s.solver
 	v.forms = r.room.take(len(r.watch) * s.width)
-	v.watch = r.room.take(len(r.watch) * (n + 2))
-	v.dx = r.room.take(n * (n + 2))
-	v.work = r.room.take(n + 2)
-	v.poly = r.room.take((degree + 1) * n)
 	for k := range r.watch {
 		f := row(v.forms, s.width, k)
 		switch w := &r.watch[k]; {
@@ -141,7 +149,7 @@ func (r *Run) makeForms() {
 		case w.isCurrent:
 			copy(f, s.i(w.branch))
 		case w.isSlope:
-			plain := make([]float64, s.width)
+			plain := r.room.take(s.width)
 			s.difference(plain, w.a, w.b)
 			s.derive(f, plain, 1)
 		default:
@@ -150,39 +158,35 @@ func (r *Run) makeForms() {
 	}
 }
 
-func (s *system) line(k int) []float64 { return row(s.solver.watch, s.nx+2, k) }
+func (s *system) line(k int) []float64 { return row(s.solver.watch, s.solver.order+2, k) }
 
-// value evaluates a watch.
-func (r *Run) value(k int, x []float64, tau float64) float64 {
-	f, n := r.sys.line(k), r.sys.nx
+// seen evaluates a watch, or its rate, which stands behind all watches.
+func (s *system) seen(k int, x []float64, tau float64) float64 {
+	f, n := s.line(k), s.solver.order
 	return dot(x, f) + (f[n] + float64(f[n+1]*tau))
 }
 
-// look evaluates all watches for the states given.
+// look evaluates all watches and their rates for the states given.
 func (r *Run) look(x []float64, tau float64) {
-	n := r.sys.nx
-	v := r.looked[:len(r.watch)]
-	apply(v, r.sys.solver.watch, n+2, x)
+	n, m := r.sys.solver.order, r.sys.solver.watch
+	v, w := r.looked, n+2
+	apply(v, m, w, x)
+	for i := range v {
+		v[i] += m[i*w+n] + float64(m[i*w+n+1]*tau)
+	}
+	rates := v[len(r.watch):]
 	for k := range r.watch {
-		f := r.sys.line(k)
-		r.watch[k].then = v[k] + (f[n] + float64(f[n+1]*tau))
+		w := &r.watch[k]
+		w.then, w.rateThen = v[k], rates[k]
 	}
 }
 
-// rates computes the derivative of the states.
-func (s *system) rates(dst, x []float64, tau float64) {
-	n := s.nx
-	apply(dst, s.solver.dx, n+2, x)
-	for i, d := range dst {
-		f := row(s.solver.dx, n+2, i)
-		dst[i] = d + (f[n] + float64(f[n+1]*tau))
+// arrive makes what look saw last the present.
+func (r *Run) arrive() {
+	for k := range r.watch {
+		w := &r.watch[k]
+		w.now, w.rate = w.then, w.rateThen
 	}
-}
-
-// rateOf is the derivative of a watch for given derivatives of the states.
-func (s *system) rateOf(k int, rates []float64) float64 {
-	f := s.line(k)
-	return dot(rates, f) + f[s.nx+1]
 }
 
 // record enters the step tried into scales, traces and peaks.
@@ -198,18 +202,10 @@ func (r *Run) record(dt float64, l int, at float64) {
 		if k == r.stop.watch && w.then < r.stop.level {
 			r.stop.armed = true
 		}
-		margin := float64(peakBy * (w.top.V - w.low.V))
-		high := w.now >= w.top.V-margin || w.then >= w.top.V-margin
-		deep := w.now <= w.low.V+margin || w.then <= w.low.V+margin
-		if !high && !deep {
-			continue
-		}
-		r.bothRates(dt)
-		da, db := r.sys.rateOf(k, r.rateOld), r.sys.rateOf(k, r.rateNew)
-		if high && da > 0 && db < 0 && -dip(-w.now, -da, -w.then, -db, dt) > w.top.V {
+		if w.rate > 0 && w.rateThen < 0 && -dip(-w.now, -w.rate, -w.then, -w.rateThen, dt) > w.top.V {
 			r.extreme(k, dt, l, 1)
 		}
-		if deep && da < 0 && db > 0 && dip(w.now, da, w.then, db, dt) < w.low.V {
+		if w.rate < 0 && w.rateThen > 0 && dip(w.now, w.rate, w.then, w.rateThen, dt) < w.low.V {
 			r.extreme(k, dt, l, -1)
 		}
 	}
@@ -248,14 +244,14 @@ func (w *watch) reach(t, v float64) {
 func (r *Run) extreme(k int, dt float64, l int, sign float64) {
 	s := r.sys
 	levels := s.solver.levels
-	x, half, rates := r.spare[:s.nx], r.spare[s.nx:2*s.nx], r.spare[2*s.nx:]
+	n := s.solver.order
+	x, half := r.spare[:n], r.spare[n:2*n]
 	tau := r.tau
 	copy(x, r.x)
 	for l >= 0 && l < len(levels)-1 {
 		l++
-		s.step(half, x, &levels[l], &r.seg, tau)
-		s.rates(rates, half, tau+levels[l].h)
-		if sign*s.rateOf(k, rates) > 0 {
+		s.step(half, x, &levels[l], tau)
+		if sign*s.seen(len(r.watch)+k, half, tau+levels[l].h) > 0 {
 			copy(x, half)
 			tau += levels[l].h
 		}
@@ -264,7 +260,7 @@ func (r *Run) extreme(k int, dt float64, l int, sign float64) {
 	s.expand(x, tau)
 	p := s.polynomial(k, tau)
 	unit := s.solver.unit()
-	turn := bisect(dt/unit, func(t float64) bool { return sign*slopeAt(p, t) > 0 })
+	turn := turnOf(p, dt/unit, sign)
 	r.watch[k].reach(r.seg.from+tau+float64(turn*unit), horner(p, turn))
 }
 
@@ -272,7 +268,7 @@ func (r *Run) extreme(k int, dt float64, l int, sign float64) {
 func (r *Run) sample() {
 	for k := range r.watch {
 		w := &r.watch[k]
-		w.now = w.then
+		w.now, w.rate = w.then, w.rateThen
 		if w.isDiode {
 			continue
 		}

@@ -7,27 +7,32 @@ import (
 )
 
 const (
-	pointsPerRing = 40  // steps per period of the fastest ring that is not damped away at once, for a trace
-	pointsToFind  = 16  // the same when only peaks and events are wanted
-	ringDamping   = 0.5 // modes damped more than this do not shorten the step; restarts resolve them
-	dampingToFind = 0.8 // the same when only peaks and events are wanted, with steps that grow faster
-	dieAway       = 14  // time constants until a ring counts for nothing (1e-6 of its size)
-	dieAwayEnergy = 23  // the same when energies are kept (1e-10)
-	smallNorm     = 0.5 // rate × step below which the Taylor polynomial is used
-	degree        = 15  // of that polynomial: 0.5^16/16! is below the last digit
-	mostLevels    = 90  // halvings of the step
-	restartSteps  = 4   // steps at each length while the step grows after an event, for a trace
-	kinkSteps     = 2   // the same after a mere corner of a waveform
-	energySteps   = 6   // the same after both when energies are kept
-	gaussPoints   = 5   // per step for energies; the error at 16 points a ring is 1e-13
+	pointsPerRing = 40    // steps per period of the fastest ring that is not damped away at once, for a trace
+	pointsToFind  = 16    // the same when only energies, peaks and events are wanted
+	pointsAtPeak  = 8     // the same when only peaks and events are wanted, with steps that watch what they miss
+	ringDamping   = 0.5   // modes damped more than this do not shorten the step; restarts resolve them
+	dampingToFind = 0.8   // the same when only peaks and events are wanted, with steps that grow faster
+	dieAway       = 14    // time constants until a ring counts for nothing (1e-6 of its size)
+	dieAwayEnergy = 23    // the same when energies are kept (1e-10)
+	smallNorm     = 0.5   // rate × step below which the Taylor polynomial is used
+	degree        = 15    // of that polynomial: 0.5^16/16! is below the last digit
+	lastBit       = 1e-17 // of a sum, relative; what is smaller adds nothing
+	mostLevels    = 90    // halvings of the step
+	restartSteps  = 4     // steps at each length while the step grows after an event, for a trace
+	kinkSteps     = 2     // the same after a mere corner of a waveform
+	energySteps   = 6     // the same after both when energies are kept
+	gaussPoints   = 5     // per step for energies; the error at 16 points a ring is 1e-13
 )
 
 // follow gives the steps per period of a ring, and the damping above which it need not be followed.
 func (o *options) follow() (points, damping float64) {
-	if o.trace {
+	switch {
+	case o.trace:
 		return pointsPerRing, ringDamping
+	case o.energy:
+		return pointsToFind, dampingToFind
 	}
-	return pointsToFind, dampingToFind
+	return pointsAtPeak, dampingToFind
 }
 
 // pace gives the steps at each length while the step grows after an event, or after a mere corner of a waveform.
@@ -37,9 +42,14 @@ func (o *options) pace(corner bool) int {
 		return energySteps
 	case o.trace && !corner:
 		return restartSteps
+	case o.quick():
+		return 1
 	}
 	return kinkSteps
 }
+
+// quick tells that only peaks and events are wanted: the steps need not be even, nor short enough for a quadrature.
+func (o *options) quick() bool { return !o.trace && !o.energy }
 
 // gaussNode and gaussWeight are the Gauss-Legendre nodes and weights on [0, 1].
 var (
@@ -47,18 +57,19 @@ var (
 	gaussWeight = [gaussPoints]float64{0.11846344252809454, 0.23931433524968324, 0.28444444444444444, 0.23931433524968324, 0.11846344252809454}
 )
 
-// level carries the states over one step length: x becomes x + d·y. The change d is kept instead of the full
-// matrix since doubling it loses nothing of the slow modes.
+// level carries the states over one step length: x becomes x + d·y with y = [states | deviations of the bent sources |
+// 1 | τ]. The change d is kept instead of the full matrix since doubling it loses nothing of the slow modes. The columns
+// of the states hold for the pattern, the others for a segment. Rows are a stride apart.
 type level struct {
 	h       float64
-	d       []float64 // nx rows of the full width
-	c0, c1  []float64 // d applied to the sources of the present segment: c0 + c1·τ
-	segment int
+	d       []float64
+	segment int // whose columns are there
 }
 
 // ring is an oscillation that is not damped away at once.
 type ring struct {
 	step  float64 // that follows it
+	fades float64 // its time constant
 	level int     // with such a step
 	quiet float64 // time after an event until it has died away
 }
@@ -72,40 +83,48 @@ type solver struct {
 	filled  int                  // levels from here on are made
 	gauss   [gaussPoints][]level // the same steps ended at the Gauss nodes
 	grade   int                  // level at which a restart begins
+	bends   int                  // for which the levels have room
+	stride  int                  // of their rows
 	segment int                  // segment for which the collapsed rows hold
-	dx      []float64            // collapsed rate: nx rows of nx+2
+	order   int                  // states, and two for every bent source
+	dx      []float64            // collapsed rate: order rows of order+2
 	forms   []float64            // forms of the watched quantities
-	watch   []float64            // the same collapsed: rows of nx+2
-	work    []float64
-	poly    []float64 // Taylor coefficients of the states: degree+1 rows of nx
+	watch   []float64            // the same collapsed: rows of order+2
+	poly    []float64            // Taylor coefficients of the states: degree+1 rows of order
+	terms   int                  // of them that count
 	scalar  [degree + 1]float64
 }
 
 // prepare chooses the step for this pattern and fills the levels; fresh if the levels are new. Span is the time to
-// be covered, piece the length of the present straight piece of the waveforms.
-func (s *system) prepare(span, piece float64, o *options) (fresh bool, err error) {
-	v, longest := &s.solver, o.longest
-	if v.ready && (span <= 256*v.levels[0].h || v.levels[0].h > longest/4) {
+// be covered.
+func (s *system) prepare(span float64, g *segment, o *options) (fresh bool, err error) {
+	v, longest, piece := &s.solver, o.longest, g.till-g.from
+	if v.ready && v.holds(g) && (span <= 256*v.levels[0].h || v.levels[0].h > longest/4) {
 		return false, nil
 	}
-	rates, err := s.eigenvalues()
-	if err != nil {
-		return false, err
+	if !v.ready {
+		rates, err := s.eigenvalues()
+		if err != nil {
+			return false, err
+		}
+		v.survey(rates, o)
 	}
-	ring := coarse(math.Min(v.survey(rates, o), longest))
-	if !o.trace && piece < span/4 && !math.IsInf(ring, 1) {
+	ring := coarse(math.Min(v.fastest(), longest))
+	if !o.trace && piece < span/4 && !math.IsInf(ring, 1) && len(g.bends) == 0 {
 		ring = fitting(ring, piece)
 	}
 	h := longestStep(span/16, ring, longest)
 	if !(h > 0) || math.IsInf(s.norm*h, 0) {
 		return false, fmt.Errorf("circuit: no usable time step (%g s at a rate of %g per second)", h, s.norm)
 	}
-	count := 0
-	for ; h*s.norm > smallNorm*math.Exp2(float64(count)); count++ {
+	count, norm := 0, math.Max(s.norm, g.rate)
+	for ; h*norm > smallNorm*math.Exp2(float64(count)); count++ {
 		if count == mostLevels {
-			return false, fmt.Errorf("circuit: time constants from %g s to %g s are too far apart; leave out the fastest", 1/s.norm, h)
+			return false, fmt.Errorf("circuit: time constants from %g s to %g s are too far apart; leave out the fastest", 1/norm, h)
 		}
 	}
+	v.bends = max(v.bends, len(g.bends))
+	v.stride = s.nx + 2*v.bends + 2
 	v.levels, v.filled = s.chain(h, count), count
 	if o.energy {
 		for g, c := range gaussNode {
@@ -120,19 +139,29 @@ func (s *system) prepare(span, piece float64, o *options) (fresh bool, err error
 	return true, nil
 }
 
-// survey notes the fastest rate and the rings, and gives the step that follows the fastest ring; a decay needs no
-// bound, since the steps grow with the time after each event.
-func (v *solver) survey(rates []complex128, o *options) (step float64) {
+// holds tells whether the levels can take the bent sources of a segment.
+func (v *solver) holds(g *segment) bool {
+	return len(g.bends) <= v.bends && v.unit()*g.rate <= smallNorm
+}
+
+// survey notes the fastest rate and the rings; a decay needs no bound, since the steps grow with the time after each
+// event.
+func (v *solver) survey(rates []complex128, o *options) {
 	points, damping := o.follow()
-	step, v.rate, v.rings = math.Inf(1), 0, v.rings[:0]
 	for _, l := range rates {
 		size := cmplx.Abs(l)
 		v.rate = math.Max(v.rate, size)
 		if imag(l) > 0 && -real(l) < damping*size {
-			r := ring{step: 2 * math.Pi / imag(l) / points, quiet: 1 / math.Max(-real(l), 0)}
-			v.rings = append(v.rings, r)
-			step = math.Min(step, r.step)
+			v.rings = append(v.rings, ring{step: 2 * math.Pi / imag(l) / points, fades: 1 / math.Max(-real(l), 0)})
 		}
+	}
+}
+
+// fastest gives the step that follows the fastest ring.
+func (v *solver) fastest() float64 {
+	step := math.Inf(1)
+	for _, r := range v.rings {
+		step = math.Min(step, r.step)
 	}
 	return step
 }
@@ -147,9 +176,9 @@ func (v *solver) holdBack(energy bool) {
 			r.level++
 		}
 		if energy {
-			r.quiet *= dieAwayEnergy
+			r.quiet = dieAwayEnergy * r.fades
 		} else {
-			r.quiet *= dieAway
+			r.quiet = dieAway * r.fades
 		}
 		v.grade = max(v.grade, r.level)
 	}
@@ -204,7 +233,7 @@ func (s *system) balancedNorm() float64 {
 
 // chain gives the levels h, h/2 ... h/2^count, the last by Taylor series; fill makes the others.
 func (s *system) chain(h float64, count int) []level {
-	list := make([]level, count+1)
+	list := s.room.levels.take(count + 1)
 	for k := range list {
 		list[k] = level{h: math.Ldexp(h, -k), segment: -1}
 	}
@@ -215,11 +244,11 @@ func (s *system) chain(h float64, count int) []level {
 
 // furnish gives a level its space.
 func (s *system) furnish(l *level) {
-	l.d, l.c0, l.c1 = s.room.take(s.nx*s.width), s.room.take(s.nx), s.room.take(s.nx)
+	l.d = s.room.take((s.nx + 2*s.solver.bends) * s.solver.stride)
 }
 
-// fill makes the levels down to l by doubling, those that were not needed before.
-func (s *system) fill(l int) {
+// fill makes the levels down to l by doubling, those that were not needed before, and their columns for a segment.
+func (s *system) fill(l int, g *segment) {
 	v := &s.solver
 	for ; v.filled > l; v.filled-- {
 		s.double(&v.levels[v.filled-1], &v.levels[v.filled])
@@ -229,83 +258,196 @@ func (s *system) fill(l int) {
 			}
 		}
 	}
+	if v.levels[l].segment != g.id {
+		s.drive(v.levels, l, g)
+		for k := range v.gauss {
+			if chain := v.gauss[k]; chain != nil {
+				s.drive(chain, l, g)
+			}
+		}
+	}
 }
 
-// taylor fills a level from the series of the two integrals of the matrix exponential:
-// φ1 = ∫exp(A·t)dt and φ2 = ∫φ1 dt over the step, d = [A·φ1 | φ1·B | φ1·S + φ2·B | φ1·b].
+// taylor fills the columns of the states of a level from the series of A·∫exp(A·t)dt over the step, by Horner's rule in
+// the fourth power (Paterson and Stockmeyer 1973, from memory).
 func (s *system) taylor(l *level) {
 	n := s.nx
-	a, p, q := s.room.take(n*n), s.room.take(n*n), s.room.take(n*n)
-	phi1, phi2 := s.room.take(n*n), s.room.take(n*n)
-	for i := range n {
-		copy(row(a, n, i), row(s.rate, s.width, i)[:n])
-		p[i*n+i] = l.h
+	var power [5][]float64
+	for k := range power {
+		power[k] = s.room.take(n * n)
 	}
-	for k := 1; k <= degree+1; k++ { // p = A^(k-1)·h^k/k!
-		addTo(phi1, p, 1)
-		addTo(phi2, p, l.h/float64(k+1))
-		multiply(q, a, p, n, n)
-		for i := range q {
-			q[i] *= l.h / float64(k+1)
-		}
-		p, q = q, p
-	}
-	multiply(l.d, phi1, s.rate, n, s.width)
 	for i := range n {
-		for k := range n {
-			addTo(row(l.d, s.width, i)[n+s.nu:n+2*s.nu], row(s.rate, s.width, k)[n:n+s.nu], phi2[i*n+k])
+		for j, a := range row(s.rate, s.width, i)[:n] {
+			power[1][i*n+j] = a * l.h
 		}
+	}
+	for k := 2; k < len(power); k++ {
+		multiply(power[k], power[k-1], power[1], n, n)
+	}
+	sum, next := power[0], s.room.take(n*n)
+	addTo(sum, power[4], inverseFactorial[16])
+	for k := 12; k >= 0; k -= 4 {
+		for j := 1; j < 4; j++ {
+			addTo(sum, power[j], inverseFactorial[k+j])
+		}
+		if k == 0 {
+			break
+		}
+		for i := range n {
+			sum[i*n+i] += inverseFactorial[k]
+		}
+		multiply(next, sum, power[4], n, n)
+		sum, next = next, sum
+	}
+	for i := range n {
+		copy(row(l.d, s.solver.stride, i), row(sum, n, i))
 	}
 }
 
-// double fills a level from the one of half its length: d2 = 2d + d·d, where the sources have moved on by slope·h.
+// inverseFactorial holds 1/k!.
+var inverseFactorial = func() (f [17]float64) {
+	f[0] = 1
+	for k, product := 1, 1.0; k < len(f); k++ {
+		product *= float64(k)
+		f[k] = 1 / product
+	}
+	return f
+}()
+
+// double fills the columns of the states of a level from the one of half its length: d2 = 2d + d·d.
 func (s *system) double(long, short *level) {
-	n := s.nx
+	n, stride := s.nx, s.solver.stride
 	s.furnish(long)
 	for i := range n {
-		dst, src := row(long.d, s.width, i), row(short.d, s.width, i)
+		dst, src := row(long.d, stride, i)[:n], row(short.d, stride, i)[:n]
 		for j, v := range src {
 			dst[j] = 2 * v
 		}
-		addRows(dst, src[:n], short.d, s.width)
-		addTo(dst[n+s.nu:n+2*s.nu], src[n:n+s.nu], short.h)
+		addRows(dst, src, short.d, stride)
 	}
 }
 
-// segment is a stretch of time over which every source is a straight line.
-type segment struct {
-	id         int
-	from, till float64
-	value      []float64 // at from
-	slope      []float64
+// drive makes the columns of a segment on the levels from the last to l, those that are not there.
+func (s *system) drive(levels []level, l int, g *segment) {
+	last := len(levels) - 1
+	if levels[last].segment != g.id {
+		s.driveLast(&levels[last], g)
+	}
+	from := l
+	for levels[from].segment != g.id {
+		from++
+	}
+	for ; from > l; from-- {
+		s.driveOn(&levels[from-1], &levels[from])
+	}
 }
 
-// collapse gives a form over [states | 1 | τ] for a segment; dst has nx+2 places.
-func (s *system) collapse(dst, form []float64, g *segment) {
-	n := s.nx
-	copy(dst, form[:n])
-	u := form[n : n+s.nu]
-	dst[n] = dot(u, g.value) + dot(form[n+s.nu:n+2*s.nu], g.slope) + form[s.width-1]
-	dst[n+1] = dot(u, g.slope)
-}
-
-// collapseLevel applies the sources of a segment to a level.
-func (s *system) collapseLevel(l *level, g *segment) {
-	for i := range s.nx {
-		s.collapse(s.solver.work, row(l.d, s.width, i), g)
-		l.c0[i], l.c1[i] = s.solver.work[s.nx], s.solver.work[s.nx+1]
+// driveLast makes them on the finest level by their Taylor series: every term is the generator times the one before.
+func (s *system) driveLast(l *level, g *segment) {
+	v := &s.solver
+	n, w := v.order, v.order+2
+	term := v.poly[:2*n]
+	for j := s.nx; j < w; j++ {
+		now, next := term[:n], term[n:]
+		for i := range n {
+			now[i] = v.dx[i*w+j] * l.h
+			l.d[i*v.stride+j] = now[i]
+		}
+		for k, quiet := 2, 0; k <= degree+2 && quiet < 2; k++ {
+			apply(next, v.dx, w, now)
+			quiet++
+			for i := range n {
+				if j == n && k == 2 { // the time has moved on
+					next[i] += float64(v.dx[i*w+n+1] * l.h)
+				}
+				next[i] = float64(next[i] * l.h / float64(k))
+				sum := &l.d[i*v.stride+j]
+				if next[i] != 0 && math.Abs(next[i]) > lastBit*math.Abs(*sum) {
+					quiet = 0 // two terms that add nothing, and so do those to come
+				}
+				*sum += next[i]
+			}
+			now, next = next, now
+		}
 	}
 	l.segment = g.id
 }
 
-// step carries x over one level, starting at τ in the segment.
-func (s *system) step(dst, x []float64, l *level, g *segment, tau float64) {
-	if l.segment != g.id {
-		s.collapseLevel(l, g)
+// driveOn makes them from the level of half its length, on which the time has moved on too.
+func (s *system) driveOn(long, short *level) {
+	v := &s.solver
+	n, w := v.order, v.order+2
+	for i := range n {
+		dst, src := row(long.d, v.stride, i), row(short.d, v.stride, i)
+		for j := s.nx; j < w; j++ {
+			dst[j] = 2 * src[j]
+		}
+		dst[n] += float64(src[n+1] * short.h)
+		addRows(dst[s.nx:w], src[:n], short.d[s.nx:], v.stride)
 	}
-	apply(dst[:s.nx], l.d, s.width, x)
-	for i, d := range dst[:s.nx] {
-		dst[i] = x[i] + (d + (l.c0[i] + float64(l.c1[i]*tau)))
+	long.segment = short.segment
+}
+
+// segment is a stretch of time over which every source is a straight line or a curve.
+type segment struct {
+	id         int
+	from, till float64
+	longest    float64   // step
+	rate       float64   // of the fastest bend
+	value      []float64 // at from
+	slope      []float64
+	bends      []bend // the sources that bend, in their order
+}
+
+// bend is a source that bends: its curve from the start of the segment.
+type bend struct {
+	source int
+	Curve
+}
+
+// size is the largest value that the curve of a source has at its ends in the segment; 0 if it does not bend.
+func (g *segment) size(source int) float64 {
+	for _, b := range g.bends {
+		if b.source == source {
+			return math.Max(math.Abs(b.Value), math.Abs(b.At(g.till)))
+		}
+	}
+	return 0
+}
+
+// equations writes the two rows of a bend: of its deviation, which has the place at, and of the rate of that.
+func (b *bend) equations(rows []float64, w, at int) {
+	rows[at+1] = 1
+	second := rows[w:]
+	second[at], second[at+1] = -b.Spring, -b.Damping
+	second[w-2], second[w-1] = b.Bend, -b.Spring*b.Slope
+}
+
+// bendAt is the second derivative of the source at a time with a deviation and its rate.
+func (b *bend) bendAt(tau float64, v []float64) float64 {
+	return b.Bend - float64(b.Damping*v[1]) - float64(b.Spring*(float64(b.Slope*tau)+v[0]))
+}
+
+// collapse gives a form over [states | deviations | 1 | τ] for a segment.
+func (s *system) collapse(dst, form []float64, g *segment) {
+	n := s.nx
+	copy(dst, form[:n])
+	for _, b := range g.bends {
+		dst[n], dst[n+1] = form[s.value(b.source)], form[s.slope(b.source)]
+		n += 2
+	}
+	u := form[s.nx : s.nx+s.nu]
+	dst[n] = dot(u, g.value) + dot(form[s.nx+s.nu:s.nx+2*s.nu], g.slope) + form[s.width-1]
+	dst[n+1] = dot(u, g.slope)
+}
+
+// step carries x over one level, starting at τ in the segment.
+func (s *system) step(dst, x []float64, l *level, tau float64) {
+	n, stride := s.solver.order, s.solver.stride
+	apply(dst[:n], l.d, stride, x[:n])
+	for i, d := range dst[:n] {
+		c := l.d[i*stride+n:]
+		dst[i] = x[i] + (d + (c[0] + float64(c[1]*tau)))
 	}
 }
 
@@ -314,10 +456,12 @@ func (v *solver) unit() float64 { return v.levels[len(v.levels)-1].h }
 
 // expand fills the Taylor polynomial of the states at τ, in units of the finest step.
 func (s *system) expand(x []float64, tau float64) {
-	n, v := s.nx, &s.solver
+	n, v := s.solver.order, &s.solver
 	copy(v.poly[:n], x)
 	unit := v.unit()
-	for k := 1; k <= degree; k++ {
+	quiet := 0
+	for v.terms = 1; v.terms <= degree && quiet < 2; v.terms++ {
+		k := v.terms
 		to := row(v.poly, n, k)
 		apply(to, v.dx, n+2, row(v.poly, n, k-1))
 		for i, d := range to {
@@ -329,15 +473,23 @@ func (s *system) expand(x []float64, tau float64) {
 			}
 			to[i] = d * unit / float64(k)
 		}
+		quiet++
+		for i, d := range to {
+			if d != 0 && math.Abs(d) > lastBit*math.Abs(x[i]) {
+				quiet = 0
+				break
+			}
+		}
 	}
 }
 
 // along evaluates the expanded polynomial dt after its start.
 func (s *system) along(dst []float64, dt float64) {
-	n := s.nx
+	n := s.solver.order
 	dt /= s.solver.unit()
-	copy(dst, row(s.solver.poly, n, degree))
-	for k := degree - 1; k >= 0; k-- {
+	last := s.solver.terms - 1
+	copy(dst, row(s.solver.poly, n, last))
+	for k := last - 1; k >= 0; k-- {
 		for i, c := range row(s.solver.poly, n, k) {
 			dst[i] = float64(dst[i]*dt) + c
 		}

@@ -33,18 +33,14 @@ func WithLimit(steps int) Option { return func(o *options) { o.limit = steps } }
 type Run struct {
 	c       *Circuit
 	opts    options
-	waves   []Waveform
+	waves   []source
 	turns   []turn // what Retarget did so far
-	cache   map[pattern]*system
-	room    room
+	cache   []*system
+	room    *room
 	on      uint64 // conducting diodes
 	sys     *system
 	held    []float64 // per branch: capacitor voltage, inductor current at the last event
 	x, next []float64 // states now and after the step tried
-	rateOld []float64 // derivatives at both ends of a step, and whether they are known
-	rateNew []float64
-	knowOld bool
-	knowNew bool
 	spare   []float64
 	seg     segment
 	tau     float64 // time since the start of the segment
@@ -56,8 +52,9 @@ type Run struct {
 	left    int
 	per     int     // steps at each length while growing
 	calm    float64 // time since the last restart
+	defect  float64 // what the last step missed, relative to the scale
 	watch   []watch
-	looked  []float64 // scratch, a value per watch
+	looked  []float64 // scratch, a value and a rate per watch
 	stop    stop
 	totals  []total   // per branch
 	moment  []float64 // ∫ y·yᵀ over the present segment and pattern, y = [states | 1 | τ]
@@ -79,7 +76,7 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 	if err := c.check(); err != nil {
 		return nil, err
 	}
-	r := &Run{c: c.snapshot(), cache: map[pattern]*system{}}
+	r := &Run{c: c.view(), room: rooms.Get().(*room)}
 	r.opts = options{energy: true, trace: true, longest: math.Inf(1), limit: 2_000_000}
 	for _, o := range opts {
 		o(&r.opts)
@@ -87,20 +84,24 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 	if !(r.opts.longest > 0) {
 		return nil, fmt.Errorf("circuit: step %g s must be above zero", r.opts.longest)
 	}
-	r.held = make([]float64, len(c.branches))
-	r.totals = make([]total, len(c.branches))
-	r.waves = make([]Waveform, c.sources)
-	for k, b := range r.c.branches {
+	r.held = r.room.take(len(c.branches))
+	if r.opts.energy {
+		r.totals = make([]total, len(c.branches))
+	}
+	r.watch, r.looked = make([]watch, 0, c.diodes+4), make([]float64, 0, 2*c.diodes+8)
+	r.waves = make([]source, c.sources)
+	for k := range r.c.branches {
+		b := &r.c.branches[k]
 		r.held[k] = b.start
 		if b.kind == voltageSource || b.kind == currentSource {
-			r.waves[b.index] = b.wave
+			r.waves[b.index] = b.source()
 		}
 		if b.kind == diode {
 			r.watch = append(r.watch, watch{branch: k, isDiode: true})
-			r.looked = append(r.looked, 0)
+			r.looked = append(r.looked, 0, 0)
 		}
 	}
-	r.seg = segment{value: make([]float64, c.sources), slope: make([]float64, c.sources)}
+	r.seg = segment{value: r.room.take(c.sources), slope: r.room.take(c.sources), bends: make([]bend, 0, c.sources)}
 	r.locateSegment(0)
 	r.firstScale()
 	if err := r.settle(-1); err != nil {
@@ -109,31 +110,34 @@ func (c *Circuit) Start(opts ...Option) (*Run, error) {
 	return r, nil
 }
 
-// snapshot keeps a run apart from elements added later.
+// snapshot is a copy whose elements can be changed.
 func (c *Circuit) snapshot() *Circuit {
 	d := *c
 	d.nodes = slices.Clone(c.nodes)
 	d.branches = slices.Clone(c.branches)
 	d.couples = slices.Clone(c.couples)
-	d.byName = make(map[string]int, len(c.byName))
-	for k := range d.branches {
-		d.byName[d.branches[k].name] = k
-	}
+	return &d
+}
+
+// view keeps a run apart from elements added later: they come behind, or into another list.
+func (c *Circuit) view() *Circuit {
+	d := *c
+	d.nodes, d.branches, d.couples = slices.Clip(c.nodes), slices.Clip(c.branches), slices.Clip(c.couples)
 	return &d
 }
 
 // firstScale takes the scale of tolerances from sources, initial values and thresholds.
 func (r *Run) firstScale() {
-	for k, b := range r.c.branches {
-		switch b.kind {
+	for k := range r.c.branches {
+		switch b := &r.c.branches[k]; b.kind {
 		case capacitor:
 			r.volts = math.Max(r.volts, math.Abs(r.held[k]))
 		case inductor:
 			r.amps = math.Max(r.amps, math.Abs(r.held[k]))
 		case voltageSource:
-			r.volts = math.Max(r.volts, b.wave.size())
+			r.volts = math.Max(r.volts, b.source().size())
 		case currentSource:
-			r.amps = math.Max(r.amps, b.wave.size())
+			r.amps = math.Max(r.amps, b.source().size())
 		case diode:
 			r.volts = math.Max(r.volts, math.Abs(b.volt))
 		}
@@ -180,7 +184,7 @@ func (r *Run) advance(t float64) (stopped bool, err error) {
 		return false, fmt.Errorf("circuit: %d steps taken and only %g s reached; ask for a shorter time or take out the fastest ring", r.opts.limit, r.Time())
 	}
 	end := math.Min(t, r.seg.till)
-	fresh, err := r.sys.prepare(t-r.Time(), r.seg.till-r.seg.from, &r.opts)
+	fresh, err := r.sys.prepare(t-r.Time(), &r.seg, &r.opts)
 	if err != nil {
 		return false, err
 	}
@@ -195,6 +199,10 @@ func (r *Run) advance(t float64) (stopped bool, err error) {
 	}
 	dt, l := r.choose(room)
 	r.try(dt, l)
+	if r.opts.quick() && l >= 0 && r.rough(dt) && l < len(r.sys.solver.levels)-1 {
+		r.rung, r.left = l+1, r.per
+		return false, nil
+	}
 	if r.trouble(dt) {
 		if l >= 0 && l < len(r.sys.solver.levels)-1 {
 			if !r.opts.trace { // the samples of a trace are to be even
@@ -238,25 +246,25 @@ func (r *Run) choose(room float64) (dt float64, l int) {
 		}
 		r.rung, r.left = l, r.per
 	}
+	room = math.Min(room, r.seg.longest)
 	for l < len(levels) && levels[l].h > room*(1+1e-12) {
 		l++
 	}
 	if l == len(levels) {
 		return room, -1
 	}
-	r.sys.fill(l)
+	r.sys.fill(l, &r.seg)
 	return levels[l].h, l
 }
 
 // try computes the states one step ahead without accepting them.
 func (r *Run) try(dt float64, l int) {
 	if l >= 0 {
-		r.sys.step(r.next, r.x, &r.sys.solver.levels[l], &r.seg, r.tau)
+		r.sys.step(r.next, r.x, &r.sys.solver.levels[l], r.tau)
 	} else {
 		r.sys.expand(r.x, r.tau)
 		r.sys.along(r.next, dt)
 	}
-	r.knowNew = false
 	r.look(r.next, r.tau+dt)
 }
 
@@ -267,12 +275,8 @@ func (r *Run) accept(dt float64, l int, at float64) error {
 	}
 	r.record(dt, l, at)
 	r.x, r.next = r.next, r.x
-	r.rateOld, r.rateNew = r.rateNew, r.rateOld
-	r.knowOld, r.knowNew = r.knowNew && at == r.tau+dt, false
 	r.tau = at
-	for k := range r.watch {
-		r.watch[k].now = r.watch[k].then
-	}
+	r.arrive()
 	for _, v := range r.x {
 		if !(math.Abs(v) < 1e150) {
 			return fmt.Errorf("circuit: the solution grows without bound at %g s; check the sources", r.Time())
@@ -285,46 +289,91 @@ func (r *Run) accept(dt float64, l int, at float64) error {
 // grow lengthens the steps as the time since the last event grows; rings hold them back until they have died away.
 func (r *Run) grow(dt float64) {
 	r.calm += dt
+	if r.left--; r.left <= 0 && r.defect <= roughBy/8 && r.rung > r.lowest() {
+		r.rung--
+		r.left = r.per
+	}
+}
+
+// lowest is the level to which the steps may grow as yet.
+func (r *Run) lowest() int {
 	lowest := 0
 	for _, g := range r.sys.solver.rings {
 		if r.calm <= g.quiet && g.level > lowest {
 			lowest = g.level
 		}
 	}
-	if r.left--; r.left <= 0 && r.rung > lowest {
-		r.rung--
-		r.left = r.per
-	}
+	return lowest
 }
 
 // restart makes the steps short again after an event or a corner of a waveform, so that fast modes are followed.
 func (r *Run) restart(corner bool) {
 	per := r.opts.pace(corner)
-	r.rung, r.left, r.per, r.calm, r.goal = mostLevels+1, per, per, 0, 0
+	r.rung, r.left, r.per, r.calm, r.goal, r.defect = mostLevels+1, per, per, 0, 0, 0
 }
 
 // jumpsAt tells whether a source jumps at t, the end of the present segment or a moment within it.
 func (r *Run) jumpsAt(t float64) bool {
-	g := &r.seg
 	for k, w := range r.waves {
-		if jumps(w.At(t), g.value[k]+float64(g.slope[k]*(t-g.from))) {
+		c, _ := w.piece(t)
+		if was, _ := r.given(k); jumps(c.Value, was) && math.Abs(c.Value-was) > rounding*r.seg.size(k) {
 			return true
 		}
 	}
 	return false
 }
 
-// locateSegment finds the straight stretch of all sources that begins at t.
+// given is the present value and slope of a source.
+func (r *Run) given(k int) (value, slope float64) {
+	g := &r.seg
+	value, slope = g.value[k]+float64(g.slope[k]*r.tau), g.slope[k]
+	for i, b := range g.bends {
+		if v := r.x[r.sys.nx+2*i:]; b.source == k {
+			value, slope = value+v[0], slope+v[1]
+		}
+	}
+	return value, slope
+}
+
+// locateSegment finds the stretch of all sources that begins at t and has no corner.
 func (r *Run) locateSegment(t float64) {
 	g := &r.seg
 	g.id++
-	g.from, g.till = t, math.Inf(1)
+	g.from, g.till, g.rate, g.bends = t, math.Inf(1), 0, g.bends[:0]
 	for k, w := range r.waves {
-		value, slope, until := w.piece(t)
-		g.value[k], g.slope[k] = value, slope
-		g.till = math.Min(g.till, until)
+		c, straight := w.piece(t)
+		g.value[k], g.slope[k] = c.Value, c.Slope
+		g.till = math.Min(g.till, c.Till)
+		if !straight {
+			g.bends = append(g.bends, bend{k, c})
+			g.rate = math.Max(g.rate, c.rate())
+		}
+	}
+	if g.longest = math.Inf(1); len(g.bends) > 0 {
+		points, _ := r.opts.follow()
+		g.longest = (g.till - t) / float64(points/2)
 	}
 	r.tau = 0
+	if r.sys != nil { // every curve begins without a deviation
+		n := r.sys.nx
+		r.stretch(n + 2*len(g.bends))
+		clear(r.x[n:])
+	}
+}
+
+// stretch makes room for so many states and deviations, and keeps what is there.
+func (r *Run) stretch(n int) {
+	for _, p := range []*[]float64{&r.x, &r.next} {
+		if cap(*p) < n {
+			old := *p
+			*p = r.room.take(n)
+			copy(*p, old)
+		}
+		*p = (*p)[:n]
+	}
+	if cap(r.spare) < 2*n {
+		r.spare = r.room.take(2 * n)
+	}
 }
 
 // enterSegment goes over a corner: diodes may switch if a source jumps or if a capacitor current follows its slope.
@@ -339,14 +388,13 @@ func (r *Run) enterSegment(t float64) error {
 		return r.settle(-1)
 	}
 	r.refresh()
+	r.clearMoment()
 	r.look(r.x, 0)
 	for k := range r.watch {
-		w := &r.watch[k]
-		if w.isDiode && w.then < -w.tol {
+		if w := &r.watch[k]; w.isDiode && w.then < -w.tol {
 			r.keep()
 			return r.settle(-1)
 		}
-		w.now = w.then
 	}
 	r.sample()
 	r.restart(true)
@@ -356,9 +404,19 @@ func (r *Run) enterSegment(t float64) error {
 // form evaluates a form at the present moment.
 func (r *Run) form(f []float64) float64 {
 	s := r.sys
-	v := dot(r.x, f) + f[s.width-1]
+	v := dot(r.x[:s.nx], f) + f[s.width-1]
 	for u := range s.nu {
-		v += float64(f[s.value(u)]*(r.seg.value[u]+float64(r.seg.slope[u]*r.tau))) + float64(f[s.slope(u)]*r.seg.slope[u])
+		value, slope := r.given(u)
+		v += float64(f[s.value(u)]*value) + float64(f[s.slope(u)]*slope)
+	}
+	return v
+}
+
+// bending is what the second derivatives of the sources add to the derivative of a form.
+func (r *Run) bending(f []float64) float64 {
+	v := 0.0
+	for i, b := range r.seg.bends {
+		v += float64(f[r.sys.slope(b.source)] * b.bendAt(r.tau, r.x[r.sys.nx+2*i:]))
 	}
 	return v
 }

@@ -42,17 +42,15 @@ type tree struct {
 	cut    [][]term // of a tree branch: i(tree branch) = -Σ sign·i(link)
 	up     []int    // per node: tree branch towards node 0, -1 at the root
 	order  []int    // nodes from the root outwards
-	list   []int    // scratch
-	rise   []term
-	fall   []term
+	room   *room
 }
 
 // newTree classes the branches for a pattern of conducting diodes. With leaky, every blocking diode leaks.
-func newTree(c *Circuit, on uint64, leaky bool) (*tree, error) {
-	t := &tree{c: c, class: make([]class, len(c.branches)), ohm: make([]float64, len(c.branches))}
+func newTree(c *Circuit, p pattern, space *room) (*tree, error) {
+	t := &tree{c: c, room: space, class: make([]class, len(c.branches)), ohm: space.take(len(c.branches)), inTree: make([]bool, len(c.branches))}
 	for i := range c.branches {
-		t.class[i], t.ohm[i] = classify(&c.branches[i], on)
-		if leaky && c.branches[i].kind == diode && t.class[i] == open {
+		t.class[i], t.ohm[i] = classify(&c.branches[i], p.on)
+		if p.leaky && c.branches[i].kind == diode && t.class[i] == open {
 			t.class[i], t.ohm[i] = lossy, leakage
 		}
 	}
@@ -123,11 +121,12 @@ func (p parts) join(a, b int) bool {
 
 // grow chooses the tree branches: fixed, store, lossy (low resistance first), choke.
 func (t *tree) grow() (parts, error) {
-	part := make(parts, len(t.c.nodes))
-	for i := range part {
-		part[i] = i
+	t.room.part = t.room.part[:0]
+	for i := range t.c.nodes {
+		t.room.part = append(t.room.part, i)
 	}
-	t.inTree = make([]bool, len(t.class))
+	part := t.room.part
+	clear(t.inTree)
 	if err := t.growFixed(part); err != nil {
 		return nil, err
 	}
@@ -162,7 +161,7 @@ func (t *tree) growFixed(part parts) error {
 
 // members lists the branches of a class, resistors from low to high.
 func (t *tree) members(want class) []int {
-	list := t.list[:0]
+	list := t.room.list[:0]
 	for i, k := range t.class {
 		if k != want {
 			continue
@@ -174,7 +173,7 @@ func (t *tree) members(want class) []int {
 		}
 		list[at] = i
 	}
-	t.list = list
+	t.room.list = list
 	return list
 }
 
@@ -210,11 +209,11 @@ func (t *tree) whole(part parts) error {
 
 // root orders the nodes outwards from node 0 and notes each node's tree branch towards it.
 func (t *tree) root() {
-	t.up = make([]int, len(t.c.nodes))
+	t.up = t.room.ints.take(len(t.c.nodes))
 	for n := range t.up {
 		t.up[n] = -1
 	}
-	t.order = append(t.order[:0], 0)
+	t.order = append(t.room.ints.take(len(t.c.nodes))[:0], 0)
 	for k := 0; k < len(t.order); k++ {
 		n := t.order[k]
 		for i := range t.c.branches {
@@ -231,9 +230,9 @@ func (t *tree) root() {
 
 // links finds the loop every link closes in the tree, and from the loops the cuts.
 func (t *tree) links() {
-	t.loop, t.cut = make([][]term, len(t.class)), make([][]term, len(t.class))
-	all := make([]term, 0, 4*len(t.class))
-	size := make([]int, len(t.class)) // of the cuts
+	t.loop, t.cut = t.room.lists.take(len(t.class)), t.room.lists.take(len(t.class))
+	all := t.room.terms.take(4 * len(t.class))[:0]
+	size := t.room.ints.take(len(t.class)) // of the cuts
 	for i := range t.c.branches {
 		if t.inTree[i] || t.class[i] == open {
 			continue
@@ -245,7 +244,7 @@ func (t *tree) links() {
 			size[m.branch]++
 		}
 	}
-	space := make([]term, len(all))
+	space := t.room.terms.take(len(all))
 	for k, n := range size {
 		t.cut[k], space = space[:0:n], space[n:]
 	}
@@ -258,8 +257,8 @@ func (t *tree) links() {
 
 // path appends the tree branches whose voltages add up to v(a)-v(b).
 func (t *tree) path(list []term, a, b int) []term {
-	t.rise, t.fall = t.climb(t.rise[:0], a, 1), t.climb(t.fall[:0], b, -1)
-	rise, fall := t.rise, t.fall
+	rise, fall := t.climb(t.room.rise[:0], a, 1), t.climb(t.room.fall[:0], b, -1)
+	t.room.rise, t.room.fall = rise, fall
 	for len(rise) > 0 && len(fall) > 0 && rise[len(rise)-1].branch == fall[len(fall)-1].branch {
 		rise, fall = rise[:len(rise)-1], fall[:len(fall)-1]
 	}

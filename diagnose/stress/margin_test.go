@@ -266,7 +266,7 @@ func TestAssumedIsComplete(t *testing.T) {
 func TestTailEndsAtNothing(t *testing.T) {
 	b := soundBoard(t, [2]string{"switch.fall.fraction", "0.8"}, [2]string{"switch.fall.tail_time", "200 ns"})
 	p, _ := prepare(b)
-	w := p.nominal().cosine(0, 10)
+	w, _ := p.nominal().cosine(0, 10)
 	if last := w[len(w)-1]; last.V != 0 {
 		t.Errorf("the tail ends at %g A", last.V)
 	}

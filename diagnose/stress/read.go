@@ -8,7 +8,7 @@ import (
 	"drivemend/diagnose/circuit"
 )
 
-// read takes the figures off a run.
+// read takes the figures off a run, the last thing that is asked of it where only the peak is wanted.
 func (c *cell) read(run *circuit.Run, probe int, e Edge) *Edge {
 	s := c.s
 	e.Bus, e.Current, e.charge, e.gained, e.steps = s.bus, s.amps, c.taken(run), c.gained(run), run.Steps()
@@ -23,6 +23,7 @@ func (c *cell) read(run *circuit.Run, probe int, e Edge) *Edge {
 		e.Peak, e.PeakTime = s.bus, run.Time()
 	}
 	if s.fast {
+		run.Release()
 		return &e
 	}
 	for _, p := range run.Trace(probe) {

@@ -144,14 +144,6 @@ func (s scene) beyond() float64 {
 	return math.Min(10*(s.bus+s.amps*math.Sqrt((s.henry()+s.load)/steps[len(steps)-1].farad)), mostVolts)
 }
 
-// pieces is how many straight pieces a bent waveform gets.
-func (s scene) pieces(full int) int {
-	if s.fast {
-		return full / 6
-	}
-	return full
-}
-
 // turns is how many turns of the slowest ring are followed.
 func (s scene) turns() float64 {
 	if s.fast {

@@ -7,13 +7,12 @@ import (
 )
 
 const (
-	cosineSteps  = 96   // straight pieces of the raised cosine, a sixth of them where only the peak is wanted
-	tailSteps    = 16   // straight pieces of a tail
 	igbtSteeper  = 1.6  // an IGBT without a stated fall shape is this much steeper than its mean
 	straightRule = 0.8  // fall time 90 to 10 % over a straight fall (0.8·t(0–100))
 	cosineRule   = 0.59 // the same for a raised cosine: (arccos(−0.8) − arccos(0.8))/π
 	leastShare   = 1e-6 // of the load current; a channel that carries less at the bus has opened already
 	tailSpan     = 4.0  // time constants of a tail that are followed
+	tailEnd      = 0.25 // the last of them, in which it ends in a straight line
 )
 
 // span is how long an opening is followed.
@@ -93,7 +92,8 @@ func (s scene) gateLimited() (*Edge, error) {
 	slope, end := s.get("switch.rise_slope"), s.span()
 	c.Voltage("ramp", c.Node("ramp"), 0, circuit.Waveform{{T: 0, V: 0}, {T: 2 * s.bus / slope, V: 2 * s.bus}})
 	c.Diode("hold", c.chip, c.Node("ramp"), 0, channelSlope)
-	c.Current("channel", c.chip, 0, s.lettingGo(slope))
+	held, curves := s.lettingGo(slope)
+	c.Current("channel", c.chip, 0, held, curves...)
 	run, probe, err := s.start(c)
 	if err != nil {
 		return nil, err
@@ -117,7 +117,8 @@ func (c *cell) letGo(run *circuit.Run, probe int, after float64) error {
 	}
 	run.Retarget("ramp", circuit.Waveform{{T: t, V: s.beyond()}})
 	if amps > leastShare*s.amps {
-		run.Retarget("channel", s.cosine(t, amps))
+		fall, curves := s.cosine(t, amps)
+		run.Retarget("channel", fall, curves...)
 	} else {
 		run.Retarget("channel", circuit.Constant(0))
 	}
@@ -136,13 +137,13 @@ func (s scene) opened(shape string) Edge {
 // lettingGo is the least the channel carries on the way up to the bus, since its current cannot fall faster than the gate
 // lets it: without a network across the switch what the output capacitance takes on the gate's ramp, with one what it
 // leaves.
-func (s scene) lettingGo(slope float64) circuit.Waveform {
+func (s scene) lettingGo(slope float64) (circuit.Waveform, []circuit.Curve) {
 	amps := math.Min(s.amps, s.steps()[0].farad*slope)
 	if s.across() {
 		amps = s.amps - amps
 	}
 	if amps <= leastShare*s.amps {
-		return circuit.Constant(0)
+		return circuit.Constant(0), nil
 	}
 	return s.cosine(0, amps)
 }
@@ -150,8 +151,9 @@ func (s scene) lettingGo(slope float64) circuit.Waveform {
 // across tells whether a network lies across the victim.
 func (s scene) across() bool { return s.net != "" && s.net != "decoupling" && !s.moved }
 
-// cosine is the channel's fall from amps at time t, with a stated tail laid on if there is one.
-func (s scene) cosine(t, amps float64) circuit.Waveform {
+// cosine is the channel's fall from amps at time t, with a stated tail laid on if there is one: corners, and the curves
+// between them.
+func (s scene) cosine(t, amps float64) (circuit.Waveform, []circuit.Curve) {
 	whole := s.get("switch.fall_time") / cosineRule
 	fast := s.fall.fraction
 	if fast == 0 {
@@ -160,26 +162,12 @@ func (s scene) cosine(t, amps float64) circuit.Waveform {
 			whole /= igbtSteeper
 		}
 	}
-	length := whole * amps / s.amps
-	var w circuit.Waveform
-	pieces := s.pieces(cosineSteps)
-	for k := 0; k <= pieces; k++ {
-		x := float64(k) / float64(pieces)
-		w = append(w, circuit.Point{T: t + x*length, V: amps * (1 - fast*(1-math.Cos(math.Pi*x))/2)})
+	end, left := t+whole*amps/s.amps, amps*(1-fast)
+	w, curves := circuit.Waveform{{T: t, V: amps}, {T: end, V: left}}, []circuit.Curve{circuit.Cosine(t, end, amps, left)}
+	if left <= 0 {
+		return w, curves
 	}
-	return append(w, s.tail(t+length, amps*(1-fast))...)
-}
-
-// tail falls from amps with its time constant, to nothing after four of them.
-func (s scene) tail(t, amps float64) circuit.Waveform {
-	if amps <= 0 {
-		return nil
-	}
-	var w circuit.Waveform
-	for k := 1; k <= tailSteps; k++ {
-		x := tailSpan * float64(k) / tailSteps
-		w = append(w, circuit.Point{T: t + x*s.fall.tail, V: amps * math.Exp(-x)})
-	}
-	w[len(w)-1].V = 0
-	return w
+	straight := end + (tailSpan-tailEnd)*s.fall.tail
+	w = append(w, circuit.Point{T: straight, V: left * math.Exp(tailEnd-tailSpan)}, circuit.Point{T: end + tailSpan*s.fall.tail, V: 0})
+	return w, append(curves, circuit.Decay(end, straight, left, s.fall.tail))
 }

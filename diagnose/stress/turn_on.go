@@ -7,12 +7,10 @@ import (
 )
 
 const (
-	recoverySteps = 100  // straight pieces of the recovery's fall, a sixth of them where only the peak is wanted
-	bendSteps     = 96   // straight pieces of a voltage that its gate bends, a sixth of them where only the peak is wanted
-	recoverySpan  = 8.0  // time constants of it that are followed
-	leftForward   = 1e-6 // of the load current that the diode may still carry when it is taken as blocking
-	rampSpan      = 10.0 // how far the closing channel's ramp goes on, over load and recovery current
-	refillSpan    = 5.0  // time constants of a network that empties through its resistor, followed for its heat
+	recoverySpan = 8.0  // time constants of the recovery's fall that are followed before it ends in a straight line
+	leftForward  = 1e-6 // of the load current that the diode may still carry when it is taken as blocking
+	rampSpan     = 10.0 // how far the closing channel's ramp goes on, over load and recovery current
+	refillSpan   = 5.0  // time constants of a network that empties through its resistor, followed for its heat
 )
 
 // closingSlope is the current slope of the bank that closes.
@@ -55,68 +53,58 @@ func (s scene) turnOn() (*Edge, error) {
 	if err == nil && reached {
 		err = c.block(run, probe, r)
 	}
-	e := c.read(run, probe, Edge{Name: turnOn, Shape: shapeRamp})
+	e := Edge{Name: turnOn, Shape: shapeRamp}
 	e.Surge, _ = run.Peak(surge)
-	return e, err
+	return c.read(run, probe, e), err
 }
 
 // block is the closing from the moment the diode blocks.
 func (c *cell) block(run *circuit.Run, probe int, r recovered) error {
 	t, level := run.Time(), run.Voltage(c.chip, 0)
-	run.Retarget("recovery", r.fall(t, c.s.pieces(recoverySteps)))
+	recovery, decay := r.fall(t)
+	run.Retarget("recovery", recovery, decay...)
 	if level > 0 {
-		run.Retarget("floor-level", c.s.collapse(t, level))
+		falling, curve := c.s.collapse(t, level)
+		run.Retarget("floor-level", falling, curve)
 	}
 	if c.s.lifts > 0 && c.s.lifts < c.s.bus {
 		reached, err := c.climbTo(run, probe, c.s.lifts, t+c.s.afterClosing(r))
 		if err != nil || !reached {
 			return err
 		}
-		run.Retarget("ramp", c.s.selfTurnOn(run.Time()))
+		highest, curve := c.s.selfTurnOn(run.Time())
+		run.Retarget("ramp", highest, curve)
 	}
 	return c.follow(run, probe, t+c.s.afterClosing(r))
 }
 
 // collapse is the fall of the closing switch's voltage from a level at time t. At the bus its gate lets it fall at the
 // closing slope; the capacitance to the gate grows as the voltage falls, with its root, so that it ends as a parabola.
-func (s scene) collapse(t, level float64) circuit.Waveform {
+func (s scene) collapse(t, level float64) (circuit.Waveform, circuit.Curve) {
 	whole := 2 * math.Sqrt(level*s.bus) / s.fallSlope()
-	w := circuit.Waveform{{T: t, V: level}}
-	pieces := s.pieces(bendSteps)
-	for k := 1; k <= pieces; k++ {
-		x := float64(k) / float64(pieces)
-		w = append(w, circuit.Point{T: t + x*whole, V: level * (1 - x) * (1 - x)})
-	}
-	return w
+	w := circuit.Waveform{{T: t, V: level}, {T: t + whole, V: 0}}
+	return w, circuit.Parabola(t, t+whole, level, -2*level/whole, 2*level/(whole*whole))
 }
 
 // selfTurnOn is the highest voltage that the victim can have from the moment its rise has lifted its own gate: risen
 // faster, it would conduct. C_gc falls with the root of the voltage, so that the slope grows with it, to that of an
 // opening at the bus: √v rises evenly.
-func (s scene) selfTurnOn(t float64) circuit.Waveform {
+func (s scene) selfTurnOn(t float64) (circuit.Waveform, circuit.Curve) {
 	from, pace := math.Sqrt(s.lifts), s.get("switch.rise_slope")/(2*math.Sqrt(s.bus))
 	whole := 3 * math.Sqrt(s.bus) / pace
-	pieces := s.pieces(bendSteps)
-	var w circuit.Waveform
-	for k := 0; k <= pieces; k++ {
-		x := float64(k) / float64(pieces) * whole
-		w = append(w, circuit.Point{T: t + x, V: (from + pace*x) * (from + pace*x)})
-	}
-	return append(w, circuit.Point{T: t + 2*whole, V: math.Max(s.beyond(), w[len(w)-1].V)})
+	end := (from + pace*whole) * (from + pace*whole)
+	w := circuit.Waveform{{T: t, V: s.lifts}, {T: t + whole, V: end}, {T: t + 2*whole, V: math.Max(s.beyond(), end)}}
+	return w, circuit.Parabola(t, t+whole, s.lifts, 2*from*pace, 2*pace*pace)
 }
 
-// fall is the reverse current of a diode from the moment it blocks, in straight pieces.
-func (r recovered) fall(t float64, pieces int) circuit.Waveform {
+// fall is the reverse current of a diode from the moment it blocks: a decay, and its tangent at the end.
+func (r recovered) fall(t float64) (circuit.Waveform, []circuit.Curve) {
 	if r.amps <= 0 || r.time <= 0 {
-		return circuit.Constant(0)
+		return circuit.Constant(0), nil
 	}
-	w := circuit.Waveform{{T: t, V: r.amps}}
-	for k := 1; k <= pieces; k++ { // shorter pieces where it bends more
-		x := -2 * math.Log1p(-float64(k)/float64(pieces)*(1-math.Exp(-recoverySpan/2)))
-		w = append(w, circuit.Point{T: t + x*r.time, V: r.amps * math.Exp(-x)})
-	}
-	w[len(w)-1].V = 0
-	return w
+	end := t + recoverySpan*r.time
+	w := circuit.Waveform{{T: t, V: r.amps}, {T: end, V: r.amps * math.Exp(-recoverySpan)}, {T: end + r.time, V: 0}}
+	return w, []circuit.Curve{circuit.Decay(t, end, r.amps, r.time)}
 }
 
 // fallSlope is how fast the voltage of the closing switch falls.
