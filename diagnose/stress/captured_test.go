@@ -15,8 +15,7 @@ func probed(t *testing.T, p *problem, bus, amps float64) map[string]quantity.Qua
 	t.Helper()
 	s := p.base
 	s.bus, s.amps = bus, amps
-	s.outside = true
-	e, err := s.gateLimited()
+	e, err := watchingTerminals(s).gateLimited()
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -50,37 +50,52 @@ const (
 // Judgement: in the maker's test of the reference boards both go with about the root (TestModelRules).
 const igbtClosing = 0.7
 
-// The plateau of the gate where the case gives no transfer curve (judgement).
-const (
-	plainThreshold = 4.0 // V
-	overThreshold  = 2.5 // V, plateau less threshold
-)
+// plainThreshold is a gate's threshold where the case gives none (judgement).
+const plainThreshold = 4.0 // V
+
+// overThreshold is how far the plateau of the gate lies over its threshold at the rated current: judgement, after what
+// transfer curves of such parts show.
+func overThreshold(kind string) float64 {
+	switch kind {
+	case "igbt":
+		return 4
+	case "sic-mosfet":
+		return 5
+	}
+	return 2.5
+}
 
 // slope takes the voltage slope at opening: stated, else from the gate, (plateau − off voltage)/(R·C_gc), else
 // typical of the kind. C_gc has to be the one at the bus.
 func (g gatherer) slope(typical float64) {
-	plateau := g.plateau()
+	plateau := g.plateau(1)
 	drive := plateau - g.value("gate.off_voltage")
 	g.take("switch.rise_slope", quantity.VoltPerSecond, around(typical, 2), "typical of the kind of switch, judgement",
-		g.byGate("gate.turn_off_resistance", drive, "(plateau − off voltage)/(R·C_gc)"))
+		g.byGate("gate.turn_off_resistance", plateau, drive, "(plateau − off voltage)/(R·C_gc)"))
 }
 
-// plateau is the gate voltage at which the switch carries the load current while its voltage moves.
-func (g gatherer) plateau() float64 {
-	if g.stated("switch.gate_threshold") {
-		return g.value("switch.gate_threshold") + overThreshold
+// plateau is the gate voltage at which the switch carries so many times the worst current while its voltage moves: over the
+// threshold it goes with the root of the current.
+func (g gatherer) plateau(times float64) float64 {
+	threshold, share := g.value("switch.gate_threshold"), 1.0
+	if threshold <= 0 {
+		threshold = plainThreshold
 	}
-	return plainThreshold + overThreshold
+	if rated := g.value("switch.rated_current") * float64(g.in.bank); rated > 0 {
+		share = times * g.in.mid("load.stall_current") / rated
+	}
+	kind, _ := g.b.Word("switch.kind")
+	return threshold + overThreshold(kind)*math.Sqrt(share)
 }
 
 // byGate is a voltage slope that the gate circuit makes: what drives it over the resistance times C_gc; nothing when
 // the case does not state enough.
-func (g gatherer) byGate(resistor string, drive float64, formula string) known {
+func (g gatherer) byGate(resistor string, plateau, drive float64, formula string) known {
 	charge := (g.value(resistor) + g.value("switch.internal_gate_resistance")) * g.value("switch.gate_collector_capacitance")
 	if !g.stated(resistor) || charge <= 0 || drive <= 0 {
 		return known{}
 	}
-	return known{around(drive/charge, 1.5), fromGate + formula + ", plateau " + quantity.Format(g.plateau(), quantity.Volt) + ", judgement"}
+	return known{around(drive/charge, 1.5), fromGate + formula + ", plateau " + quantity.Format(plateau, quantity.Volt) + ", judgement"}
 }
 
 // turnOn takes the current slope at closing, stated at its own gate resistance or typical, and the slope at which the
@@ -96,10 +111,17 @@ func (g gatherer) turnOn(kind string, rise float64) {
 		}
 		g.scale("switch.turn_on_slope", scale)
 	}
-	drive := g.value("gate.on_voltage") - g.plateau()
+	plateau, on := g.plateau(closingShare), g.value("gate.on_voltage")
+	drive := max(on-plateau, leastDrive*on)
 	g.take("switch.closing_slope", quantity.VoltPerSecond, around(rise, 2), "typical of the kind of switch, judgement",
-		g.byGate("gate.turn_on_resistance", drive, "(on voltage − plateau)/(R·C_gc)"))
+		g.byGate("gate.turn_on_resistance", plateau, drive, "(on voltage − plateau)/(R·C_gc)"))
 }
+
+// What a closing switch has while its voltage falls (judgement).
+const (
+	closingShare = 1.5     // its current over the load's: it carries the recovery too
+	leastDrive   = 1.0 / 6 // of the on voltage, what is left over the plateau at the least
+)
 
 // fromGate begins the reason of a slope that the gate circuit makes.
 const fromGate = "from the gate: "

@@ -126,6 +126,7 @@ var oneEdge = map[string]string{
 // far takes what the opposite switch of a leg has otherwise than this one.
 func (g gatherer) far(b measure.Board, position string) {
 	in := &inputs{class: g.in.class, at: map[string]int{}, bank: 1}
+	in.add(g.in.values[g.in.at["load.stall_current"]])
 	gatherer{b, in}.parallel(position)
 	gatherer{b, in}.device()
 	g.in.farBank = in.bank

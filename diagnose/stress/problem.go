@@ -3,7 +3,6 @@ package stress
 import (
 	"fmt"
 	"slices"
-	"strings"
 
 	"drivemend/measure"
 )
@@ -125,25 +124,11 @@ func (p *problem) setScene() {
 	s.frequency = g.value("pwm.frequency")
 	p.setNetwork(&s)
 	p.setPath(&s, g)
-	s.lifts = p.lifted(g)
 	s.tested = blocking{g.value("freewheel.recovery_charge.current"), g.value("freewheel.recovery_charge.slope")}
 	for _, in := range p.in.values {
 		s.x = append(s.x, in.mid)
 	}
 	p.base = s
-}
-
-// lifted is the voltage to which the victim has to rise, fast, before the charge through C_gc has brought its own gate
-// from its off voltage to the plateau: 2·C_gc·√(V·v) = C_ge·(plateau − off), with C_gc at the bus and falling with the root
-// of the voltage. Nothing when the slope of an opening does not follow from the gate, or C_ge is not stated.
-func (p *problem) lifted(g gatherer) float64 {
-	gate, bus := g.value("switch.gate_emitter_capacitance"), p.in.mid("bus.highest")
-	byGate := strings.HasPrefix(p.in.values[p.in.at["switch.rise_slope"]].why, fromGate)
-	if !p.leg() || !byGate || gate <= 0 || bus <= 0 {
-		return 0
-	}
-	root := gate * (g.plateau() - g.value("gate.off_voltage")) / (2 * g.value("switch.gate_collector_capacitance"))
-	return root * root / bus
 }
 
 // setNetwork fixes where the network lies and leads.

@@ -52,7 +52,6 @@ type scene struct {
 	held      float64  // V, that a clamp holds
 	frequency float64  // Hz, of the PWM; 0 when not stated
 	tested    blocking // how the diode was measured to block; its charge and softness are inputs
-	lifts     float64  // V, to which the victim has to rise at a closing to lift its own gate; 0 when that is not known
 	outside   bool     // the terminals are watched too
 	fast      bool     // only the peak is wanted
 	most      int      // steps of the solver; 0 counts as mostSteps

@@ -51,7 +51,7 @@ func terminalPeaks(t *testing.T, p *problem) []float64 {
 	}
 	peaks := make([]float64, len(sample))
 	err = each(len(sample), func(k int) error {
-		e, err := sample[k].s.watchTerminals()
+		e, err := watchingTerminals(sample[k].s).gateLimited()
 		if err == nil {
 			peaks[k] = e.terminals
 		}
@@ -84,7 +84,7 @@ func TestSiCRecord(t *testing.T) {
 		p := problemOf(t, b)
 		peaks := terminalPeaks(t, p)
 		lowest, highest := peaks[0], peaks[len(peaks)-1]
-		middle, err := p.nominal().watchTerminals()
+		middle, err := watchingTerminals(p.nominal()).gateLimited()
 		if err != nil {
 			t.Fatal(err)
 		}
@@ -101,4 +101,10 @@ func TestSiCRecord(t *testing.T) {
 			t.Errorf("%s: draws from %.1f V to %.1f V, measured %.0f V", name, lowest, highest, measured)
 		}
 	}
+}
+
+// watchingTerminals is a scene whose terminals are watched beside the chip.
+func watchingTerminals(s scene) scene {
+	s.outside = true
+	return s
 }

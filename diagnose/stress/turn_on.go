@@ -39,10 +39,6 @@ func (s scene) turnOn() (*Edge, error) {
 	c.Voltage("floor-level", c.Node("floor"), 0, circuit.Constant(0))
 	c.Diode("floor", c.Node("floor"), drain, 0, floorSlope)
 	c.Current("recovery", c.far, c.load, circuit.Constant(r.amps))
-	if s.lifts > 0 {
-		c.Voltage("ramp", c.Node("ramp"), c.load, circuit.Constant(s.beyond()))
-		c.Diode("hold", c.far, c.Node("ramp"), 0, channelSlope)
-	}
 	run, probe, err := s.start(c)
 	if err != nil {
 		return nil, err
@@ -67,14 +63,6 @@ func (c *cell) block(run *circuit.Run, probe int, r recovered) error {
 		falling, curve := c.s.collapse(t, level)
 		run.Retarget("floor-level", falling, curve)
 	}
-	if c.s.lifts > 0 && c.s.lifts < c.s.bus {
-		reached, err := c.climbTo(run, probe, c.s.lifts, t+c.s.afterClosing(r))
-		if err != nil || !reached {
-			return err
-		}
-		highest, curve := c.s.selfTurnOn(run.Time())
-		run.Retarget("ramp", highest, curve)
-	}
 	return c.follow(run, probe, t+c.s.afterClosing(r))
 }
 
@@ -84,17 +72,6 @@ func (s scene) collapse(t, level float64) (circuit.Waveform, circuit.Curve) {
 	whole := 2 * math.Sqrt(level*s.bus) / s.fallSlope()
 	w := circuit.Waveform{{T: t, V: level}, {T: t + whole, V: 0}}
 	return w, circuit.Parabola(t, t+whole, level, -2*level/whole, 2*level/(whole*whole))
-}
-
-// selfTurnOn is the highest voltage that the victim can have from the moment its rise has lifted its own gate: risen
-// faster, it would conduct. C_gc falls with the root of the voltage, so that the slope grows with it, to that of an
-// opening at the bus: √v rises evenly.
-func (s scene) selfTurnOn(t float64) (circuit.Waveform, circuit.Curve) {
-	from, pace := math.Sqrt(s.lifts), s.get("switch.rise_slope")/(2*math.Sqrt(s.bus))
-	whole := 3 * math.Sqrt(s.bus) / pace
-	end := (from + pace*whole) * (from + pace*whole)
-	w := circuit.Waveform{{T: t, V: s.lifts}, {T: t + whole, V: end}, {T: t + 2*whole, V: math.Max(s.beyond(), end)}}
-	return w, circuit.Parabola(t, t+whole, s.lifts, 2*from*pace, 2*pace*pace)
 }
 
 // fall is the reverse current of a diode from the moment it blocks: a decay, and its tangent at the end.
