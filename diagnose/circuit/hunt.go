@@ -59,16 +59,19 @@ func (r *Run) rough(dt float64) bool {
 	return r.defect > roughBy
 }
 
-// scale is the size of what a watch measures.
+// scale is the size of what a watch measures; a probe takes in what it has seen.
 func (r *Run) scale(w *watch) float64 {
-	size := math.Max(math.Abs(w.top.V), math.Abs(w.low.V)) + math.SmallestNonzeroFloat64
+	size := r.volts
 	switch {
 	case w.isSlope:
-		return size
+		size = 0
 	case w.isCurrent || w.isDiode && w.conducts:
-		return math.Max(size, r.amps)
+		size = r.amps
 	}
-	return math.Max(size, r.volts)
+	if w.isDiode {
+		return size + math.SmallestNonzeroFloat64
+	}
+	return math.Max(size, math.Max(math.Abs(w.top.V), math.Abs(w.low.V))) + math.SmallestNonzeroFloat64
 }
 
 // trouble tells whether a diode switches, or the stop level is reached, within the step tried.
