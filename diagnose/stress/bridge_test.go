@@ -172,12 +172,12 @@ func TestLegNeverBetterThanThin(t *testing.T) {
 		if f.Verdict != Thin || !slices.Equal(f.LiftedBy, []string{key}) {
 			t.Errorf("without %s: %s, lifted by %v", key, f.Verdict, f.LiftedBy)
 		}
-		if slices.Contains(problemOf(t, soundBoard(t).Without(key)).lifts(), key) {
+		if slices.Contains(problemOf(t, soundBoard(t).Without(key)).lifts(false), key) {
 			t.Errorf("a chopper is held down by %s", key)
 		}
 	}
 	schottky := bridgeOf(t, "half-bridge", with(list, [2]string{"freewheel.forward_voltage", "0.4 V"})).Without("freewheel.recovery_charge")
-	if lifts := problemOf(t, schottky).lifts(); slices.Contains(lifts, "freewheel.recovery_charge") {
+	if lifts := problemOf(t, schottky).lifts(false); slices.Contains(lifts, "freewheel.recovery_charge") {
 		t.Errorf("a Schottky diode has no charge to state: lifted by %v", lifts)
 	}
 }

@@ -2,6 +2,7 @@ package stress
 
 import (
 	"math"
+	"slices"
 	"strings"
 	"testing"
 	"time"
@@ -205,6 +206,24 @@ func TestMeasuredOpeningOverrulesTheDraws(t *testing.T) {
 		}
 		if c.want == Thin && (len(f.Rests) == 0 || !strings.Contains(f.Rests[len(f.Rests)-1], "scope.csv")) {
 			t.Errorf("thin, and the capture is not named: %v", f.Rests)
+		}
+	}
+}
+
+// A measured opening stands in for the gate and the fall time's reference; it lifts nothing else.
+func TestMeasuredOpeningLiftsTheGate(t *testing.T) {
+	for _, key := range []string{"gate.turn_off_resistance", "switch.fall_time.gate_resistance", "snubber.kind"} {
+		c := &measure.Case{ID: "bench", Board: soundBoard(t).Without(key)}
+		for _, want := range []bool{true, key == "snubber.kind"} {
+			m, err := Compute(c, 1)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if got := slices.Contains(m.AsFound.LiftedBy, key); got != want {
+				t.Errorf("without %s, %d openings measured: lifted by %v", key, len(c.Captures), m.AsFound.LiftedBy)
+			}
+			c.Captures = []measure.Capture{opening("scope.csv", map[string]quantity.Quantity{"bus": quantity.Of(340, quantity.Volt),
+				"current": quantity.Of(20, quantity.Ampere), "peak": quantity.Of(345, quantity.Volt)})}
 		}
 	}
 }

@@ -321,12 +321,12 @@ func (m *Margin) judge(f *Figures, p *problem, seed uint64) error {
 		return err
 	}
 	f.P999.Peak = min(f.P999.Peak, f.Worst.Peak) // no draw can pass the corner
-	f.LiftedBy = p.lifts()
+	f.LiftedBy = p.lifts(f.Measured != nil)
 	return p.verdict(f, scan)
 }
 
 // verdict grades the percentile, or what a measured opening foretells where that is worse. Within is given only when the
-// gate is known, no assumed value alone could take the peak over the bound, a measured opening does not reach over it, and
+// gate is known or an opening was measured, no assumed value alone could take the peak over the bound, a measured opening does not reach over it, and
 // the edges follow all that the board states; else it is thin.
 func (p *problem) verdict(f *Figures, scan []scanned) error {
 	f.Verdict = Grade(max(f.P999.Peak, f.foretold()) / p.rated)

@@ -236,12 +236,12 @@ func (p *problem) network() Network {
 }
 
 // lifts names the answers without which a verdict is never better than thin: gate resistance and the fall time's
-// reference resistance, and whether there is a network at all. A value that is only assumed does
-// not count as an answer.
-func (p *problem) lifts() []string {
+// reference resistance, unless an opening was measured, and whether there is a network at all. A value that is only assumed
+// does not count as an answer.
+func (p *problem) lifts(measured bool) []string {
 	var out []string
 	for _, key := range []string{"switch.fall_time", "switch.fall_time.gate_resistance", "gate.turn_off_resistance"} {
-		if _, ok := p.own.Quantity(key); !ok || p.own.Assumed(key) {
+		if _, ok := p.own.Quantity(key); !measured && (!ok || p.own.Assumed(key)) {
 			out = append(out, key)
 		}
 	}
