@@ -143,7 +143,7 @@ func (s *spectrum) split() int {
 		if size == 0 {
 			size = s.norm
 		}
-		if math.Abs(s.a[l*s.n+l-1])+size == size {
+		if off := math.Abs(s.a[l*s.n+l-1]); off+size == size || off <= lastBit*s.norm {
 			s.a[l*s.n+l-1] = 0
 			break
 		}
