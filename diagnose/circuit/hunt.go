@@ -129,7 +129,7 @@ func (p third) crossing() float64 {
 
 // dip gives a height that a curve with falling slope da at its start a and rising slope db at its end b does not go
 // below within dt: the least value of the cubic through both ends, and a share of its depth for what the cubic misses
-// (of a ring followed at 16 points a period, 1e-4 of its size).
+// (of a ring followed at 8 points a period, 1e-3 of its size).
 func dip(a, da, b, db, dt float64) float64 {
 	p := cubic(a, float64(da*dt), b, float64(db*dt))
 	bottom := -p[1] / (p[2] + math.Sqrt(math.Max(0, float64(p[2]*p[2])-float64(3*p[3]*p[1]))))
@@ -235,10 +235,11 @@ func turnOf(p []float64, dt, sign float64) float64 {
 }
 
 // rootOf gives the place in [0, end] where a function positive at 0 stops being so, to the last digits. Newton's steps close
-// in from one side; one twice as long then catches the other. Where they leave the bracket its middle is taken.
+// in from one side; one twice as long then catches the other. Where they leave the bracket, or do not halve it in three, its
+// middle is taken.
 func rootOf(end float64, f func(float64) (v, slope float64)) float64 {
 	low, high, at := 0.0, end, 0.5*end
-	for range 100 {
+	for slow := 0; ; {
 		width := high - low
 		v, slope := f(at)
 		switch {
@@ -250,19 +251,20 @@ func rootOf(end float64, f func(float64) (v, slope float64)) float64 {
 			return at
 		}
 		step := math.Abs(v / slope)
-		if high-low > 0.5*width {
+		if slow++; high-low <= 0.5*width {
+			slow = 0
+		} else {
 			step *= 2
 		}
 		next := at + math.Copysign(math.Max(step, 2e-16*end), v)
-		if !(next > low && next < high) {
+		if !(next > low && next < high) || slow > 2 {
 			next = low + float64(0.5*(high-low))
 		}
 		if next <= low || next >= high {
-			break
+			return high
 		}
 		at = next
 	}
-	return high
 }
 
 func horner(p []float64, t float64) float64 {

@@ -144,7 +144,7 @@ func (s *spectrum) split(turn int) int {
 		if size == 0 || turn > sweepsEach/2 {
 			size = s.norm
 		}
-		if math.Abs(s.a[l*s.n+l-1])+size == size {
+		if off := math.Abs(s.a[l*s.n+l-1]); off+size == size || off <= lastBit*s.norm {
 			s.a[l*s.n+l-1] = 0
 			break
 		}
