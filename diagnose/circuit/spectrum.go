@@ -120,7 +120,7 @@ func (s *spectrum) fromRight(v []float64, k int, scale float64) {
 // next sweeps until one or two eigenvalues have come off the end.
 func (s *spectrum) next() bool {
 	for turn := 1; turn <= sweepsEach; turn++ {
-		switch first := s.split(turn); s.last - first {
+		switch first := s.split(); s.last - first {
 		case 0:
 			s.out = append(s.out, complex(s.a[s.last*s.n+s.last]+s.moved, 0))
 			s.last--
@@ -135,13 +135,12 @@ func (s *spectrum) next() bool {
 	return false
 }
 
-// split gives where the last block begins that hangs together. Where sweeps do not come to an end, rounding of the largest
-// entries keeps a small one from vanishing against its neighbours: then the largest are the measure.
-func (s *spectrum) split(turn int) int {
+// split gives where the last block begins that hangs together.
+func (s *spectrum) split() int {
 	l := s.last
 	for ; l > 0; l-- {
 		size := math.Abs(s.a[(l-1)*s.n+l-1]) + math.Abs(s.a[l*s.n+l])
-		if size == 0 || turn > sweepsEach/2 {
+		if size == 0 {
 			size = s.norm
 		}
 		if off := math.Abs(s.a[l*s.n+l-1]); off+size == size || off <= lastBit*s.norm {

@@ -64,50 +64,6 @@ func TestEigenvaluesAgree(t *testing.T) {
 	}
 }
 
-// The rates of a circuit whose inductors meet in cut sets, so that several rates are nothing: rounding of the largest keeps
-// the small ones from coming apart, and sweeps came to no end.
-func TestEigenvaluesOfHeldStates(t *testing.T) {
-	const n = 16
-	a := make([]float64, n*n)
-	for _, x := range heldStates {
-		a[x.row*n+x.column] = x.rate
-	}
-	m := mat.NewDense(n, n, slices.Clone(a))
-	var e mat.Eigen
-	if !e.Factorize(m, mat.EigenNone) {
-		t.Fatal("no result to compare with")
-	}
-	got, ok := eigenvaluesOf(a, make([]float64, 2*n), n, nil)
-	if !ok {
-		t.Fatal("the sweeps did not come to an end")
-	}
-	if worst := strayed(got, e.Values(nil)); worst > 1e-10*mat.Norm(m, 2) {
-		t.Errorf("off by %g of %g", worst, mat.Norm(m, 2))
-	}
-}
-
-// heldStates are the rates of a half-bridge with clamps while its diode blocks, in 1/s.
-var heldStates = []struct {
-	row, column int
-	rate        float64
-}{
-	{0, 0, -102682.39316143202}, {0, 1, -30929.85122095889}, {0, 10, 1124129.3961231136}, {0, 12, -1268740.95735203},
-	{1, 0, 30929.851220958877}, {1, 10, -338608.7322734285}, {1, 12, 382168.43063972046}, {2, 2, -4048660260.969883},
-	{2, 10, 5803377909.819766}, {2, 12, -6549942800.689794}, {3, 0, 1747180.927196939}, {3, 1, 526283.4695461307},
-	{3, 2, 9019914640.007025}, {3, 3, -3355660655.558676}, {3, 5, -299546301.71490264}, {3, 6, 256887289.7927661},
-	{3, 10, -12949722230.220232}, {3, 11, -151781717.93744826}, {3, 12, 16183590951.704617}, {3, 14, -139966852.50720426},
-	{4, 4, -247912922.5895203}, {5, 3, 159579449.20769832}, {6, 3, -513774579.58553207}, {6, 6, -5315653823.422404},
-	{6, 9, 8591962494.699898}, {6, 10, 455214363.9299583}, {6, 12, -513774579.58553207}, {9, 6, 8591962494.6999},
-	{9, 9, -13887627366.749899}, {10, 0, 1124129.3961231136}, {10, 1, 338608.7322734285}, {10, 2, 5803377909.819763},
-	{10, 3, -1008829318.3571577}, {10, 5, -90054127.15820086}, {10, 6, -165280280.62310416}, {10, 10, -8331800790.645116},
-	{10, 11, -440270561.97005445}, {10, 12, 8394800680.152168}, {10, 14, 90054127.15820082}, {11, 10, 268963163.7393587},
-	{11, 11, -3952919745.701733}, {11, 15, 698514797.7790979}, {12, 0, -1747180.927196939}, {12, 1, -526283.4695461306},
-	{12, 2, -9019914640.007023}, {12, 3, 1567975492.7765236}, {12, 5, 139966852.50720426}, {12, 6, 256887289.79276597},
-	{12, 10, 12949722230.22023}, {12, 11, -151781717.93744817}, {12, 12, -17971276114.48677}, {12, 14, 299546301.7149025},
-	{13, 13, -247912922.5895203}, {14, 12, -159579449.20769832}, {15, 11, -698514797.7790978},
-	{15, 15, -2686531.0139557067},
-}
-
 // nearness is how close two sets of eigenvalues can be told to be: multiple ones of sparse matrices move with the root of
 // the rounding, or more.
 func nearness(n int) float64 {

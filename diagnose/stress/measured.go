@@ -263,25 +263,25 @@ const (
 	mostApart    = 2.0
 )
 
-// The powers of the bus with which a ring grows that the output capacitance decides, I·√(L/C): a quarter where C falls with
-// the root of the voltage; with columns, whose capacitance falls by more than ten times over some tens of volts, three
-// quarters (judgement; on the gate-driven reference boards 0.65 at most).
+// The powers of the bus with which a ring grows that the output capacitance decides, I·√(L/C): a third where C falls
+// with the power two thirds of the voltage, the steepest of depletion layers; with columns, whose capacitance falls by more
+// than ten times over some tens of volts, three quarters (judgement; on the gate-driven reference boards 0.65 at most).
 const (
-	bendOfRoot    = 0.25
+	bendOfLayer   = 1.0 / 3
 	bendOfColumns = 0.75
 )
 
 // At carries the measured peak to another bus (V) and current (A), both above zero. With r and q the ratios of current and
-// bus, the overshoot of a bare edge lies below max(r·q^¼, √(r·q)) times the measured one:
+// bus, the overshoot of a bare edge lies below max(r·q^⅓, √(r·q)) times the measured one:
 //   - channel-limited, L·di/dt: the slope grows at most in proportion to the current (constant fall time);
 //   - cut, a + √(a²+2aV) with a in proportion to the current: between r and √(r·q);
-//   - ring-dominated, I·√(L/C): r, and q^¼ at most for an output capacitance that falls with the root of the bus; with
-//     columns q^¾.
+//   - ring-dominated, I·√(L/C): r, and q^⅓ at most for an output capacitance that falls with the power two thirds of the bus;
+//     with columns q^¾.
 //
 // A network breaks that law: what it holds when the bus is reached depends on how long the rise took, so that an rc's step
 // R·I, or the last of the channel's current in an rcd, can appear at the full current and not at the low one. Then
 // there is one thing left: a circuit at λ times the voltages and λ times the currents does the same λ times higher, so the
-// whole peak grows by no more than max(r·q^¼, q), as long as more bus and more current both mean a higher peak (nearly
+// whole peak grows by no more than max(r·q^⅓, q), as long as more bus and more current both mean a higher peak (nearly
 // always so; the last column of reaches covers the rest). Raise bus and current together, and this bound is as sharp as the law.
 // A ratio below one is taken as one in High and Bound. Terminals or chip: the figure is of where the probe stood.
 // Derived; checked on random boards in the solver (TestCarriedBoards).
@@ -329,7 +329,7 @@ func (m Measured) bend() float64 {
 	if m.Columns {
 		return bendOfColumns
 	}
-	return bendOfRoot
+	return bendOfLayer
 }
 
 // above is how far the overshoot may grow, by the law and the growth of current and bus.
