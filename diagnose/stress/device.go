@@ -95,7 +95,7 @@ func (g gatherer) byGate(resistor string, plateau, drive float64, formula string
 	if !g.stated(resistor) || charge <= 0 || drive <= 0 {
 		return known{}
 	}
-	return known{around(drive/charge, 1.5), fromGate + formula + ", plateau " + quantity.Format(plateau, quantity.Volt) + ", judgement"}
+	return known{around(drive/charge, 1.5), fromGate + formula + ", plateau " + quantity.Format(math.Round(10*plateau)/10, quantity.Volt) + ", judgement"}
 }
 
 // turnOn takes the current slope at closing, stated at its own gate resistance or typical, and the slope at which the
