@@ -88,15 +88,20 @@ func (p *problem) fromCapture(openings []seen) (*FromCapture, error) {
 		return nil, err
 	}
 	f := &FromCapture{Name: best.name, Why: inside.why}
+	f.Near = s.bus <= mostCarried*m.Bus.Value && s.amps <= mostCarried*m.Current.Value
 	f.Low, f.Mid = s.bus+(carried.Low-s.bus)*inside.low, s.bus+(carried.Mid-s.bus)*inside.mid
 	f.High = s.bus + (f.Mid-s.bus)*(1+bothExcesses(carried, inside, s.bus))
 	f.findLoop(m)
 	return f, nil
 }
 
-// shareDoubt is how much more of the overshoot the chip may see than the solved edge says (judgement; 1.1 times on 99 in 100
-// of the gate-driven reference boards).
-const shareDoubt = 1.1
+// shareDoubt is how much more of the overshoot the chip may see than the solved edge says (judgement, after the gate-driven
+// reference boards).
+const shareDoubt = 1.15
+
+// mostCarried is by how much bus and current may be raised for the upper end of a measured opening to say something of the
+// board: carried further it is a bound and no estimate (judgement).
+const mostCarried = 1.25
 
 // bothExcesses is by how much the overshoot at the chip may exceed the one in the middle: what carrying it over and what the
 // package may add, which have nothing to do with one another, added in squares.

@@ -210,7 +210,28 @@ func TestMeasuredOpeningOverrulesTheDraws(t *testing.T) {
 	}
 }
 
-// A measured opening stands in for the gate and the fall time's reference; it lifts nothing else.
+// An opening measured at half of bus and current is carried too far for its upper end to take a verdict away.
+func TestUpperEndOfAFarOpening(t *testing.T) {
+	for _, c := range []struct {
+		bus, amps, peak float64
+		want            Verdict
+	}{{340, 20, 430, Within}, {170, 10, 216, Within}, {300, 17, 397, Thin}} {
+		at := func(v float64, u quantity.Unit) quantity.Quantity { return quantity.Of(v, u) }
+		m, err := Compute(&measure.Case{ID: "bench", Board: soundBoard(t), Captures: []measure.Capture{opening("scope.csv", map[string]quantity.Quantity{
+			"bus": at(c.bus, quantity.Volt), "current": at(c.amps, quantity.Ampere), "peak": at(c.peak, quantity.Volt)})}}, 1)
+		if err != nil {
+			t.Fatal(err)
+		}
+		f := m.AsFound
+		t.Logf("%g V, %g A: %s, foretold %.0f, %.0f, %.0f V, allowed %.0f V", c.bus, c.amps, f.Verdict, f.Measured.Low, f.Measured.Mid, f.Measured.High, m.Allowed)
+		if f.Verdict != c.want {
+			t.Errorf("%g V, %g A: %s, want %s", c.bus, c.amps, f.Verdict, c.want)
+		}
+	}
+}
+
+// An opening measured near the highest bus and worst current stands in for the gate and the fall time's reference; it lifts
+// nothing else.
 func TestMeasuredOpeningLiftsTheGate(t *testing.T) {
 	for _, key := range []string{"gate.turn_off_resistance", "switch.fall_time.gate_resistance", "snubber.kind"} {
 		c := &measure.Case{ID: "bench", Board: soundBoard(t).Without(key)}

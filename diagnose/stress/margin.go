@@ -111,6 +111,7 @@ type FromCapture struct {
 	Name           string  // of the capture or the stage
 	Low, Mid, High float64 // V, peak
 	Why            string  // by which law it was carried over
+	Near           bool    // bus and current were raised by little, so that the upper end says something of the board
 	Loop           float64 // H, loop inductance found from it; 0 when it does not say enough
 	LoopLow        float64
 	LoopHigh       float64
@@ -321,13 +322,14 @@ func (m *Margin) judge(f *Figures, p *problem, seed uint64) error {
 		return err
 	}
 	f.P999.Peak = min(f.P999.Peak, f.Worst.Peak) // no draw can pass the corner
-	f.LiftedBy = p.lifts(f.Measured != nil)
+	f.LiftedBy = p.lifts(f.Measured != nil && f.Measured.Near)
 	return p.verdict(f, scan)
 }
 
 // verdict grades the percentile, or what a measured opening foretells where that is worse. Within is given only when the
-// gate is known or an opening was measured, no assumed value alone could take the peak over the bound, a measured opening does not reach over it, and
-// the edges follow all that the board states; else it is thin.
+// gate is known or an opening was measured near the highest bus and worst current, no assumed value alone could take the
+// peak over the bound, such an opening does not reach over it, and the edges follow all that the board states; else it is
+// thin.
 func (p *problem) verdict(f *Figures, scan []scanned) error {
 	f.Verdict = Grade(max(f.P999.Peak, f.foretold()) / p.rated)
 	if f.PumpUp != nil && f.PumpUp.EndsBy == StopBreakdown {
@@ -348,7 +350,7 @@ func (p *problem) verdict(f *Figures, scan []scanned) error {
 	}
 	measured := len(f.Rests) // that alone takes nothing from a verdict
 	f.Rests = append(f.Rests, assumed...)
-	if limit := withinShare * p.rated; f.Measured != nil && f.Measured.High > limit {
+	if limit := withinShare * p.rated; f.Measured != nil && f.Measured.Near && f.Measured.High > limit {
 		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, which may reach %s at the highest bus and worst current",
 			f.Measured.Name, quantity.Format(f.Measured.High, quantity.Volt)))
 	}
