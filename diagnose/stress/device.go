@@ -95,7 +95,8 @@ func (g gatherer) byGate(resistor string, plateau, drive float64, formula string
 	if !g.stated(resistor) || charge <= 0 || drive <= 0 {
 		return known{}
 	}
-	return known{around(drive/charge, 1.5), fromGate + formula + ", plateau " + quantity.Format(math.Round(10*plateau)/10, quantity.Volt) + ", judgement"}
+	why := fromGate + formula + ", plateau " + quantity.Format(math.Round(10*plateau)/10, quantity.Volt) + ", judgement"
+	return known{around(drive/charge, 1.5), why}
 }
 
 // turnOn takes the current slope at closing, stated at its own gate resistance or typical, and the slope at which the
@@ -181,9 +182,9 @@ func (g gatherer) diode(key string) {
 	g.take(key+".forward_recovery.time", quantity.Second, around(time, 2), g.in.class.judged())
 }
 
-// softness takes how the reverse current of the diode ends. A stated one is read off a test whose own loop makes the
+// softness takes how the reverse current of the diode ends. A stated one is read off a test whose own loop may make the
 // diode look harder than it is: it lies between what is stated and three times that (judgement; on the reference boards the
-// current lasts 0.3 to 4 times as long as the test says, 2.4 times in the middle: TestModelRules).
+// current lasts 0.3 to 2.5 times as long as the test says, 1.2 times in the middle: TestModelRules).
 func (g gatherer) softness() {
 	in := g.take("freewheel.softness", quantity.Ratio, interval{0.1, 0.3, 1}, "0.3 where the case is silent")
 	if in.assumed || in.open() {
@@ -191,7 +192,7 @@ func (g gatherer) softness() {
 	}
 	k := g.in.at[in.key]
 	g.in.values[k].low, g.in.values[k].mid, g.in.values[k].high = in.mid, 1.5*in.mid, 3*in.mid
-	g.in.values[k].why = "stated as its test has it, whose loop makes the diode look harder: up to three times that, judgement"
+	g.in.values[k].why = "stated as its test has it, whose loop may make the diode look harder: up to three times that, judgement"
 }
 
 // recovery takes how the diode blocks: its charge as stated, else from the time it takes; a Schottky diode has none.

@@ -53,7 +53,7 @@ func TestModelRules(t *testing.T) {
 		rising := math.Sqrt(2 * s.Charge / (1 + s.Softness) / s.RecoverySlope)
 		note("recovery", d.lifetime*d.transit/(d.lifetime+d.transit)/(s.Softness*rising/2))
 	}
-	for name, said := range map[string]float64{"fall igbt": 0.2, "fall mosfet": 0.4, "closing igbt": 0.5, "closing mosfet": 0.5, "recovery": 2.4} {
+	for name, said := range map[string]float64{"fall igbt": 0.2, "fall mosfet": 0.4, "closing igbt": 0.5, "closing mosfet": 0.5, "recovery": 1.2} {
 		v := found[name]
 		if slices.Sort(v); len(v) < 3 {
 			t.Errorf("%s: only %d boards", name, len(v))
