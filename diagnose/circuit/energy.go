@@ -86,9 +86,9 @@ func (r *Run) Energy(name string) float64 { return r.total(name).energy }
 func (r *Run) Charge(name string) float64 { return r.total(name).charge }
 
 // Square gives the integral of the squared current of a named element so far in A²·s, from the same quadrature as
-// Energy. The heat in a resistance R in series is R times this; over a period T the rms current is √(Square/T). NaN as
-// for Energy.
-func (r *Run) Square(name string) float64 { return r.total(name).square }
+// Energy, and never below zero, where rounding would bring it. The heat in a resistance R in series is R times this; over a
+// period T the rms current is √(Square/T). NaN as for Energy.
+func (r *Run) Square(name string) float64 { return math.Max(r.total(name).square, 0) }
 
 // total holds the integrals of one element.
 type total struct{ energy, charge, square float64 }
