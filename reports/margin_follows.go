@@ -91,6 +91,8 @@ func clampHeat(f *stress.Figures) string {
 		return ""
 	case c.Watts > 0:
 		return quantity.Format(c.Watts, quantity.Watt)
+	case c.Watts < 0:
+		return "fed by the bus: held under it"
 	}
 	return noHertz
 }

@@ -139,6 +139,17 @@ func TestDangersStandWithTheVerdict(t *testing.T) {
 	}
 }
 
+// TestClampHeat: watts into the resistor, none without a frequency, and a clamp under the bus is fed by it.
+func TestClampHeat(t *testing.T) {
+	for watts, want := range map[float64]string{3.9: "3.9 W", 0: "needs pwm.frequency", -2.5: "fed by the bus"} {
+		m := frozenLeg()
+		m.Rebuild.Clamp.Watts = watts
+		if row := rowOf(marginText(t, with(frozen(t), m)), "clamp, into its resistor"); !strings.Contains(row, want) {
+			t.Errorf("%g W: %q, want %q", watts, row, want)
+		}
+	}
+}
+
 func TestAvalancheAgainstItsRating(t *testing.T) {
 	for _, c := range []struct {
 		a    stress.Avalanched

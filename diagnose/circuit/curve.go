@@ -8,7 +8,7 @@ import (
 // Curve is a bent piece of a source's waveform. From From to Till seconds the value u begins at Value (volt or ampere) with
 // the slope Slope and goes by
 //
-//	u” = Bend − Damping·(u’ − Slope) − Spring·(u − Value)
+//	u″ = Bend − Damping·(u′ − Slope) − Spring·(u − Value)
 //
 // which the solver follows exactly, as it does straight lines. Parabola, Cosine and Decay give the usual ones; damping (1/s)
 // and spring (1/s²) are zero or above.

@@ -146,3 +146,14 @@ func TestSlopeOfCorners(t *testing.T) {
 	top, _ = r.Peak(p)
 	near(t, "rise after a change at the start", top, 1e9, 1e-12)
 }
+
+// What rounding takes below nothing is nothing: its root would be no number.
+func TestSquareIsNeverBelowNothing(t *testing.T) {
+	r := begin(t, snubbedEdge())
+	to(t, r, 1e-9)
+	k, _ := r.find("Cs")
+	r.totals[k].square = -1e-8
+	if got := r.Square("Cs"); got != 0 {
+		t.Errorf("%g A²s", got)
+	}
+}

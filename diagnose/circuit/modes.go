@@ -44,7 +44,8 @@ func (r *Run) Modes() ([]Mode, error) {
 	return modes, nil
 }
 
-// eigenvalues gives, until the next are asked for, the rates of the scaled state matrix; values that are zero but for rounding are returned as zero.
+// eigenvalues gives, until the next are asked for, the rates of the scaled state matrix; values that are zero but for
+// rounding are returned as zero.
 func (s *system) eigenvalues() ([]complex128, error) {
 	if s.nx == 0 {
 		return nil, nil

@@ -18,9 +18,9 @@ type options struct {
 // WithoutEnergy leaves the integrals out, which makes a run about twice as fast; Energy, Charge and Square then give NaN.
 func WithoutEnergy() Option { return func(o *options) { o.energy = false } }
 
-// WithoutTrace keeps no samples, and takes longer steps (16 a ring in place of 40, without energies 8); Peak, Lowest and events are located
-// between the steps as ever, Trace gives nil. A ripple of less than a hundred-thousandth of the largest voltage may pass
-// unseen.
+// WithoutTrace keeps no samples, and takes longer steps (16 a ring in place of 40, without energies 8); Peak, Lowest and
+// events are located between the steps as ever, Trace gives nil. A ripple of less than a hundred-thousandth of the largest
+// voltage may pass unseen.
 func WithoutTrace() Option { return func(o *options) { o.trace = false } }
 
 // WithStep sets the longest time between two samples (seconds, > 0); the exactness of the result does not depend on it.

@@ -88,7 +88,9 @@ func (p *problem) fromCapture(openings []seen) (*FromCapture, error) {
 		return nil, err
 	}
 	f := &FromCapture{Name: best.name, Why: inside.why}
-	f.Near = s.bus <= mostCarried*m.Bus.Value && s.amps <= mostCarried*m.Current.Value
+	if f.Near = s.bus <= mostCarried*m.Bus.Value && s.amps <= mostCarried*m.Current.Value; !f.Near {
+		f.Why += "; measured far below the highest bus and worst current, so that the upper end is a bound and takes nothing from the verdict"
+	}
 	f.Low, f.Mid = s.bus+(carried.Low-s.bus)*inside.low, s.bus+(carried.Mid-s.bus)*inside.mid
 	f.High = s.bus + (f.Mid-s.bus)*(1+bothExcesses(carried, inside, s.bus))
 	f.findLoop(m)

@@ -227,6 +227,9 @@ func TestUpperEndOfAFarOpening(t *testing.T) {
 		if f.Verdict != c.want {
 			t.Errorf("%g V, %g A: %s, want %s", c.bus, c.amps, f.Verdict, c.want)
 		}
+		if said := strings.Contains(f.Measured.Why, "is a bound"); said == f.Measured.Near || f.Measured.Near != (c.bus > 200) {
+			t.Errorf("%g V, %g A: near %v, %q", c.bus, c.amps, f.Measured.Near, f.Measured.Why)
+		}
 	}
 }
 

@@ -75,7 +75,8 @@ func (g gatherer) slope(typical float64) {
 }
 
 // plateau is the gate voltage at which the switch carries so many times the worst current while its voltage moves: over the
-// threshold it goes with the root of the current.
+// threshold it goes with the root of the current, as the square law of a saturated channel has it. Without a rated current
+// it is that at the rated current.
 func (g gatherer) plateau(times float64) float64 {
 	threshold, share := g.value("switch.gate_threshold"), 1.0
 	if threshold <= 0 {
@@ -112,10 +113,10 @@ func (g gatherer) turnOn(kind string, rise float64) {
 		}
 		g.scale("switch.turn_on_slope", scale)
 	}
-	plateau, on := g.plateau(closingShare), g.value("gate.on_voltage")
-	drive := max(on-plateau, leastDrive*on)
+	on := g.value("gate.on_voltage")
+	plateau := min(g.plateau(closingShare), (1-leastDrive)*on)
 	g.take("switch.closing_slope", quantity.VoltPerSecond, around(rise, 2), "typical of the kind of switch, judgement",
-		g.byGate("gate.turn_on_resistance", plateau, drive, "(on voltage − plateau)/(R·C_gc)"))
+		g.byGate("gate.turn_on_resistance", plateau, on-plateau, "(on voltage − plateau)/(R·C_gc)"))
 }
 
 // What a closing switch has while its voltage falls (judgement).

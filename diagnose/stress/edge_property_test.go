@@ -261,7 +261,6 @@ func TestMoreCurrentMorePeak(t *testing.T) {
 				case "rc", "capacitor":
 					s.net = net
 				}
-				s.fast = false // a quick edge may miss a ripple of a hundred-thousandth
 				more := s
 				more.amps *= decade(t, "more", 1, 4)
 				low, high := mustPeak(t, s, scene.cut), mustPeak(t, more, scene.cut)

@@ -75,7 +75,9 @@ type Avalanched struct {
 type Clamped struct {
 	Volt   float64 // V, held; as stated, or where the resistor leaves it
 	Stated bool
-	Watts  float64 // into the resistor, at the PWM frequency; 0 when that is not stated
+	// Watts go into the resistor, at the PWM frequency; 0 when that is not stated, below zero where the clamp is stated to be
+	// held under the bus, which then feeds it.
+	Watts  float64
 	Charge float64 // C, each edge
 	Ripple float64 // V, each edge
 }
@@ -110,7 +112,7 @@ type LastPart struct {
 type FromCapture struct {
 	Name           string  // of the capture or the stage
 	Low, Mid, High float64 // V, peak
-	Why            string  // by which law it was carried over
+	Why            string  // what was carried over, and how far
 	Near           bool    // bus and current were raised by little, so that the upper end says something of the board
 	Loop           float64 // H, loop inductance found from it; 0 when it does not say enough
 	LoopLow        float64
@@ -339,24 +341,22 @@ func (p *problem) verdict(f *Figures, scan []scanned) error {
 		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, which foretells %s at the highest bus and worst current",
 			f.Measured.Name, quantity.Format(f.foretold(), quantity.Volt)))
 	}
-	limits := p.limits(f)
-	f.Rests = append(f.Rests, limits...)
-	if f.Verdict != Within {
-		return nil
+	doubts := p.limits(f)
+	if f.Verdict == Within {
+		assumed, err := p.rests(scan, withinShare*p.rated)
+		if err != nil {
+			return err
+		}
+		doubts = append(doubts, assumed...)
+		if f.Measured != nil && f.Measured.Near && f.Measured.High > withinShare*p.rated {
+			doubts = append(doubts, fmt.Sprintf("the opening measured as %s, which may reach %s at the highest bus and worst current",
+				f.Measured.Name, quantity.Format(f.Measured.High, quantity.Volt)))
+		}
+		if len(doubts)+len(f.LiftedBy) > 0 {
+			f.Verdict = Thin
+		}
 	}
-	assumed, err := p.rests(scan, withinShare*p.rated)
-	if err != nil {
-		return err
-	}
-	measured := len(f.Rests) // that alone takes nothing from a verdict
-	f.Rests = append(f.Rests, assumed...)
-	if limit := withinShare * p.rated; f.Measured != nil && f.Measured.Near && f.Measured.High > limit {
-		f.Rests = append(f.Rests, fmt.Sprintf("the opening measured as %s, which may reach %s at the highest bus and worst current",
-			f.Measured.Name, quantity.Format(f.Measured.High, quantity.Volt)))
-	}
-	if len(f.Rests)-measured+len(limits)+len(f.LiftedBy) > 0 {
-		f.Verdict = Thin
-	}
+	f.Rests = append(f.Rests, doubts...)
 	return nil
 }
 

@@ -223,6 +223,17 @@ func TestGateScaling(t *testing.T) {
 	}
 }
 
+// At closing a sixth of the on voltage is left over the plateau at the least, and the reason gives the plateau that the slope
+// follows from: (8 V − 6.7 V)/(10 Ω · 100 pF).
+func TestClosingPlateau(t *testing.T) {
+	in := gather(placesOf(soundBoard(t, [2]string{"gate.on_voltage", "8 V"}, [2]string{"gate.turn_on_resistance", "10 Ω"},
+		[2]string{"switch.gate_collector_capacitance", "100 pF"}).Without("switch.closing_slope"))[0])
+	got := in.values[in.at["switch.closing_slope"]]
+	if relative(got.mid, 8.0/6/10/100e-12) > 1e-9 || !strings.Contains(got.why, "plateau 6.7 V, judgement") {
+		t.Errorf("%g V/s, %s", got.mid, got.why)
+	}
+}
+
 // A high-side chopper is the mirror image of a low-side one.
 func TestHighSideIsTheMirror(t *testing.T) {
 	low := computed(t, soundBoard(t)).AsFound
